@@ -1,0 +1,133 @@
+"""The plain record of one analysis, which tables, page and words are made from."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from structmap.behaviour import Behaviour, Measurements
+from structmap.contacts import Contacts, SiteGraph
+from structmap.records import store_read_only
+from structmap.settings import Settings
+from structmap.sites import Sites
+from structmap.structure import Structure
+from structmap.values import ValueTable
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class LatticeVerdict:
+    """What holds a motional unit together.
+
+    Attributes
+    ----------
+    verdict : str
+        ``internal``, ``interface``, ``lattice-joined`` or ``lattice-only``.
+    operators : tuple of str
+        The operators and shifts that join it across the crystal,
+        ``-x,y+1/2,-z+1/2 [1 0 0]``; empty when none is needed.
+    contacts : ndarray of int, shape (n,)
+        Indices into the contacts: lattice contacts between members.
+    share_kept_without_lattice : float
+        Size of the largest piece without lattice contacts over the size of the unit.
+    pieces_without_lattice : tuple of tuple of int
+        The pieces, largest first, as indices of sites.
+    joining_distance_angstrom : tuple of float
+        Smallest cutoff at which chain contacts, then also complex, then also lattice
+        contacts hold all members together; NaN beyond 16 Å.
+    """
+
+    verdict: str
+    operators: tuple[str, ...]
+    contacts: NDArray[np.int64]
+    share_kept_without_lattice: float
+    pieces_without_lattice: tuple[tuple[int, ...], ...]
+    joining_distance_angstrom: tuple[float, float, float]
+
+    def __post_init__(self) -> None:
+        store_read_only(self, "contacts", np.int64, (None,))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class MotionalUnit:
+    """Connected sites that move and behave alike.
+
+    Attributes
+    ----------
+    name : str
+        ``U1``, ``U2``, … by falling energy.
+    members : ndarray of int, shape (n_members,)
+        Rising indices of sites.
+    energy : float
+        Log-likelihood gained by calling the members one unit, less its price.
+    contrast : float
+        1 less the share of the unit's profile that its ring of neighbours shows.
+    verdict : str
+        ``supported``, ``beyond-gradient``, ``graded``, ``tentative``; blank when not
+        tested.
+    p_any, p_place, p_smooth, stability : float
+        NaN when not tested.
+    fringe : ndarray of int, shape (n_fringe,)
+        Sites outside it that often belong.
+    lattice : LatticeVerdict
+    """
+
+    name: str
+    members: NDArray[np.int64]
+    energy: float
+    contrast: float
+    verdict: str
+    p_any: float
+    p_place: float
+    p_smooth: float
+    stability: float
+    fringe: NDArray[np.int64]
+    lattice: LatticeVerdict
+
+    def __post_init__(self) -> None:
+        store_read_only(self, "members", np.int64, (None,))
+        store_read_only(self, "fringe", np.int64, (None,))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class AnalysisRecord:
+    """Everything one analysis found.
+
+    Attributes
+    ----------
+    settings : Settings
+    structure : Structure
+    table : ValueTable
+    sites : Sites
+    contacts : Contacts
+        All contacts of polymer residues within the cutoff, measured or not.
+    graph : SiteGraph
+    measurements : Measurements
+    behaviour : Behaviour
+    units : tuple of MotionalUnit
+    membership_probability : ndarray of float, shape (n_sites,)
+        Largest over units; NaN where not computed or none overlaps.
+    warnings : tuple of str
+        What the reader must know, the most important first, one sentence each.
+    """
+
+    settings: Settings
+    structure: Structure
+    table: ValueTable
+    sites: Sites
+    contacts: Contacts
+    graph: SiteGraph
+    measurements: Measurements
+    behaviour: Behaviour
+    units: tuple[MotionalUnit, ...]
+    membership_probability: NDArray[np.float64]
+    warnings: tuple[str, ...]
+
+    def __post_init__(self) -> None:
+        store_read_only(self, "membership_probability", np.float64, (len(self.sites.name),))
+
+    def unit_of_site(self) -> NDArray[np.int64]:
+        """Return for each site the index of its unit, -1 for none."""
+        out = np.full(len(self.sites.name), -1)
+        for index, unit in enumerate(self.units):
+            out[unit.members] = index
+        return out

@@ -1,0 +1,89 @@
+"""Reading measured values: tables with a row a site or a row a point."""
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from structmap.records import store_read_only
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Quantity:
+    """One measured quantity over all rows of a table.
+
+    Attributes
+    ----------
+    name : str
+        As in the table, without its unit (``R1rho``).
+    unit : str
+        Unit of measurement as written in the table; blank when not stated.
+    x : ndarray of float, shape (n_points,)
+        Where a profile was measured, rising; empty for one number a site.
+    x_name, x_unit : str
+        What x is; blank for one number a site.
+    value, error : ndarray of float, shape (n_rows, n_points)
+        One column for one number a site. NaN where missing; an error that is not
+        given (blank or 0) is NaN.
+    has_errors : bool
+        Whether the table has an error for at least one value of it.
+    """
+
+    name: str
+    unit: str
+    x: NDArray[np.float64]
+    x_name: str
+    x_unit: str
+    value: NDArray[np.float64]
+    error: NDArray[np.float64]
+    has_errors: bool
+
+    def __post_init__(self) -> None:
+        n_points = max(1, len(self.x))
+        store_read_only(self, "x", np.float64, (None,))
+        store_read_only(self, "value", np.float64, (None, n_points))
+        store_read_only(self, "error", np.float64, self.value.shape)
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class ValueTable:
+    """Measured values, a row a measured site.
+
+    Attributes
+    ----------
+    names : tuple of str
+        Names of the files without folders.
+    sha256 : tuple of str
+        SHA-256 of their bytes.
+    auth_asym_id, ins_code, comp_id, atom, group : ndarray of str, shape (n_rows,)
+        Blank where the table says nothing. ``comp_id`` is upper case, of one or three
+        letters as in the table.
+    auth_seq_id : ndarray of int, shape (n_rows,)
+        Numbers as in the table.
+    line : ndarray of int, shape (n_rows,)
+        Line (row of a sheet) where the site first stands, the header being line 1.
+    quantities : tuple of Quantity
+    notes : tuple of str
+        What was recognised or mended on reading, one sentence each (separator, decimal
+        comma, errors of 0).
+    """
+
+    names: tuple[str, ...]
+    sha256: tuple[str, ...]
+    auth_asym_id: NDArray[Any]
+    auth_seq_id: NDArray[np.int64]
+    ins_code: NDArray[Any]
+    comp_id: NDArray[Any]
+    atom: NDArray[Any]
+    group: NDArray[Any]
+    line: NDArray[np.int64]
+    quantities: tuple[Quantity, ...]
+    notes: tuple[str, ...]
+
+    def __post_init__(self) -> None:
+        n_rows = len(self.auth_seq_id)
+        for name in ("auth_asym_id", "ins_code", "comp_id", "atom", "group"):
+            store_read_only(self, name, np.str_, (n_rows,))
+        for name in ("auth_seq_id", "line"):
+            store_read_only(self, name, np.int64, (n_rows,))

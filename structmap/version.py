@@ -1,0 +1,3 @@
+"""The version of structmap, read by the package and by the build."""
+
+__version__ = "0.1.0"
