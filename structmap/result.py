@@ -7,44 +7,12 @@ from numpy.typing import NDArray
 
 from structmap.behaviour import Behaviour, Measurements
 from structmap.contacts import Contacts, SiteGraph
+from structmap.lattice import LatticeVerdict
 from structmap.records import store_read_only
 from structmap.settings import Settings
 from structmap.sites import Sites
 from structmap.structure import Structure
 from structmap.values import ValueTable
-
-
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class LatticeVerdict:
-    """What holds a motional unit together.
-
-    Attributes
-    ----------
-    verdict : str
-        ``internal``, ``interface``, ``lattice-joined`` or ``lattice-only``.
-    operators : tuple of str
-        The operators and shifts that join it across the crystal,
-        ``-x,y+1/2,-z+1/2 [1 0 0]``; empty when none is needed.
-    contacts : ndarray of int, shape (n,)
-        Indices into the contacts: lattice contacts between members.
-    share_kept_without_lattice : float
-        Size of the largest piece without lattice contacts over the size of the unit.
-    pieces_without_lattice : tuple of tuple of int
-        The pieces, largest first, as indices of sites.
-    joining_distance_angstrom : tuple of float
-        Smallest cutoff at which chain contacts, then also complex, then also lattice
-        contacts hold all members together; NaN beyond 16 Å.
-    """
-
-    verdict: str
-    operators: tuple[str, ...]
-    contacts: NDArray[np.int64]
-    share_kept_without_lattice: float
-    pieces_without_lattice: tuple[tuple[int, ...], ...]
-    joining_distance_angstrom: tuple[float, float, float]
-
-    def __post_init__(self) -> None:
-        store_read_only(self, "contacts", np.int64, (None,))
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
