@@ -41,3 +41,18 @@ class MissingExtraError(StructmapError):
             f"{self.purpose} needs the package {self.package}, which is not installed; "
             f"install it with: pip install 'structmap[{self.extra}]'"
         )
+
+
+class UnknownUnitError(StructmapError):
+    """A quantity has no unit of measurement, an unknown one, or one of another kind."""
+
+    def __init__(self, quantity: str, unit: str, wanted: str) -> None:
+        super().__init__(quantity, unit, wanted)
+        self.quantity, self.unit, self.wanted = quantity, unit, wanted
+
+    def __str__(self) -> str:
+        unit = f"the unit {self.unit!r} cannot be used" if self.unit else "no unit is given"
+        return (
+            f"{self.quantity}: {unit} where one like {self.wanted} is needed; "
+            "write the unit in brackets after the column name, as in 'x [kHz]'"
+        )
