@@ -1,4 +1,4 @@
-"""Reading coordinates: polymer residues, their atoms, the crystal, the assemblies."""
+"""What a coordinate file holds, as arrays."""
 
 from dataclasses import dataclass
 from typing import Any

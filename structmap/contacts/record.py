@@ -1,4 +1,4 @@
-"""Contacts over the whole crystal, exact and labelled by operator and cell shift."""
+"""Contacts between residues and the graph of measured sites."""
 
 from dataclasses import dataclass
 
