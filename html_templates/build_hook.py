@@ -101,11 +101,14 @@ def fetch(folder: Path) -> None:
     except OSError as error:
         raise SystemExit(f"structmap: npm cannot be started ({error})") from error
     if done.returncode != 0:
-        said = " ".join(done.stderr.split()) or f"exit status {done.returncode}"
+        lines = [
+            line.removeprefix("npm error").strip() for line in done.stderr.splitlines()
+        ]
+        said = "; ".join(line for line in lines if line and not line.startswith("at "))
         raise SystemExit(
             "structmap: the 3D library of the page (npm package 3dmol) could not be "
             "fetched; connect this machine to the npm registry, or build from a source "
-            f"distribution, which holds it; npm said: {said[:400]}"
+            f"distribution, which holds it; npm said: {said[:300]}"
         )
 
 

@@ -1,6 +1,7 @@
 """What all tests share: repeatable random cases, and where larger data may lie."""
 
 import os
+import shutil
 from pathlib import Path
 
 import pytest
@@ -42,3 +43,15 @@ def planted_folder() -> Path:
 def repository() -> Path:
     """Root of the checkout."""
     return Path(__file__).resolve().parent.parent
+
+
+@pytest.fixture(scope="session")
+def chromium() -> str:
+    """Path of a Chromium; without one the test is skipped, or fails where asked to."""
+    names = ("chromium", "chromium-browser", "google-chrome")
+    found = next(filter(None, map(shutil.which, names)), None)
+    if found:
+        return found
+    if os.environ.get("STRUCTMAP_REQUIRE_BROWSER") == "1":
+        pytest.fail("no Chromium on the PATH, and STRUCTMAP_REQUIRE_BROWSER is 1")
+    pytest.skip("no Chromium on the PATH; on Debian: apt-get install chromium")
