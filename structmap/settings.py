@@ -1,7 +1,13 @@
 """Every choice of an analysis, in one frozen record."""
 
-from dataclasses import dataclass
-from typing import Literal
+import difflib
+import json
+import re
+from collections.abc import Mapping
+from dataclasses import dataclass, fields
+from typing import Any, Literal, get_args, get_origin, get_type_hints
+
+from structmap.errors import SettingError
 
 ProfilePart = Literal["auto", "whole", "shape", "level"]
 Direction = Literal["both", "up", "down"]
@@ -27,6 +33,9 @@ class Settings:
     offset : int or None
         Number to add to the table's residue numbers to get the file's; None lets the
         match find it.
+    mapping : str
+        Path of a table that lays each number of the values on a residue of the
+        coordinates; blank for none.
     named_chains_only : bool
         Chains of equal sequence that the table does not name are not copies.
     quantity : tuple of str
@@ -60,6 +69,7 @@ class Settings:
     assembly: str = "auto"
     model: int = 0
     offset: int | None = None
+    mapping: str = ""
     named_chains_only: bool = False
     quantity: tuple[str, ...] = ()
     profile_part: ProfilePart = "auto"
@@ -72,3 +82,103 @@ class Settings:
     title: str = ""
     data_note: str = ""
     seed: int = 20260
+
+
+def make_settings(given: Mapping[str, Any], *, source: str = "settings") -> Settings:
+    """Return settings with some values given by name, each checked.
+
+    Parameters
+    ----------
+    given : mapping of str to object
+        Names of fields and their values.
+    source : str, default "settings"
+        Where they come from, for the message.
+
+    Returns
+    -------
+    Settings
+        Defaults for the rest.
+
+    Raises
+    ------
+    SettingError
+        If a name is unknown or a value has another type or is out of range.
+    """
+    types = get_type_hints(Settings)
+    checked = {}
+    for name, value in given.items():
+        if name not in types:
+            near = difflib.get_close_matches(name, types, n=1)
+            hint = f"did you mean {near[0]}?" if near else "remove it"
+            raise SettingError(source, name, "is no setting", hint)
+        checked[name] = _checked(name, value, types[name], source=source)
+    return Settings(**checked)
+
+
+def _checked(name: str, value: Any, kind: Any, *, source: str) -> Any:
+    """Return a value in the type of its field."""
+    if get_origin(kind) is Literal:
+        if value not in get_args(kind):
+            choices = ", ".join(get_args(kind))
+            raise SettingError(source, name, f"is {value!r}", f"choose one of {choices}")
+        return value
+    if get_origin(kind) is tuple:
+        value = [value] if isinstance(value, str) else value
+        if isinstance(value, list | tuple) and all(isinstance(part, str) for part in value):
+            return tuple(value)
+        raise SettingError(source, name, f"is {value!r}", "give a list of texts")
+    return _checked_scalar(name, value, kind, source=source)
+
+
+def _checked_scalar(name: str, value: Any, kind: Any, *, source: str) -> Any:
+    plain = [part for part in (get_args(kind) or (kind,)) if part is not type(None)][0]
+    if plain is float and isinstance(value, int | float) and not isinstance(value, bool):
+        if not 0 <= value < float("inf"):
+            raise SettingError(source, name, f"is {value}", "give a number of 0 or more")
+        return float(value)
+    if plain in (bool, str) and isinstance(value, plain):
+        return value
+    if plain is int and isinstance(value, int) and not isinstance(value, bool):
+        return value
+    wanted = {float: "a number", int: "a whole number", bool: "true or false", str: "a text"}
+    raise SettingError(source, name, f"is {value!r}", f"give {wanted[plain]}")
+
+
+def describe_settings() -> dict[str, str]:
+    """Return what each setting means.
+
+    Returns
+    -------
+    dict of str to str
+        Name and one paragraph, in the order of the record.
+    """
+    text = Settings.__doc__ or ""
+    found = re.findall(r"^    (\w+) : [^\n]*\n((?:        [^\n]*\n?)+)", text, flags=re.MULTILINE)
+    said = {name: " ".join(body.split()).replace("``", "") for name, body in found}
+    return {field.name: said.get(field.name, "") for field in fields(Settings)}
+
+
+def settings_text(settings: Settings | None = None) -> str:
+    """Return settings as a commented TOML file.
+
+    Parameters
+    ----------
+    settings : Settings, optional
+        The defaults when left out.
+
+    Returns
+    -------
+    str
+        A file that ``--settings`` reads.
+    """
+    settings = settings or Settings()
+    lines = ["# Settings of structmap with their defaults; remove what you do not change."]
+    for name, meaning in describe_settings().items():
+        value = getattr(settings, name)
+        lines += ["", f"# {meaning}"]
+        if value is None:
+            lines.append(f"# {name} =")
+        else:
+            written = list(value) if isinstance(value, tuple) else value
+            lines.append(f"{name} = {json.dumps(written, ensure_ascii=False)}")
+    return "\n".join(lines) + "\n"
