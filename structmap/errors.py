@@ -56,3 +56,228 @@ class UnknownUnitError(StructmapError):
             f"{self.quantity}: {unit} where one like {self.wanted} is needed; "
             "write the unit in brackets after the column name, as in 'x [kHz]'"
         )
+
+
+class NoSiteColumnError(StructmapError):
+    """A table does not say which residue a row belongs to."""
+
+    def __init__(self, path: Path | str, columns: tuple[str, ...]) -> None:
+        super().__init__(path, columns)
+        self.path, self.columns = path, columns
+
+    def __str__(self) -> str:
+        found = ", ".join(repr(name) for name in self.columns[:8])
+        more = ", ..." if len(self.columns) > 8 else ""
+        return (
+            f"{self.path}: no column gives the residue number (found: {found}{more}); "
+            "call it auth_seq_id, residue, resid or res, or name the columns in order "
+            "with --columns if the table has no header"
+        )
+
+
+class NoQuantityError(StructmapError):
+    """A table holds residue numbers and no measured value."""
+
+    def __init__(self, path: Path | str, columns: tuple[str, ...]) -> None:
+        super().__init__(path, columns)
+        self.path, self.columns = path, columns
+
+    def __str__(self) -> str:
+        found = ", ".join(repr(name) for name in self.columns[:8])
+        return (
+            f"{self.path}: no column holds a measured value (found: {found}); add one, "
+            "such as R1 with R1_error"
+        )
+
+
+class UnclearColumnsError(StructmapError):
+    """Columns of a table can be taken in more than one way."""
+
+    def __init__(
+        self, path: Path | str, columns: tuple[str, ...], problem: str, remedy: str
+    ) -> None:
+        super().__init__(path, columns, problem, remedy)
+        self.path, self.columns = path, columns
+        self.problem, self.remedy = problem, remedy
+
+    def __str__(self) -> str:
+        named = ", ".join(repr(name) for name in self.columns[:8])
+        more = ", ..." if len(self.columns) > 8 else ""
+        noun = "column" if len(self.columns) == 1 else "columns"
+        return f"{self.path}: {noun} {named}{more} {self.problem}; {self.remedy}"
+
+
+class UnreadableCellError(StructmapError):
+    """A cell does not hold what its column needs."""
+
+    def __init__(
+        self, path: Path | str, row: int, column: str, text: str, wanted: str
+    ) -> None:
+        super().__init__(path, row, column, text, wanted)
+        self.path, self.row, self.column = path, row, column
+        self.text, self.wanted = text, wanted
+
+    def __str__(self) -> str:
+        text = self.text if len(self.text) <= 40 else self.text[:37] + "..."
+        return f"{self.path}, row {self.row}: {self.column} is {text!r}; {self.wanted}"
+
+
+class RaggedRowError(StructmapError):
+    """A row has fewer or more cells than the header."""
+
+    def __init__(self, path: Path | str, row: int, found: int, expected: int) -> None:
+        super().__init__(path, row, found, expected)
+        self.path, self.row = path, row
+        self.found, self.expected = found, expected
+
+    def __str__(self) -> str:
+        remedy = (
+            "write NA where a value is missing, or fetch the file again if it was cut short"
+            if self.found < self.expected
+            else "remove the surplus cells or name their columns"
+        )
+        cells = "cell" if self.found == 1 else "cells"
+        return (
+            f"{self.path}, row {self.row}: {self.found} {cells} where {self.expected} "
+            f"are due; {remedy}"
+        )
+
+
+class RepeatedRowError(StructmapError):
+    """Two rows give a value for the same site (and the same point of its profile)."""
+
+    def __init__(self, path: Path | str, rows: tuple[int, int], site: str) -> None:
+        super().__init__(path, rows, site)
+        self.path, self.rows, self.site = path, rows, site
+
+    def __str__(self) -> str:
+        return (
+            f"{self.path}, rows {self.rows[0]} and {self.rows[1]}: both give {self.site}; "
+            "keep one of them, or tell them apart by chain, insertion code or atom"
+        )
+
+
+class UnknownChainError(StructmapError):
+    """The table names a chain that the coordinates lack."""
+
+    def __init__(
+        self, values: str, row: int, chain: str, coordinates: str, present: str
+    ) -> None:
+        super().__init__(values, row, chain, coordinates, present)
+        self.values, self.row, self.chain = values, row, chain
+        self.coordinates, self.present = coordinates, present
+
+    def __str__(self) -> str:
+        return (
+            f"{self.values}, row {self.row}: chain {self.chain!r} is not a polymer chain "
+            f"of {self.coordinates} (it has {self.present}); correct the chain column, or "
+            "lay the rows on the chains by a table given with --mapping"
+        )
+
+
+class NoMatchError(StructmapError):
+    """No measured residue could be found in the coordinates."""
+
+    def __init__(self, values: str, coordinates: str, measured: str, present: str) -> None:
+        super().__init__(values, coordinates, measured, present)
+        self.values, self.coordinates = values, coordinates
+        self.measured, self.present = measured, present
+
+    def __str__(self) -> str:
+        return (
+            f"{self.values}: none of its residues ({self.measured}) is in "
+            f"{self.coordinates} ({self.present}); state the difference of the numbers "
+            "with --offset, or give a table with --mapping"
+        )
+
+
+class UnclearMatchError(StructmapError):
+    """Two ways to lay the table on the coordinates are equally good."""
+
+    def __init__(self, values: str, coordinates: str, answers: str, remedy: str) -> None:
+        super().__init__(values, coordinates, answers, remedy)
+        self.values, self.coordinates = values, coordinates
+        self.answers, self.remedy = answers, remedy
+
+    def __str__(self) -> str:
+        return (
+            f"{self.values}: it fits {self.coordinates} equally well with {self.answers}; "
+            f"{self.remedy}"
+        )
+
+
+class DisagreeingNamesError(StructmapError):
+    """More than a tenth of the named rows disagree with the coordinates."""
+
+    def __init__(
+        self, values: str, coordinates: str, n_named: int, examples: tuple[str, ...]
+    ) -> None:
+        super().__init__(values, coordinates, n_named, examples)
+        self.values, self.coordinates = values, coordinates
+        self.n_named, self.examples = n_named, examples
+
+    def __str__(self) -> str:
+        shown = "; ".join(self.examples[:3]) + ("; ..." if len(self.examples) > 3 else "")
+        return (
+            f"{self.values}: {len(self.examples)} of {self.n_named} named residues differ "
+            f"from {self.coordinates} where it fits best ({shown}); check that the two "
+            "belong together, or state the numbering with --offset or --mapping"
+        )
+
+
+class DisagreeingResidueError(StructmapError):
+    """A mapping given by the user names a residue the coordinate file lacks."""
+
+    def __init__(
+        self, mapping: str, row: int, site: str, coordinates: str, nearest: str
+    ) -> None:
+        super().__init__(mapping, row, site, coordinates, nearest)
+        self.mapping, self.row, self.site = mapping, row, site
+        self.coordinates, self.nearest = coordinates, nearest
+
+    def __str__(self) -> str:
+        return (
+            f"{self.mapping}, row {self.row}: residue {self.site} is not in "
+            f"{self.coordinates} (nearest there: {self.nearest}); correct auth_seq_id or "
+            "pdbx_PDB_ins_code in that row, or remove the row"
+        )
+
+
+class RepeatedSiteError(StructmapError):
+    """Two rows of the table fall on one residue of the coordinates."""
+
+    def __init__(self, values: str, rows: tuple[int, int], site: str) -> None:
+        super().__init__(values, rows, site)
+        self.values, self.rows, self.site = values, rows, site
+
+    def __str__(self) -> str:
+        return (
+            f"{self.values}, rows {self.rows[0]} and {self.rows[1]}: both fall on "
+            f"{self.site} of the coordinates; keep one of them, or tell them apart by "
+            "chain, insertion code or atom"
+        )
+
+
+class UnknownSiteError(StructmapError):
+    """A site that is to be left out is not among the measured ones."""
+
+    def __init__(self, site: str, nearest: str) -> None:
+        super().__init__(site, nearest)
+        self.site, self.nearest = site, nearest
+
+    def __str__(self) -> str:
+        return (
+            f"--exclude {self.site}: no measured site has that name (nearest: "
+            f"{self.nearest}); write it as in the site column of sites.csv"
+        )
+
+
+class SettingError(StructmapError):
+    """A setting that is unknown or has a value it cannot have."""
+
+    def __init__(self, source: str, name: str, problem: str, remedy: str) -> None:
+        super().__init__(source, name, problem, remedy)
+        self.source, self.name, self.problem, self.remedy = source, name, problem, remedy
+
+    def __str__(self) -> str:
+        return f"{self.source}: setting {self.name} {self.problem}; {self.remedy}"

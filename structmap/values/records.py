@@ -1,4 +1,4 @@
-"""Reading measured values: tables with a row a site or a row a point."""
+"""What reading measured values hands on."""
 
 from dataclasses import dataclass
 from typing import Any
@@ -87,3 +87,44 @@ class ValueTable:
             store_read_only(self, name, np.str_, (n_rows,))
         for name in ("auth_seq_id", "line"):
             store_read_only(self, name, np.int64, (n_rows,))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class NumberMapping:
+    """Which number of a value table belongs to which residue of the coordinates.
+
+    Attributes
+    ----------
+    name : str
+        Name of the file without its folder.
+    sha256 : str
+        SHA-256 of its bytes.
+    table_chain, table_ins_code : ndarray of str, shape (n_entries,)
+        As in the value table; a blank chain stands for every chain of the table.
+    table_number : ndarray of int, shape (n_entries,)
+        Number in the value table.
+    auth_asym_id, ins_code : ndarray of str, shape (n_entries,)
+        In the coordinates; a blank chain stands for the chain that the table names, or
+        for the first one that has the residue.
+    auth_seq_id : ndarray of int, shape (n_entries,)
+        Number in the coordinates.
+    line : ndarray of int, shape (n_entries,)
+        Line of the file.
+    """
+
+    name: str
+    sha256: str
+    table_chain: NDArray[Any]
+    table_number: NDArray[np.int64]
+    table_ins_code: NDArray[Any]
+    auth_asym_id: NDArray[Any]
+    auth_seq_id: NDArray[np.int64]
+    ins_code: NDArray[Any]
+    line: NDArray[np.int64]
+
+    def __post_init__(self) -> None:
+        n_entries = len(self.table_number)
+        for name in ("table_chain", "table_ins_code", "auth_asym_id", "ins_code"):
+            store_read_only(self, name, np.str_, (n_entries,))
+        for name in ("table_number", "auth_seq_id", "line"):
+            store_read_only(self, name, np.int64, (n_entries,))
