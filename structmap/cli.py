@@ -14,8 +14,8 @@ from structmap.settings import Settings, describe_settings, make_settings, setti
 from structmap.version import __version__
 
 DONE, UNUSABLE, WRONG_CALL = 0, 1, 2
-_CONTACT_SETTINGS = ("cutoff_angstrom", "ca_cutoff_angstrom", "assembly", "model")
-_MATCH_SETTINGS = ("offset", "mapping", "named_chains_only", "exclude", "columns", "model")
+_CONTACT_SETTINGS = ("cutoff_angstrom", "ca_cutoff_angstrom", "assembly", "coordinate_model")
+_MATCH_SETTINGS = ("offset", "mapping", "named_chains_only", "exclude", "columns", "coordinate_model")
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -87,7 +87,7 @@ def _add_analyse(commands: Any) -> None:
         summary="find the motional units and what holds them together: tables and one page",
         example="structmap example -o try\n"
         "structmap analyse try/4cup.cif.gz try/invented_values.csv -o mine \\\n"
-        "    --model-name mas-r1rho --mas-rate-hertz 60000 --sample deuterated",
+        "    --model mas-r1rho --mas-rate-hertz 60000 --sample deuterated",
     )
     command.add_argument("coordinates", type=Path, help="mmCIF or PDB file, gzipped or not")
     command.add_argument("values", type=Path, nargs="+", help="tables of values, joined by site")
@@ -216,7 +216,7 @@ def _read_toml(path: Path) -> dict[str, Any]:
 def _run_analyse(call: argparse.Namespace) -> None:
     settings = _settings_of(call)
     _check_output(call.output, [call.coordinates, *call.values])
-    from structmap.analyse import analyse
+    from structmap.analysis import analyse
 
     with _Progress(quiet=call.quiet) as progress:
         result = analyse(call.coordinates, call.values, settings, progress=progress)
@@ -227,7 +227,7 @@ def _run_analyse(call: argparse.Namespace) -> None:
 
 def _run_example(call: argparse.Namespace) -> None:
     _check_output(call.output, [])
-    from structmap.analyse import analyse_example
+    from structmap.analysis import analyse_example
 
     with _Progress(quiet=call.quiet) as progress:
         result = analyse_example(call.output, progress=progress)
@@ -236,7 +236,7 @@ def _run_example(call: argparse.Namespace) -> None:
 
 def _run_match(call: argparse.Namespace) -> None:
     settings = _settings_of(call)
-    from structmap.analyse import match_numbering
+    from structmap.analysis import match_numbering
     from structmap.files import write_file
     from structmap.tables import table_text
 
@@ -251,7 +251,7 @@ def _run_match(call: argparse.Namespace) -> None:
 
 def _run_contacts(call: argparse.Namespace) -> None:
     settings = _settings_of(call)
-    from structmap.analyse import list_contacts
+    from structmap.analysis import list_contacts
     from structmap.files import write_file
     from structmap.tables import table_text
 

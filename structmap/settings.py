@@ -27,9 +27,9 @@ class Settings:
         Which biological assemblies make contacts `complex`: ``auto`` (those the
         authors determined, else those software did), ``none``, or ids of the file
         parted by commas.
-    model : int
-        Number of the model to use alone; 0 is the first of a crystal and all of an
-        ensemble.
+    coordinate_model : int
+        Number of the coordinate model to use alone; 0 is the first of a crystal and all
+        of an ensemble.
     offset : int or None
         Number to add to the table's residue numbers to get the file's; None lets the
         match find it.
@@ -44,8 +44,8 @@ class Settings:
     profile_part : {'auto', 'whole', 'shape', 'level'}
         What of a profile is compared. ``auto`` is ``shape`` for a named model of
         relaxation, else ``whole``.
-    model_name : str
-        Name of the model that the profiles follow; blank for none.
+    model : str
+        Name of the process model that the profiles follow; blank for none.
     exclude : tuple of str
         Sites to leave out, written ``A/56A`` or ``56A``.
     columns : tuple of str
@@ -67,13 +67,13 @@ class Settings:
     cutoff_angstrom: float = 4.5
     ca_cutoff_angstrom: float = 7.5
     assembly: str = "auto"
-    model: int = 0
+    coordinate_model: int = 0
     offset: int | None = None
     mapping: str = ""
     named_chains_only: bool = False
     quantity: tuple[str, ...] = ()
     profile_part: ProfilePart = "auto"
-    model_name: str = ""
+    model: str = ""
     exclude: tuple[str, ...] = ()
     columns: tuple[str, ...] = ()
     proton_frequency_megahertz: float = 0.0

@@ -1,6 +1,7 @@
 """The main entry: coordinates and values in, a result out."""
 
 import html
+import tomllib
 from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
@@ -10,22 +11,22 @@ import pandas as pd
 
 from structmap.behaviour import take_measurements
 from structmap.contacts import (
+    KINDS,
     choose_assemblies,
     contact_cutoff,
     contacts_within,
     find_contacts,
     make_site_graph,
 )
-from structmap.errors import FileProblemError
-from structmap.experiment import points_left_out, to_base_unit
+from structmap.experiment import SPINNING_MODEL, convert_to_base, points_left_out
 from structmap.files import write_folder
 from structmap.lattice import judge_lattice
 from structmap.motional_units import find_motional_units
 from structmap.page import page_html
 from structmap.result import AnalysisRecord, MotionalUnit
-from structmap.settings import Settings
-from structmap.sites import match_sites, site_centres
-from structmap.structure import read_structure
+from structmap.settings import Settings, make_settings
+from structmap.sites import Sites, match_rows, match_sites, site_centres
+from structmap.structure import Structure, read_structure
 from structmap.tables import (
     Table,
     contacts_table,
@@ -40,6 +41,8 @@ from structmap.words import summary_lines
 
 Progress = Callable[[str, float], None]
 EXAMPLE_COORDINATES, EXAMPLE_VALUES = "4cup.cif.gz", "invented_values.csv"
+EXAMPLE_SETTINGS = "settings.toml"
+EXAMPLE_FILES = (EXAMPLE_COORDINATES, EXAMPLE_VALUES, EXAMPLE_SETTINGS)
 
 
 class Analysis:
@@ -207,22 +210,11 @@ def analyse_table(
     """
     tell = progress or _say_nothing
     tell("reading coordinates", 0.0)
-    structure = read_structure(coordinates, model=settings.model)
+    structure = read_structure(coordinates, model=settings.coordinate_model)
     tell("matching the numbering", 0.1)
-    sites = match_sites(
-        structure,
-        table,
-        offset=settings.offset,
-        mapping=read_mapping(Path(settings.mapping)) if settings.mapping else None,
-        named_chains_only=settings.named_chains_only,
-        exclude=settings.exclude,
-    )
+    sites = _matched(structure, table, settings)
     tell("finding contacts over the crystal", 0.2)
-    cutoff = contact_cutoff(
-        structure,
-        cutoff_angstrom=settings.cutoff_angstrom,
-        ca_cutoff_angstrom=settings.ca_cutoff_angstrom,
-    )
+    cutoff = _cutoff(structure, settings)
     assemblies = choose_assemblies(structure, settings.assembly)
     contacts = find_contacts(structure, reach_angstrom=cutoff, assemblies=assemblies)
     graph = make_site_graph(contacts, sites, cutoff_angstrom=cutoff)
@@ -232,7 +224,7 @@ def analyse_table(
         sites,
         quantity=settings.quantity,
         profile_part=settings.profile_part,
-        model_name=settings.model_name,
+        model_name=settings.model,
         point_reason=_point_reasons(table, settings),
     )
     search = find_motional_units(measurements, graph, site_centres(structure, sites))
@@ -275,5 +267,188 @@ def analyse_table(
     )
 
 
+def _point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
+    """Return why points of the profile cannot be carried; empty without a profile."""
+    profiles = [q for q in table.quantities if len(q.x)]
+    if settings.quantity:
+        profiles = [q for q in profiles if q.name in settings.quantity]
+    if not profiles:
+        return ()
+    profile = profiles[0]
+    if settings.model != SPINNING_MODEL:
+        return ("",) * len(profile.x)
+    return points_left_out(
+        convert_to_base(profile.x, profile.x_unit, quantity=profile.x_name, base="Hz"),
+        model_name=settings.model,
+        mas_rate_hertz=settings.mas_rate_hertz,
+        proton_frequency_megahertz=settings.proton_frequency_megahertz,
+        sample=settings.sample,
+    )
+
+
 def _say_nothing(step: str, share: float) -> None:
     del step, share
+
+
+# --- the smaller jobs -----------------------------------------------------------------
+
+
+def example_folder() -> Path:
+    """Return the folder of the built-in example.
+
+    Returns
+    -------
+    Path
+        Inside the installed package, or in the source tree.
+    """
+    package = Path(__file__).parent
+    installed = package / "examples"
+    return installed if installed.is_dir() else package.parent / "examples"
+
+
+def analyse_example(folder: Path, *, progress: Progress | None = None) -> Analysis:
+    """Run the main job on the built-in example and write everything.
+
+    Parameters
+    ----------
+    folder : Path
+        Where to write; coordinates, values and settings are copied there too.
+    progress : callable, optional
+        Called with the name of a step and the share done.
+
+    Returns
+    -------
+    Analysis
+        Of invented values on a real coordinate file.
+
+    Raises
+    ------
+    FileProblemError
+        If the folder cannot be written.
+    """
+    source = example_folder()
+    inputs = {name: (source / name).read_bytes() for name in EXAMPLE_FILES}
+    settings = make_settings(tomllib.loads(inputs[EXAMPLE_SETTINGS].decode("utf-8")))
+    result = analyse(
+        source / EXAMPLE_COORDINATES, source / EXAMPLE_VALUES, settings, progress=progress
+    )
+    write_folder(folder, inputs)
+    result.save(folder)
+    return result
+
+
+def match_numbering(
+    coordinates: Path | str, values: Path | str | Sequence[Path | str], settings: Settings
+) -> tuple[Table, tuple[str, ...]]:
+    """Bring the numbering of values and coordinates together and no more.
+
+    Parameters
+    ----------
+    coordinates : Path or str
+    values : Path or str, or sequence of them
+    settings : Settings
+
+    Returns
+    -------
+    table : Table
+        A row for each row of the values.
+    notes : tuple of str
+        Offsets, copies, names that differ, rows without a residue.
+
+    Raises
+    ------
+    StructmapError
+        If a file cannot be used or the numbering is ambiguous.
+    """
+    paths = [values] if isinstance(values, str | Path) else list(values)
+    table = read_values([Path(path) for path in paths], columns=settings.columns)
+    structure = read_structure(Path(coordinates), model=settings.coordinate_model)
+    sites = _matched(structure, table, settings)
+    rows = match_rows(structure, table, sites)
+    columns = tuple(rows[0]) if rows else ()
+    listing = Table(columns=columns, rows=tuple(tuple(row.values()) for row in rows))
+    return listing, match_notes(sites)
+
+
+def _matched(structure: Structure, table: ValueTable, settings: Settings) -> Sites:
+    return match_sites(
+        structure,
+        table,
+        offset=settings.offset,
+        mapping=read_mapping(Path(settings.mapping)) if settings.mapping else None,
+        named_chains_only=settings.named_chains_only,
+        exclude=settings.exclude,
+    )
+
+
+def match_notes(sites: Sites) -> tuple[str, ...]:
+    """Return the reconciliation of the numbering in lines.
+
+    Parameters
+    ----------
+    sites : Sites
+
+    Returns
+    -------
+    tuple of str
+        One line a chain, one a mismatch, one an unmatched row.
+    """
+    lines = []
+    for chain in sites.chains:
+        text = f"chain {chain.auth_asym_id}: offset {chain.offset:+d} ({chain.how}), "
+        text += f"{chain.n_matched} rows matched"
+        if chain.n_named:
+            text += f", {chain.n_agreeing} of {chain.n_named} names agree"
+        lines.append(text)
+    lines += [f"name differs: {phrase}" for phrase in sites.mismatches]
+    lines += [f"no residue: {phrase}" for phrase in sites.unmatched]
+    return (*lines, *sites.notes)
+
+
+def list_contacts(
+    coordinates: Path | str, settings: Settings, *, progress: Progress | None = None
+) -> tuple[Table, tuple[str, ...]]:
+    """List the residue contacts over the crystal.
+
+    Parameters
+    ----------
+    coordinates : Path or str
+    settings : Settings
+    progress : callable, optional
+        Called with the name of a step and the share done.
+
+    Returns
+    -------
+    table : Table
+        As ``contacts.csv``.
+    notes : tuple of str
+        Counts by kind, what the kinds rest on, what is odd about the file.
+
+    Raises
+    ------
+    StructmapError
+        If the file cannot be used.
+    """
+    tell = progress or _say_nothing
+    tell("reading coordinates", 0.0)
+    structure = read_structure(Path(coordinates), model=settings.coordinate_model)
+    tell("finding contacts over the crystal", 0.3)
+    assemblies = choose_assemblies(structure, settings.assembly)
+    found = find_contacts(
+        structure, reach_angstrom=_cutoff(structure, settings), assemblies=assemblies
+    )
+    counts = ", ".join(f"{(found.kind == k).sum()} {kind}" for k, kind in enumerate(KINDS))
+    notes = [f"{len(found.kind)} residue contacts: {counts}"]
+    if structure.crystal is None:
+        notes.append(f"no lattice contacts, because {structure.no_crystal_reason}")
+    names = ", ".join(f"{a.name} ({a.oligomer})" if a.oligomer else a.name for a in assemblies)
+    notes.append(f"assemblies that make contacts complex: {names or 'none stated'}")
+    return contacts_table(structure, found), (*notes, *structure.warnings)
+
+
+def _cutoff(structure: Structure, settings: Settings) -> float:
+    return contact_cutoff(
+        structure,
+        cutoff_angstrom=settings.cutoff_angstrom,
+        ca_cutoff_angstrom=settings.ca_cutoff_angstrom,
+    )
