@@ -1,6 +1,7 @@
 """Reading coordinates: polymer residues, their atoms, the crystal, the assemblies."""
 
 from structmap.structure.names import one_letter, residue_label
+from structmap.structure.reading import read_structure
 from structmap.structure.record import (
     LIGAND,
     POLYMER,
@@ -20,5 +21,6 @@ __all__ = [
     "Crystal",
     "Structure",
     "one_letter",
+    "read_structure",
     "residue_label",
 ]
