@@ -136,7 +136,7 @@ class RaggedRowError(StructmapError):
 
     def __str__(self) -> str:
         remedy = (
-            "write NA where a value is missing, or fetch the file again if it was cut short"
+            "write NA where a value is missing, or fetch the file again if it is cut short"
             if self.found < self.expected
             else "remove the surplus cells or name their columns"
         )
@@ -156,8 +156,8 @@ class RepeatedRowError(StructmapError):
 
     def __str__(self) -> str:
         return (
-            f"{self.path}, rows {self.rows[0]} and {self.rows[1]}: both give {self.site}; "
-            "keep one of them, or tell them apart by chain, insertion code or atom"
+            f"{self.path}, rows {self.rows[0]} and {self.rows[1]}: both give "
+            f"{self.site}; keep one of them, or tell them apart by chain, insertion code or atom"
         )
 
 
@@ -173,9 +173,9 @@ class UnknownChainError(StructmapError):
 
     def __str__(self) -> str:
         return (
-            f"{self.values}, row {self.row}: chain {self.chain!r} is not a polymer chain "
-            f"of {self.coordinates} (it has {self.present}); correct the chain column, or "
-            "lay the rows on the chains by a table given with --mapping"
+            f"{self.values}, row {self.row}: chain {self.chain!r} is not a polymer "
+            f"chain of {self.coordinates} (it has {self.present}); correct the chain "
+            "column, or lay the rows on the chains by a table given with --mapping"
         )
 
 
@@ -209,8 +209,8 @@ class UnclearMatchError(StructmapError):
 
     def __str__(self) -> str:
         return (
-            f"{self.values}: it fits {self.coordinates} equally well with {self.answers}; "
-            f"{self.remedy}"
+            f"{self.values}: it fits {self.coordinates} equally well with "
+            f"{self.answers}; {self.remedy}"
         )
 
 
@@ -229,8 +229,8 @@ class DisagreeingNamesError(StructmapError):
             "; ..." if len(self.examples) > 3 else ""
         )
         return (
-            f"{self.values}: {len(self.examples)} of {self.n_named} named residues differ "
-            f"from {self.coordinates} where it fits best ({shown}); check that the two "
+            f"{self.values}: {len(self.examples)} of {self.n_named} named residues "
+            f"differ from {self.coordinates} where it fits best ({shown}); check that the two "
             "belong together, or state the numbering with --offset or --mapping"
         )
 
@@ -248,8 +248,8 @@ class DisagreeingResidueError(StructmapError):
     def __str__(self) -> str:
         return (
             f"{self.mapping}, row {self.row}: residue {self.site} is not in "
-            f"{self.coordinates} (nearest there: {self.nearest}); correct auth_seq_id or "
-            "pdbx_PDB_ins_code in that row, or remove the row"
+            f"{self.coordinates} (nearest there: {self.nearest}); correct auth_seq_id "
+            "or pdbx_PDB_ins_code in that row, or remove the row"
         )
 
 
