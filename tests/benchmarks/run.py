@@ -13,7 +13,7 @@ import time
 from pathlib import Path
 
 ROUNDS = 7
-BARE = "import gemmi, numpy, scipy, scipy.spatial, scipy.stats, pandas"
+BARE = "import gemmi, numpy, scipy, pandas"
 JOBS = {
     "bare imports": ["-c", BARE],
     "structmap --help": ["-m", "structmap.cli", "--help"],
