@@ -17,7 +17,7 @@ What was planted (numbers of the entry):
 * everything else moves at 10 ns, which such profiles cannot see; prolines have no
   amide proton and seven more residues were not measured.
 
-Run ``python examples/make_example.py`` to write the table anew; the same bytes come out.
+``python examples/make_example.py`` writes the table anew, byte for byte the same.
 """
 
 from pathlib import Path
@@ -38,7 +38,7 @@ SPINNING_HERTZ = 60e3
 PROTON_FREQUENCY_HERTZ = 600e6
 SEED = 20260101
 
-# CODATA 2018 values, rounded as printed here; 15N and 1H gyromagnetic ratios in rad/s/T.
+# CODATA 2018, rounded as printed; 1H and 15N gyromagnetic ratios in rad/s/T.
 HBAR, GAMMA_H, GAMMA_N = 1.054571817e-34, 2.6752218744e8, -2.71261804e7
 BOND_METRE, ANISOTROPY = 1.02e-10, -172e-6
 
@@ -66,7 +66,10 @@ def rate_per_amplitude(field_kilohertz, time_second):
 def draw_block(rng, times, low, high):
     """Return values and errors at the usable fields, one row a residue."""
     n_sites = len(times)
-    amplitude, baseline = rng.uniform(low, high, n_sites), rng.uniform(1.5, 3.5, n_sites)
+    amplitude, baseline = (
+        rng.uniform(low, high, n_sites),
+        rng.uniform(1.5, 3.5, n_sites),
+    )
     kernel = np.array([rate_per_amplitude(FIELDS_KILOHERTZ, time) for time in times])
     truth = baseline[:, None] + amplitude[:, None] * kernel
     error = 0.03 * truth + 0.15

@@ -1,4 +1,4 @@
-"""Motional units from measurements on a coordinate file, with the crystal around them."""
+"""Motional units from measurements on coordinates, with the crystal around them."""
 
 from typing import TYPE_CHECKING, Any
 
@@ -13,7 +13,7 @@ __all__ = ["Analysis", "Settings", "StructmapError", "__version__", "analyse"]
 
 
 def __getattr__(name: str) -> Any:
-    """Import the main entry when it is asked for, so that the command line starts fast."""
+    """Import the main entry when asked for, so that the command line starts fast."""
     if name in ("Analysis", "analyse"):
         import structmap.analysis as entry  # noqa: PLC0415
 

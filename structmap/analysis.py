@@ -4,7 +4,6 @@ import html
 import tomllib
 from collections.abc import Callable, Sequence
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -14,7 +13,6 @@ from structmap.contacts import (
     KINDS,
     choose_assemblies,
     contact_cutoff,
-    contacts_within,
     find_contacts,
     make_site_graph,
 )
@@ -124,7 +122,9 @@ class Analysis:
             {
                 "sites.csv": table_text(sites_table(record)),
                 "motional_units.csv": table_text(units_table(record)),
-                "contacts.csv": table_text(contacts_table(record.structure, record.contacts)),
+                "contacts.csv": table_text(
+                    contacts_table(record.structure, record.contacts)
+                ),
                 "mapped.cif": mapped_coordinates(record, self.coordinates),
                 "run.json": run_text(record),
                 "page.html": page_html(record),
@@ -135,7 +135,8 @@ class Analysis:
     def _repr_html_(self) -> str:
         content = html.escape(self.page, quote=True)
         style = "width:100%;height:900px;border:0"
-        return f'<iframe sandbox="allow-scripts" style="{style}" srcdoc="{content}"></iframe>'
+        frame = f'<iframe sandbox="allow-scripts" style="{style}"'
+        return f'{frame} srcdoc="{content}"></iframe>'
 
 
 def _frame(table: Table) -> pd.DataFrame:
@@ -330,7 +331,10 @@ def analyse_example(folder: Path, *, progress: Progress | None = None) -> Analys
     inputs = {name: (source / name).read_bytes() for name in EXAMPLE_FILES}
     settings = make_settings(tomllib.loads(inputs[EXAMPLE_SETTINGS].decode("utf-8")))
     result = analyse(
-        source / EXAMPLE_COORDINATES, source / EXAMPLE_VALUES, settings, progress=progress
+        source / EXAMPLE_COORDINATES,
+        source / EXAMPLE_VALUES,
+        settings,
+        progress=progress,
     )
     write_folder(folder, inputs)
     result.save(folder)
@@ -338,7 +342,9 @@ def analyse_example(folder: Path, *, progress: Progress | None = None) -> Analys
 
 
 def match_numbering(
-    coordinates: Path | str, values: Path | str | Sequence[Path | str], settings: Settings
+    coordinates: Path | str,
+    values: Path | str | Sequence[Path | str],
+    settings: Settings,
 ) -> tuple[Table, tuple[str, ...]]:
     """Bring the numbering of values and coordinates together and no more.
 
@@ -437,11 +443,15 @@ def list_contacts(
     found = find_contacts(
         structure, reach_angstrom=_cutoff(structure, settings), assemblies=assemblies
     )
-    counts = ", ".join(f"{(found.kind == k).sum()} {kind}" for k, kind in enumerate(KINDS))
+    counts = ", ".join(
+        f"{(found.kind == k).sum()} {kind}" for k, kind in enumerate(KINDS)
+    )
     notes = [f"{len(found.kind)} residue contacts: {counts}"]
     if structure.crystal is None:
         notes.append(f"no lattice contacts, because {structure.no_crystal_reason}")
-    names = ", ".join(f"{a.name} ({a.oligomer})" if a.oligomer else a.name for a in assemblies)
+    names = ", ".join(
+        f"{a.name} ({a.oligomer})" if a.oligomer else a.name for a in assemblies
+    )
     notes.append(f"assemblies that make contacts complex: {names or 'none stated'}")
     return contacts_table(structure, found), (*notes, *structure.warnings)
 

@@ -14,8 +14,20 @@ from structmap.settings import Settings, describe_settings, make_settings, setti
 from structmap.version import __version__
 
 DONE, UNUSABLE, WRONG_CALL = 0, 1, 2
-_CONTACT_SETTINGS = ("cutoff_angstrom", "ca_cutoff_angstrom", "assembly", "coordinate_model")
-_MATCH_SETTINGS = ("offset", "mapping", "named_chains_only", "exclude", "columns", "coordinate_model")
+_CONTACT_SETTINGS = (
+    "cutoff_angstrom",
+    "ca_cutoff_angstrom",
+    "assembly",
+    "coordinate_model",
+)
+_MATCH_SETTINGS = (
+    "offset",
+    "mapping",
+    "named_chains_only",
+    "exclude",
+    "columns",
+    "coordinate_model",
+)
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
@@ -53,11 +65,13 @@ def main(arguments: Sequence[str] | None = None) -> int:
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="structmap",
-        description="Which residues move, which of them form one motional unit, and is that unit a "
-        "property of the molecule or of how molecules are packed in this crystal?",
+        description="Which residues move, which of them form one motional unit, and "
+        "is that unit a property of the molecule or of how molecules are packed in this crystal?",
         epilog="structmap COMMAND --help shows a working example of each command.",
     )
-    parser.add_argument("--version", action="version", version=f"structmap {__version__}")
+    parser.add_argument(
+        "--version", action="version", version=f"structmap {__version__}"
+    )
     commands = parser.add_subparsers(title="commands", metavar="COMMAND")
     _add_analyse(commands)
     _add_example(commands)
@@ -75,7 +89,9 @@ def _command(commands: Any, name: str, run: Any, *, summary: str, example: str) 
         formatter_class=argparse.RawDescriptionHelpFormatter,
     )
     command.set_defaults(run=run)
-    command.add_argument("--quiet", action="store_true", help="write nothing to the terminal")
+    command.add_argument(
+        "--quiet", action="store_true", help="write nothing to the terminal"
+    )
     return command
 
 
@@ -84,17 +100,25 @@ def _add_analyse(commands: Any) -> None:
         commands,
         "analyse",
         _run_analyse,
-        summary="find the motional units and what holds them together: tables and one page",
+        summary="find the motional units and what holds them together: tables, page",
         example="structmap example -o try\n"
         "structmap analyse try/4cup.cif.gz try/invented_values.csv -o mine \\\n"
         "    --model mas-r1rho --mas-rate-hertz 60000 --sample deuterated",
     )
-    command.add_argument("coordinates", type=Path, help="mmCIF or PDB file, gzipped or not")
-    command.add_argument("values", type=Path, nargs="+", help="tables of values, joined by site")
-    command.add_argument("-o", "--output", type=Path, required=True, help="folder to write")
+    command.add_argument(
+        "coordinates", type=Path, help="mmCIF or PDB file, gzipped or not"
+    )
+    command.add_argument(
+        "values", type=Path, nargs="+", help="tables of values, joined by site"
+    )
+    command.add_argument(
+        "-o", "--output", type=Path, required=True, help="folder to write"
+    )
     command.add_argument("--settings", type=Path, help="TOML file of settings")
     command.add_argument(
-        "--show-settings", action=_ShowSettings, help="print all settings as TOML and stop"
+        "--show-settings",
+        action=_ShowSettings,
+        help="print all settings as TOML and stop",
     )
     _add_settings(command, [field.name for field in fields(Settings)])
 
@@ -108,7 +132,11 @@ def _add_example(commands: Any) -> None:
         example="structmap example -o try",
     )
     command.add_argument(
-        "-o", "--output", type=Path, default=Path("structmap-example"), help="folder to write"
+        "-o",
+        "--output",
+        type=Path,
+        default=Path("structmap-example"),
+        help="folder to write",
     )
 
 
@@ -120,8 +148,12 @@ def _add_match(commands: Any) -> None:
         summary="bring the numbering of values and coordinates together and show it",
         example="structmap match try/4cup.cif.gz try/invented_values.csv",
     )
-    command.add_argument("coordinates", type=Path, help="mmCIF or PDB file, gzipped or not")
-    command.add_argument("values", type=Path, nargs="+", help="tables of values, joined by site")
+    command.add_argument(
+        "coordinates", type=Path, help="mmCIF or PDB file, gzipped or not"
+    )
+    command.add_argument(
+        "values", type=Path, nargs="+", help="tables of values, joined by site"
+    )
     command.add_argument("-o", "--output", type=Path, help="CSV file to write instead")
     command.add_argument("--settings", type=Path, help="TOML file of settings")
     _add_settings(command, _MATCH_SETTINGS)
@@ -132,21 +164,35 @@ def _add_contacts(commands: Any) -> None:
         commands,
         "contacts",
         _run_contacts,
-        summary="list the residue contacts over the crystal, with operators and cell shifts",
+        summary="list the residue contacts over the crystal, with operators and shifts",
         example="structmap contacts try/4cup.cif.gz -o contacts.csv",
     )
-    command.add_argument("coordinates", type=Path, help="mmCIF or PDB file, gzipped or not")
-    command.add_argument("-o", "--output", type=Path, required=True, help="CSV file to write")
+    command.add_argument(
+        "coordinates", type=Path, help="mmCIF or PDB file, gzipped or not"
+    )
+    command.add_argument(
+        "-o", "--output", type=Path, required=True, help="CSV file to write"
+    )
     command.add_argument("--settings", type=Path, help="TOML file of settings")
     _add_settings(command, _CONTACT_SETTINGS)
 
 
 def _add_settings(command: Any, names: Sequence[str]) -> None:
-    group = command.add_argument_group("settings (the same names stand in a settings file)")
-    meanings, types, defaults = describe_settings(), get_type_hints(Settings), Settings()
+    group = command.add_argument_group(
+        "settings (the same names stand in a settings file)"
+    )
+    meanings, types, defaults = (
+        describe_settings(),
+        get_type_hints(Settings),
+        Settings(),
+    )
     for name in names:
         option, kind = f"--{name.replace('_', '-')}", types[name]
-        say = {"help": f"{meanings[name]} [{_shown(getattr(defaults, name))}]".replace("%", "%%")}
+        say = {
+            "help": f"{meanings[name]} [{_shown(getattr(defaults, name))}]".replace(
+                "%", "%%"
+            )
+        }
         say |= {"dest": f"setting_{name}", "default": None}
         if kind is bool:
             group.add_argument(option, action=argparse.BooleanOptionalAction, **say)
@@ -158,7 +204,9 @@ def _add_settings(command: Any, names: Sequence[str]) -> None:
             group.add_argument(option, type=float, metavar="X", **say)
         else:
             choices = get_args(kind) or None
-            group.add_argument(option, choices=choices, metavar=None if choices else "TEXT", **say)
+            group.add_argument(
+                option, choices=choices, metavar=None if choices else "TEXT", **say
+            )
 
 
 def _comma_parted(text: str) -> tuple[str, ...]:
@@ -204,7 +252,9 @@ def _read_toml(path: Path) -> dict[str, Any]:
     try:
         return tomllib.loads(path.read_text(encoding="utf-8"))
     except OSError as error:
-        raise FileProblemError(path, f"cannot be read ({error.strerror})", "check the path") from error
+        raise FileProblemError(
+            path, f"cannot be read ({error.strerror})", "check the path"
+        ) from error
     except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
         remedy = "compare with structmap analyse --show-settings"
         raise FileProblemError(path, f"is no TOML file ({error})", remedy) from error
@@ -264,7 +314,9 @@ def _run_contacts(call: argparse.Namespace) -> None:
 def _check_output(folder: Path, inputs: Sequence[Path]) -> None:
     """Refuse an output that is a file or an input before any work is done."""
     if folder.exists() and not folder.is_dir():
-        raise FileProblemError(folder, "is a file, not a folder", "name another folder with -o")
+        raise FileProblemError(
+            folder, "is a file, not a folder", "name another folder with -o"
+        )
     for path in inputs:
         if folder.resolve() == path.resolve():
             raise FileProblemError(folder, "is an input", "name another folder with -o")

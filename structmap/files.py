@@ -32,7 +32,9 @@ def write_folder(folder: Path, files: Mapping[str, str | bytes]) -> None:
     try:
         folder.parent.mkdir(parents=True, exist_ok=True)
         if folder.exists() and not folder.is_dir():
-            raise FileProblemError(folder, "is a file, not a folder", "name another folder")
+            raise FileProblemError(
+                folder, "is a file, not a folder", "name another folder"
+            )
         beside = Path(tempfile.mkdtemp(prefix=f".{folder.name}-", dir=folder.parent))
     except OSError as error:
         raise _not_writable(folder, error) from error
@@ -64,7 +66,7 @@ def write_file(path: Path, content: str | bytes) -> None:
     beside = path.with_name(f".{path.name}.part")
     try:
         _write(beside, content)
-        os.replace(beside, path)
+        beside.replace(path)
     except OSError as error:
         raise _not_writable(path, error) from error
     finally:
@@ -85,10 +87,12 @@ def _move_into_place(beside: Path, folder: Path, names: list[str]) -> None:
     for name in names:
         target = folder / name
         target.parent.mkdir(parents=True, exist_ok=True)
-        os.replace(beside / name, target)
+        (beside / name).replace(target)
 
 
 def _not_writable(path: Path, error: OSError) -> FileProblemError:
     return FileProblemError(
-        path, f"cannot be written ({error.strerror or error})", "choose a place you may write to"
+        path,
+        f"cannot be written ({error.strerror or error})",
+        "choose a place you may write to",
     )

@@ -110,7 +110,9 @@ def judge_lattice(
     )
 
 
-def _verdict(n_members: int, n_chain_parts: int, pieces: tuple[tuple[int, ...], ...]) -> str:
+def _verdict(
+    n_members: int, n_chain_parts: int, pieces: tuple[tuple[int, ...], ...]
+) -> str:
     needed = SHARE_NEEDED * (n_members - 1)
     if sum(len(piece) >= SMALLEST_PIECE for piece in pieces) > 1:
         return "lattice-joined"
@@ -124,7 +126,7 @@ def _verdict(n_members: int, n_chain_parts: int, pieces: tuple[tuple[int, ...], 
 def _pieces(
     members: NDArray[np.int64], graph: SiteGraph, highest_kind: int
 ) -> tuple[tuple[int, ...], ...]:
-    """Return the connected parts of the members over edges up to a kind, largest first."""
+    """Return the parts of the members over edges up to a kind, largest first."""
     place = np.full(max(graph.n_sites, int(members.max()) + 1), -1)
     place[members] = np.arange(len(members))
     first, second = place[graph.site_1], place[graph.site_2]
@@ -137,7 +139,9 @@ def _pieces(
 def _part_of_node(
     first: NDArray[np.int64], second: NDArray[np.int64], n_nodes: int
 ) -> NDArray[Any]:
-    adjacency = coo_array((np.ones(len(first)), (first, second)), shape=(n_nodes, n_nodes))
+    adjacency = coo_array(
+        (np.ones(len(first)), (first, second)), shape=(n_nodes, n_nodes)
+    )
     labels: NDArray[Any] = connected_components(adjacency, directed=False)[1]
     return labels
 
@@ -152,13 +156,22 @@ def _contacts_between(
     for index, piece in enumerate(pieces):
         piece_of_site[list(piece)] = index
     n_residues = 1 + max(
-        int(sites.copy_residue.max()), int(contacts.residue_1.max()), int(contacts.residue_2.max())
+        int(sites.copy_residue.max()),
+        int(contacts.residue_1.max()),
+        int(contacts.residue_2.max()),
     )
     piece_of_residue = np.full(n_residues, -1)
     in_unit = piece_of_site[sites.copy_site] >= 0
-    piece_of_residue[sites.copy_residue[in_unit]] = piece_of_site[sites.copy_site[in_unit]]
-    first, second = piece_of_residue[contacts.residue_1], piece_of_residue[contacts.residue_2]
-    joins = (first >= 0) & (second >= 0) & (first != second) & (contacts.kind == LATTICE)
+    piece_of_residue[sites.copy_residue[in_unit]] = piece_of_site[
+        sites.copy_site[in_unit]
+    ]
+    first, second = (
+        piece_of_residue[contacts.residue_1],
+        piece_of_residue[contacts.residue_2],
+    )
+    joins = (
+        (first >= 0) & (second >= 0) & (first != second) & (contacts.kind == LATTICE)
+    )
     return np.flatnonzero(joins)
 
 
@@ -204,7 +217,8 @@ def joining_distances(
         assemblies=assemblies,
     )
     chain, both, all_kinds = (
-        _covering_distance(found, residues, owners, kind) for kind in (CHAIN, COMPLEX, LATTICE)
+        _covering_distance(found, residues, owners, kind)
+        for kind in (CHAIN, COMPLEX, LATTICE)
     )
     return chain, both, all_kinds
 
@@ -214,11 +228,16 @@ def _only_residues(structure: Structure, residues: NDArray[np.int64]) -> Structu
     keep = np.isin(structure.residue_of_atom, residues)
     arrays = ("position", "residue_of_atom", "model_of_atom", "atom_name", "element")
     more = ("altloc", "occupancy", "b_iso")
-    return replace(structure, **{name: getattr(structure, name)[keep] for name in arrays + more})
+    return replace(
+        structure, **{name: getattr(structure, name)[keep] for name in arrays + more}
+    )
 
 
 def _covering_distance(
-    found: Contacts, residues: NDArray[np.int64], owners: NDArray[np.int64], highest_kind: int
+    found: Contacts,
+    residues: NDArray[np.int64],
+    owners: NDArray[np.int64],
+    highest_kind: int,
 ) -> float:
     """Return the shortest reach at which one component covers every owner."""
     nodes, node_of_copy = np.unique(residues, return_inverse=True)
@@ -290,7 +309,9 @@ class NumberedContacts:
         store_read_only(self, "of_contact", np.int64, (None,))
 
 
-def number_crystal_contacts(structure: Structure, contacts: Contacts) -> NumberedContacts:
+def number_crystal_contacts(
+    structure: Structure, contacts: Contacts
+) -> NumberedContacts:
     """Give the neighbours in the crystal Roman numerals.
 
     An operator with its shift and the inverse of both share one numeral. Numerals run
@@ -314,7 +335,9 @@ def number_crystal_contacts(structure: Structure, contacts: Contacts) -> Numbere
         return NumberedContacts(crystal_contacts=(), of_contact=of_contact)
     keys = np.column_stack([contacts.operator[indices], contacts.shift[indices]])
     distinct, which = np.unique(keys, axis=0, return_inverse=True)
-    either_way = np.array([min(tuple(key), inverse_element(crystal, key)) for key in distinct])
+    either_way = np.array(
+        [min(tuple(key), inverse_element(crystal, key)) for key in distinct]
+    )
     classes, class_of_key = np.unique(either_way, axis=0, return_inverse=True)
     class_of_contact = class_of_key.reshape(-1)[which.reshape(-1)]
     counts = np.bincount(class_of_contact)
@@ -361,7 +384,9 @@ def inverse_element(crystal: Crystal, key: NDArray[np.int64]) -> tuple[int, ...]
     same = (crystal.rotations == inverse).all(axis=(1, 2))
     same &= ((crystal.translations - translation) % 24 == 0).all(axis=1)
     if not same.any():
-        raise ValueError(f"operator {crystal.triplets[operator]} has no inverse in the list")
+        raise ValueError(
+            f"operator {crystal.triplets[operator]} has no inverse in the list"
+        )
     found = int(np.flatnonzero(same)[0])
     return (found, *((translation - crystal.translations[found]) // 24).tolist())
 
@@ -380,7 +405,9 @@ def element_text(crystal: Crystal, key: Sequence[int] | NDArray[np.int64]) -> st
     str
         Triplet of the International Tables and whole cells.
     """
-    return f"{crystal.triplets[int(key[0])]} [{int(key[1])} {int(key[2])} {int(key[3])}]"
+    return (
+        f"{crystal.triplets[int(key[0])]} [{int(key[1])} {int(key[2])} {int(key[3])}]"
+    )
 
 
 def roman_numeral(number: int) -> str:

@@ -120,27 +120,42 @@ def _checked(name: str, value: Any, kind: Any, *, source: str) -> Any:
     if get_origin(kind) is Literal:
         if value not in get_args(kind):
             choices = ", ".join(get_args(kind))
-            raise SettingError(source, name, f"is {value!r}", f"choose one of {choices}")
+            raise SettingError(
+                source, name, f"is {value!r}", f"choose one of {choices}"
+            )
         return value
     if get_origin(kind) is tuple:
         value = [value] if isinstance(value, str) else value
-        if isinstance(value, list | tuple) and all(isinstance(part, str) for part in value):
+        if isinstance(value, list | tuple) and all(
+            isinstance(part, str) for part in value
+        ):
             return tuple(value)
         raise SettingError(source, name, f"is {value!r}", "give a list of texts")
     return _checked_scalar(name, value, kind, source=source)
 
 
 def _checked_scalar(name: str, value: Any, kind: Any, *, source: str) -> Any:
-    plain = [part for part in (get_args(kind) or (kind,)) if part is not type(None)][0]
-    if plain is float and isinstance(value, int | float) and not isinstance(value, bool):
+    plain = next(part for part in (get_args(kind) or (kind,)) if part is not type(None))
+    if (
+        plain is float
+        and isinstance(value, int | float)
+        and not isinstance(value, bool)
+    ):
         if not 0 <= value < float("inf"):
-            raise SettingError(source, name, f"is {value}", "give a number of 0 or more")
+            raise SettingError(
+                source, name, f"is {value}", "give a number of 0 or more"
+            )
         return float(value)
     if plain in (bool, str) and isinstance(value, plain):
         return value
     if plain is int and isinstance(value, int) and not isinstance(value, bool):
         return value
-    wanted = {float: "a number", int: "a whole number", bool: "true or false", str: "a text"}
+    wanted = {
+        float: "a number",
+        int: "a whole number",
+        bool: "true or false",
+        str: "a text",
+    }
     raise SettingError(source, name, f"is {value!r}", f"give {wanted[plain]}")
 
 
@@ -153,7 +168,9 @@ def describe_settings() -> dict[str, str]:
         Name and one paragraph, in the order of the record.
     """
     text = Settings.__doc__ or ""
-    found = re.findall(r"^    (\w+) : [^\n]*\n((?:        [^\n]*\n?)+)", text, flags=re.MULTILINE)
+    found = re.findall(
+        r"^    (\w+) : [^\n]*\n((?:        [^\n]*\n?)+)", text, flags=re.MULTILINE
+    )
     said = {name: " ".join(body.split()).replace("``", "") for name, body in found}
     return {field.name: said.get(field.name, "") for field in fields(Settings)}
 
@@ -172,7 +189,9 @@ def settings_text(settings: Settings | None = None) -> str:
         A file that ``--settings`` reads.
     """
     settings = settings or Settings()
-    lines = ["# Settings of structmap with their defaults; remove what you do not change."]
+    lines = [
+        "# Settings of structmap with their defaults; remove what you do not change."
+    ]
     for name, meaning in describe_settings().items():
         value = getattr(settings, name)
         lines += ["", f"# {meaning}"]

@@ -1,0 +1,78 @@
+"""Tables as text."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+Cell = str | int | float | bool | None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Table:
+    """A table before it is written.
+
+    Attributes
+    ----------
+    columns : tuple of str
+        Heading.
+    rows : tuple of tuple
+        Cells: text, numbers, truth values, None for blank.
+    """
+
+    columns: tuple[str, ...]
+    rows: tuple[tuple[Cell, ...], ...]
+
+
+def table_text(table: Table) -> str:
+    """Return a table as CSV: no comments, ``yes`` and ``no``, blank for nothing.
+
+    Parameters
+    ----------
+    table : Table
+
+    Returns
+    -------
+    str
+        Lines that end in a line feed.
+    """
+    lines = [table.columns, *table.rows]
+    return "".join(",".join(cell_text(cell) for cell in line) + "\n" for line in lines)
+
+
+def cell_text(cell: Cell) -> str:
+    """Return one cell as text.
+
+    Parameters
+    ----------
+    cell : str, int, float, bool or None
+
+    Returns
+    -------
+    str
+        Quoted where CSV needs it.
+    """
+    if cell is None:
+        return ""
+    if isinstance(cell, bool | np.bool_):
+        return "yes" if cell else "no"
+    if isinstance(cell, float | np.floating):
+        return "" if np.isnan(cell) else f"{cell:.6g}"
+    text = str(cell)
+    if any(mark in text for mark in ',"\n\r'):
+        return '"' + text.replace('"', '""') + '"'
+    return text
+
+
+def plain(text: str) -> str:
+    """Return text with ordinary spaces, for tables and terminals.
+
+    Parameters
+    ----------
+    text : str
+
+    Returns
+    -------
+    str
+        Without no-break and thin spaces.
+    """
+    return text.replace("\u00a0", " ").replace("\u202f", " ")

@@ -1,0 +1,58 @@
+"""``motional_units.csv``: a row for each motional unit."""
+
+from structmap.result import AnalysisRecord, MotionalUnit
+from structmap.tables.text import Cell, Table, plain
+from structmap.words import unit_sentence
+
+
+def units_table(record: AnalysisRecord) -> Table:
+    """Return a row for each motional unit.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    Table
+        ``motional_units.csv``.
+    """
+    columns = (
+        *("motional_unit", "n_sites", "sites", "energy", "verdict", "p_any", "p_place"),
+        *("p_smooth", "stability", "contrast", "lattice_verdict", "lattice_operators"),
+        *(
+            "share_kept_without_lattice",
+            "pieces_without_lattice",
+            "joining_distance_chain",
+        ),
+        *(
+            "joining_distance_complex",
+            "joining_distance_lattice",
+            "one_process",
+            "parameter",
+        ),
+        *("parameter_low", "parameter_high", "plain_words"),
+    )
+    return Table(
+        columns=columns, rows=tuple(_unit_row(record, unit) for unit in record.units)
+    )
+
+
+def _unit_row(record: AnalysisRecord, unit: MotionalUnit) -> tuple[Cell, ...]:
+    lattice = unit.lattice
+    names = record.sites.name
+    pieces = " | ".join(
+        " ".join(names[s] for s in piece) for piece in lattice.pieces_without_lattice
+    )
+    return (
+        *(unit.name, len(unit.members), " ".join(names[unit.members]), unit.energy),
+        *(unit.verdict, unit.p_any, unit.p_place, unit.p_smooth, unit.stability),
+        *(unit.contrast, lattice.verdict, "; ".join(lattice.operators)),
+        *(
+            lattice.share_kept_without_lattice,
+            pieces,
+            *lattice.joining_distance_angstrom,
+        ),
+        *(None, None, None, None),
+        plain(unit_sentence(record, unit)),
+    )

@@ -1,0 +1,42 @@
+"""The sentences that tables, page and terminal share.
+
+Unit names stand in the sentences as ``U1``, ``U2``, …, so that the page can turn them
+into buttons. Nothing here says "significant" or "rigid", and nothing names a cause that
+was not tested.
+"""
+
+from structmap.words.care import care_sentences
+from structmap.words.facts import facts
+from structmap.words.head import grouped_quantities, result_sentences, title
+from structmap.words.names import measured_chains, number_in_words, site_name
+from structmap.words.notes import colophon, rests_on, summary_lines
+from structmap.words.phrases import joining_numerals, lattice_phrase, members_phrase
+from structmap.words.units import (
+    p_text,
+    unit_holds,
+    unit_process,
+    unit_sentence,
+    unit_sure,
+)
+
+__all__ = [
+    "care_sentences",
+    "colophon",
+    "facts",
+    "grouped_quantities",
+    "joining_numerals",
+    "lattice_phrase",
+    "measured_chains",
+    "members_phrase",
+    "number_in_words",
+    "p_text",
+    "rests_on",
+    "result_sentences",
+    "site_name",
+    "summary_lines",
+    "title",
+    "unit_holds",
+    "unit_process",
+    "unit_sentence",
+    "unit_sure",
+]

@@ -1,0 +1,134 @@
+"""Names, numbers and lists in prose."""
+
+from collections.abc import Iterable
+
+import numpy as np
+
+from structmap.result import AnalysisRecord
+from structmap.structure import POLYMER, one_letter
+
+NUMBERS = (
+    *("no", "one", "two", "three", "four", "five", "six", "seven", "eight", "nine"),
+    *("ten", "eleven", "twelve"),
+)
+
+
+def number_in_words(number: int) -> str:
+    """Return a number up to twelve as a word, a larger one in figures.
+
+    Parameters
+    ----------
+    number : int
+        From 0.
+
+    Returns
+    -------
+    str
+        ``three`` for 3, ``18 800`` for 18800, with thin no-break spaces.
+    """
+    if number < len(NUMBERS):
+        return NUMBERS[number]
+    return f"{number:,}".replace(",", "\u202f") if number > 9999 else str(number)
+
+
+def site_name(record: AnalysisRecord, site: int) -> str:
+    """Return the short name of a site for prose, ``D56A``.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    site : int
+        Index of a site.
+
+    Returns
+    -------
+    str
+        One letter, number and insertion code; the chain in front when sites of several
+        chains were measured, the atom behind when one is named.
+    """
+    structure, residue = record.structure, int(record.sites.residue[site])
+    if residue < 0:
+        return str(record.sites.name[site])
+    letter = one_letter(str(structure.auth_comp_id[residue]))
+    text = f"{letter}{structure.auth_seq_id[residue]}{structure.ins_code[residue]}"
+    if len(measured_chains(record)) > 1:
+        text = f"{structure.auth_asym_id[residue]}\u00a0{text}"
+    atom = record.sites.atom[site]
+    return f"{text}\u00a0{atom}" if atom and _atoms_differ(record) else text
+
+
+def _atoms_differ(record: AnalysisRecord) -> bool:
+    residues = record.sites.residue[record.sites.residue >= 0]
+    return len(np.unique(residues)) < len(residues)
+
+
+def measured_chains(record: AnalysisRecord) -> tuple[str, ...]:
+    """Return the chains that hold the first copies of measured sites.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    tuple of str
+        Author names, in the order of the coordinates.
+    """
+    residues = record.sites.residue[record.sites.residue >= 0]
+    names = record.structure.auth_asym_id[np.sort(residues)].tolist()
+    return tuple(dict.fromkeys(names))
+
+
+def listing(parts: Iterable[str], last: str = "and") -> str:
+    """Return parts in one phrase, ``a, b and c``.
+
+    Parameters
+    ----------
+    parts : iterable of str
+    last : str, default "and"
+        Stands before the last part.
+
+    Returns
+    -------
+    str
+        Blank for no part.
+    """
+    parts = list(parts)
+    if len(parts) < 2:
+        return "".join(parts)
+    return f"{', '.join(parts[:-1])} {last} {parts[-1]}"
+
+
+def residues_in_view(record: AnalysisRecord) -> int:
+    """Count the polymer residues of the chains that were measured.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    int
+        Copies by NCS count once.
+    """
+    structure = record.structure
+    in_view = np.isin(structure.auth_asym_id, measured_chains(record))
+    in_view &= structure.kind_of_residue == POLYMER
+    in_view &= structure.original_residue == np.arange(len(in_view))
+    return int(in_view.sum())
+
+
+def measured_residues(record: AnalysisRecord) -> int:
+    """Count the residues whose values are compared.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    int
+        Equivalent chains count once.
+    """
+    sites = record.sites.residue[record.measurements.site]
+    return len(np.unique(sites[sites >= 0]))

@@ -1,0 +1,154 @@
+"""Phrases on one motional unit: its members, what holds it together."""
+
+import numpy as np
+
+from structmap.lattice import number_crystal_contacts
+from structmap.result import AnalysisRecord, MotionalUnit
+from structmap.words.names import listing, number_in_words, site_name
+
+NAMED_AT_MOST = 5
+
+
+def came_back(unit: MotionalUnit) -> str:
+    """Return how well a unit came back when its errors were drawn again.
+
+    Parameters
+    ----------
+    unit : MotionalUnit
+
+    Returns
+    -------
+    str
+        A phrase that follows "it".
+    """
+    if np.isnan(unit.stability):
+        return "was not tried again with other errors"
+    share = f"{100 * unit.stability:.0f}\u00a0%"
+    return f"overlaps by {share} with what repeats with other errors find"
+
+
+def members_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return the members of a unit: all when few, else their number and a centre.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    str
+        ``S28 N31 with Y51 E53 of a neighbour`` or ``seven residues around L23``.
+    """
+    pieces = unit.lattice.pieces_without_lattice
+    if len(unit.members) <= NAMED_AT_MOST:
+        groups = [" ".join(site_name(record, s) for s in piece) for piece in pieces]
+        return " with ".join(groups[:2]) + (
+            " of a neighbour" if len(pieces) > 1 else ""
+        )
+    return (
+        f"{number_in_words(len(unit.members))} residues around "
+        f"{site_name(record, _centre(record, unit))}"
+    )
+
+
+def _centre(record: AnalysisRecord, unit: MotionalUnit) -> int:
+    """Return the member with the largest membership times deviation."""
+    row = np.searchsorted(record.measurements.site, unit.members)
+    weight = np.nan_to_num(record.membership_probability[unit.members], nan=1.0)
+    return int(
+        unit.members[np.argmax(weight * np.abs(record.behaviour.deviation[row]))]
+    )
+
+
+def lattice_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return in words what holds a unit together.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    str
+        A phrase that follows the name of the unit.
+    """
+    verdict = unit.lattice.verdict
+    if verdict == "internal":
+        return "lies inside the molecule"
+    if verdict == "interface":
+        return f"bridges {bridged_chains(record, unit)} of the assembly"
+    where = across_phrase(record, unit)
+    if verdict == "lattice-joined":
+        kept = len(unit.lattice.pieces_without_lattice[0])
+        stay = "stay" if kept > 1 else "stays"
+        return (
+            f"is held together by {where}; {number_in_words(kept)} of its "
+            f"{number_in_words(len(unit.members))} residues {stay} together without it"
+        )
+    return (
+        f"exists only across {where}, and no unit is left of it when the neighbours "
+        "are taken away"
+    )
+
+
+def bridged_chains(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return the chains that a unit bridges.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    str
+        ``chains A and B``.
+    """
+    copies = np.isin(record.sites.copy_site, unit.members)
+    names = record.structure.auth_asym_id[record.sites.copy_residue[copies]].tolist()
+    chains = sorted(set(names))
+    if len(chains) == 1:
+        return f"chain {chains[0]} and its mates"
+    return f"chains {listing(chains)}"
+
+
+def across_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return the crystal contacts that join a unit.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    str
+        ``crystal contact II``.
+    """
+    numerals = joining_numerals(record, unit)
+    noun = "crystal contact" if len(numerals) == 1 else "crystal contacts"
+    return f"{noun} {listing(numerals)}"
+
+
+def joining_numerals(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
+    """Return the numerals of the crystal contacts that join a unit.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    tuple of str
+        Roman numerals in rising order; empty when none is needed.
+    """
+    numbered = number_crystal_contacts(record.structure, record.contacts)
+    places = sorted(
+        {int(numbered.of_contact[index]) for index in unit.lattice.contacts}
+    )
+    return tuple(
+        numbered.crystal_contacts[place].numeral for place in places if place >= 0
+    )

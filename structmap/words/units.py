@@ -1,0 +1,153 @@
+"""What is said of one motional unit: how sure, what holds it, one sentence."""
+
+import numpy as np
+
+from structmap.result import AnalysisRecord, MotionalUnit
+from structmap.words.phrases import (
+    across_phrase,
+    bridged_chains,
+    lattice_phrase,
+    members_phrase,
+)
+
+
+def unit_sure(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
+    """Return how sure a unit is: the verdict, then its reasons.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    tuple of str
+        The first is the verdict; ``not tested`` when there is none.
+    """
+    del record
+    if not unit.verdict:
+        return ("not tested",)
+    lines = [unit.verdict]
+    if not np.isnan(unit.p_place):
+        lines.append(f"p\u00a0{p_text(unit.p_place)} against chance")
+    if not np.isnan(unit.p_smooth):
+        lines.append(f"p\u00a0{p_text(unit.p_smooth)} against a gradient")
+    if not np.isnan(unit.stability):
+        lines.append(f"{100 * unit.stability:.0f}\u00a0% overlap in repeats")
+    return tuple(lines)
+
+
+def p_text(p: float) -> str:
+    """Return a p-value to two figures.
+
+    Parameters
+    ----------
+    p : float
+        From 0 to 1.
+
+    Returns
+    -------
+    str
+        ``0.0021`` or ``< 0.001``.
+    """
+    if p < 0.001:
+        return "<\u00a00.001"
+    return f"{p:.2g}" if p < 0.995 else "1.0"
+
+
+def unit_holds(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
+    """Return what holds a unit together, in lines.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    tuple of str
+        The first says what, then operators, then what is left without neighbours.
+    """
+    verdict, count = unit.lattice.verdict, len(unit.members)
+    if verdict in ("internal", "interface"):
+        what = (
+            "the molecule itself"
+            if verdict == "internal"
+            else _bridge_line(record, unit)
+        )
+        if record.structure.crystal is None:
+            return (what, "the crystal was not asked: there is none")
+        kept = len(unit.lattice.pieces_without_lattice[0])
+        same = f"the same {count}" if kept == count else f"{kept} of its {count}"
+        return (what, f"{same} without crystal neighbours")
+    only = "only " if verdict == "lattice-only" else ""
+    operators = dict.fromkeys(
+        _operator_triplet(text) for text in unit.lattice.operators
+    )
+    return (only + across_phrase(record, unit), *operators, _left_without(unit))
+
+
+def _bridge_line(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    return f"the assembly: {bridged_chains(record, unit)}"
+
+
+def _operator_triplet(text: str) -> str:
+    return text.split(" [", maxsplit=1)[0]
+
+
+def _left_without(unit: MotionalUnit) -> str:
+    sizes = [len(piece) for piece in unit.lattice.pieces_without_lattice]
+    listed = " + ".join(str(size) for size in sizes)
+    if sizes[0] < 3:
+        return f"nothing left without it: pieces of {listed}, too small to be a unit"
+    return f"pieces of {listed} without it"
+
+
+def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
+    """Return whether one process explains a unit.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    tuple of str
+        ``not tested`` when no model was fitted.
+    """
+    del record, unit
+    return ("not tested",)
+
+
+def unit_sentence(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return one sentence on a unit that a collaborator can read.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    unit : MotionalUnit
+
+    Returns
+    -------
+    str
+        Members, what holds them together, how sure.
+    """
+    head = (
+        f"{unit.name}, {members_phrase(record, unit)}, {lattice_phrase(record, unit)}"
+    )
+    return f"{head}; {_sure_phrase(unit)}."
+
+
+def _sure_phrase(unit: MotionalUnit) -> str:
+    if not unit.verdict:
+        return "how sure this is was not tested"
+    chance = f"p {p_text(unit.p_place)} against chance placement".replace("\u00a0", " ")
+    said = {
+        "supported": f"supported by the data ({chance})",
+        "beyond-gradient": "supported, and more sharply bounded than a gradient "
+        "({chance})",
+        "graded": f"better read as a gradient than as a unit ({chance})",
+        "tentative": "a hint that these data do not show beyond doubt, nor exclude",
+    }
+    return said[unit.verdict]
