@@ -65,8 +65,8 @@ def main(arguments: Sequence[str] | None = None) -> int:
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="structmap",
-        description="Which residues move, which of them form one motional unit, and "
-        "is that unit a property of the molecule or of how molecules are packed in this crystal?",
+        description="Which residues move, which form one motional unit, and is that "
+        "unit a property of the molecule or of how this crystal is packed?",
         epilog="structmap COMMAND --help shows a working example of each command.",
     )
     parser.add_argument(

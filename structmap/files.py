@@ -70,7 +70,8 @@ def write_file(path: Path, content: str | bytes) -> None:
     except OSError as error:
         raise _not_writable(path, error) from error
     finally:
-        beside.unlink(missing_ok=True)
+        if beside.is_file():
+            beside.unlink()
 
 
 def _write(path: Path, content: str | bytes) -> None:
