@@ -1,0 +1,346 @@
+"""Pairs of residues that come close, for one image of the molecule at a time."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, fields, replace
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.spatial import cKDTree
+
+from structmap.structure import POLYMER, Structure
+
+SPECIAL_ANGSTROM = 0.8  # an atom this close to its own image is one atom on an axis
+LARGEST_GRID = 20_000_000
+LONGEST_BOND_ANGSTROM = 2.0  # C-N is 1.33, O3'-P 1.61
+LONGEST_CA_STEP_ANGSTROM = 4.2  # 3.8 from CA to CA
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class ResiduePairs:
+    """Residue pairs within reach for one image, each once.
+
+    Attributes
+    ----------
+    first, second : ndarray of int, shape (n,)
+        Residues; the second stands in the image.
+    distance_angstrom : ndarray of float, shape (n,)
+        Shortest over allowed atom pairs.
+    atom_1, atom_2 : ndarray of int, shape (n,)
+        Atoms of the structure at that distance.
+    n_atom_pairs : ndarray of int, shape (n,)
+    """
+
+    first: NDArray[np.int64]
+    second: NDArray[np.int64]
+    distance_angstrom: NDArray[np.float64]
+    atom_1: NDArray[np.int64]
+    atom_2: NDArray[np.int64]
+    n_atom_pairs: NDArray[np.int64]
+
+    def at(self, index: NDArray[np.int64]) -> "ResiduePairs":
+        """Return some of the pairs.
+
+        Parameters
+        ----------
+        index : ndarray of int, shape (n,)
+
+        Returns
+        -------
+        ResiduePairs
+        """
+        return ResiduePairs(
+            **{name: getattr(self, name)[index] for name in PAIR_COLUMNS}
+        )
+
+    def seen_from_second(self, flipped: NDArray[np.bool_]) -> "ResiduePairs":
+        """Return the pairs, some with first and second exchanged.
+
+        Parameters
+        ----------
+        flipped : ndarray of bool, shape (n,)
+
+        Returns
+        -------
+        ResiduePairs
+        """
+        return replace(
+            self,
+            first=np.where(flipped, self.second, self.first),
+            second=np.where(flipped, self.first, self.second),
+            atom_1=np.where(flipped, self.atom_2, self.atom_1),
+            atom_2=np.where(flipped, self.atom_1, self.atom_2),
+        )
+
+
+PAIR_COLUMNS = tuple(column.name for column in fields(ResiduePairs))
+
+
+def join_pairs(parts: Sequence[ResiduePairs]) -> ResiduePairs:
+    """Return the pairs of several lists one after the other.
+
+    Parameters
+    ----------
+    parts : sequence of ResiduePairs
+        At least one.
+
+    Returns
+    -------
+    ResiduePairs
+    """
+    return ResiduePairs(
+        **{
+            name: np.concatenate([getattr(part, name) for part in parts])
+            for name in PAIR_COLUMNS
+        }
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class AtomPairs:
+    """Atom pairs within reach, the second in an image.
+
+    Attributes
+    ----------
+    first, second : ndarray of int, shape (n,)
+        Indices into the atoms of the molecule searched.
+    distance_angstrom : ndarray of float, shape (n,)
+    """
+
+    first: NDArray[np.int64]
+    second: NDArray[np.int64]
+    distance_angstrom: NDArray[np.float64]
+
+    def where(self, keep: NDArray[np.bool_]) -> "AtomPairs":
+        """Return some of the pairs.
+
+        Parameters
+        ----------
+        keep : ndarray of bool, shape (n,)
+
+        Returns
+        -------
+        AtomPairs
+        """
+        return AtomPairs(
+            first=self.first[keep],
+            second=self.second[keep],
+            distance_angstrom=self.distance_angstrom[keep],
+        )
+
+
+class Molecule:
+    """The polymer atoms of one model, ready to be searched.
+
+    Parameters
+    ----------
+    structure : Structure
+    model : int
+        Rank of the model.
+    reach_angstrom : float
+        Largest distance that counts.
+    residues : ndarray of bool, shape (n_residues,)
+        Residues that take part.
+    """
+
+    def __init__(
+        self,
+        structure: Structure,
+        *,
+        model: int,
+        reach_angstrom: float,
+        residues: NDArray[np.bool_],
+    ) -> None:
+        taken = residues & (structure.kind_of_residue == POLYMER)
+        self.atom = np.flatnonzero(
+            (structure.model_of_atom == model) & taken[structure.residue_of_atom]
+        )
+        self.reach = reach_angstrom
+        self.position = structure.position[self.atom]
+        self.residue = structure.residue_of_atom[self.atom]
+        letters = structure.altloc[self.atom]
+        self.altloc = np.unique(letters, return_inverse=True)[1] * (letters != "")
+        self.n_residues = len(structure.kind_of_residue)
+        names = structure.atom_name[self.atom]
+        ends = ("CA",), ("CA",)
+        if not structure.ca_only:
+            ends = ("C", "O3'"), ("N", "P")
+        self._leaves, self._enters = np.isin(names, ends[0]), np.isin(names, ends[1])
+        self._longest_bond = (
+            LONGEST_CA_STEP_ANGSTROM if structure.ca_only else LONGEST_BOND_ANGSTROM
+        )
+        self._copy = structure.copy_of_residue[self.residue]
+        self._start = np.flatnonzero(np.diff(self.residue, prepend=-1))
+        self._count = np.diff(self._start, append=len(self.atom))
+        self._tree = cKDTree(self.position, balanced_tree=False, compact_nodes=False)
+        self._grid = _Grid(self.position, reach_angstrom)
+        sums = np.add.reduceat(self.position, self._start, axis=0)
+        self.centre = sums / self._count[:, None]
+        spread = self.position - np.repeat(self.centre, self._count, axis=0)
+        distance = np.sqrt(np.einsum("ij,ij->i", spread, spread))
+        self.radius = np.maximum.reduceat(distance, self._start)
+        self.low, self.high = self.position.min(axis=0), self.position.max(axis=0)
+
+    def own_pairs(self) -> ResiduePairs:
+        """Return the pairs within the molecule, each once, no residue with itself.
+
+        Returns
+        -------
+        ResiduePairs
+            With ``first < second``.
+        """
+        pairs = self._tree.query_pairs(self.reach, output_type="ndarray")
+        first, second = pairs[:, 0], pairs[:, 1]
+        between = self.residue[first] != self.residue[second]
+        first, second = first[between], second[between]
+        apart = self.position[first] - self.position[second]
+        found = AtomPairs(
+            first=first,
+            second=second,
+            distance_angstrom=np.sqrt(np.einsum("ij,ij->i", apart, apart)),
+        )
+        agree = self._altlocs_agree(found)
+        return self._with_bonded(
+            self._residue_pairs(found.where(agree)), found.where(~agree)
+        )
+
+    def _with_bonded(self, found: ResiduePairs, left_out: AtomPairs) -> ResiduePairs:
+        """Add neighbours in the chain whose bonded atoms have unlike letters."""
+        first, second = left_out.first, left_out.second
+        bonded = (
+            (self.residue[second] == self.residue[first] + 1)
+            & (self._copy[first] == self._copy[second])
+            & (self._leaves[first] & self._enters[second])
+            & (left_out.distance_angstrom <= self._longest_bond)
+        )
+        if not bonded.any():
+            return found
+        extra = self._residue_pairs(left_out.where(bonded))
+        known = found.first * self.n_residues + found.second
+        new = ~np.isin(extra.first * self.n_residues + extra.second, known)
+        return join_pairs([found, extra.at(np.flatnonzero(new))])
+
+    def image_pairs(
+        self, matrix: NDArray[np.float64], *, self_inverse: bool
+    ) -> ResiduePairs:
+        """Return the pairs of the molecule with an image of it.
+
+        Parameters
+        ----------
+        matrix : ndarray of float, shape (4, 4)
+            Cartesian transform that makes the image.
+        self_inverse : bool
+            Whether the transform is its own inverse; then each pair is found from
+            both sides and kept once, with ``first <= second``.
+
+        Returns
+        -------
+        ResiduePairs
+            Atoms that lie on a symmetry element are not in contact with themselves,
+            nor is a residue that lies on it as a whole.
+        """
+        found = self._atom_pairs(matrix)
+        if self_inverse:
+            found = found.where(found.first <= found.second)
+        found = found.where(self._altlocs_agree(found))
+        same = (found.first == found.second) & (
+            found.distance_angstrom < SPECIAL_ANGSTROM
+        )
+        if not same.any():
+            return self._residue_pairs(found)
+        on_element = self._mostly(self.residue[found.first[same]])
+        first, second = self.residue[found.first], self.residue[found.second]
+        spurious = same | (on_element[first] & (first == second))
+        return self._residue_pairs(found.where(~spurious))
+
+    def _mostly(self, residue: NDArray[np.int64]) -> NDArray[np.bool_]:
+        hits = np.bincount(residue, minlength=self.n_residues)
+        size = np.bincount(self.residue, minlength=self.n_residues)
+        return np.asarray((2 * hits > size) & (size > 0))
+
+    def _altlocs_agree(self, pairs: AtomPairs) -> NDArray[np.bool_]:
+        if not self.altloc.any():
+            return np.ones(len(pairs.first), dtype=np.bool_)
+        first, second = self.altloc[pairs.first], self.altloc[pairs.second]
+        return np.asarray((first == second) | (first == 0) | (second == 0))
+
+    def _atom_pairs(self, matrix: NDArray[np.float64]) -> AtomPairs:
+        turn, move = matrix[:3, :3].T, matrix[:3, 3]
+        centre = self.centre @ turn + move
+        near = _inside(centre, self.low, self.high, (self.reach + self.radius)[:, None])
+        atoms = np.flatnonzero(np.repeat(near, self._count))
+        position = self.position[atoms] @ turn + move
+        close = np.flatnonzero(self._grid.is_near(position))
+        atoms, position = atoms[close], position[close]
+        if not atoms.size:
+            nothing = np.zeros(0, dtype=np.int64)
+            return AtomPairs(
+                first=nothing, second=nothing, distance_angstrom=np.zeros(0)
+            )
+        image = cKDTree(position, balanced_tree=False, compact_nodes=False)
+        found = self._tree.sparse_distance_matrix(
+            image, self.reach, output_type="ndarray"
+        )
+        return AtomPairs(
+            first=found["i"], second=atoms[found["j"]], distance_angstrom=found["v"]
+        )
+
+    def _residue_pairs(self, pairs: AtomPairs) -> ResiduePairs:
+        key = self.residue[pairs.first] * self.n_residues + self.residue[pairs.second]
+        order = np.argsort(key)
+        key, distance = key[order], pairs.distance_angstrom[order]
+        start = np.flatnonzero(np.diff(key, prepend=-1))
+        count = np.diff(start, append=len(key))
+        shortest = np.minimum.reduceat(distance, start) if start.size else distance
+        at_shortest = np.flatnonzero(distance == np.repeat(shortest, count))
+        closest = at_shortest[np.searchsorted(at_shortest, start)]
+        first, second = np.divmod(key[start], self.n_residues)
+        return ResiduePairs(
+            first=first,
+            second=second,
+            distance_angstrom=shortest,
+            atom_1=self.atom[pairs.first[order[closest]]],
+            atom_2=self.atom[pairs.second[order[closest]]],
+            n_atom_pairs=count,
+        )
+
+
+class _Grid:
+    """Which places lie near the molecule, by cubes of at least the reach."""
+
+    def __init__(self, position: NDArray[np.float64], reach: float) -> None:
+        low, high = position.min(axis=0) - 2 * reach, position.max(axis=0) + 2 * reach
+        self._edge = max(reach, float(np.prod(high - low) / LARGEST_GRID) ** (1 / 3))
+        self._low = low - self._edge
+        shape = np.ceil((high - self._low) / self._edge).astype(np.int64) + 2
+        near = np.zeros(shape, dtype=np.bool_)
+        near[tuple(self._cubes(position).T)] = True
+        for axis in range(3):
+            near = _grow(near, axis)
+        self._near = near
+
+    def _cubes(self, position: NDArray[np.float64]) -> NDArray[np.int64]:
+        return ((position - self._low) / self._edge).astype(np.int64)
+
+    def is_near(self, position: NDArray[np.float64]) -> NDArray[np.bool_]:
+        cubes = self._cubes(position)
+        within = np.all((position >= self._low) & (cubes < self._near.shape), axis=1)
+        out = np.zeros(len(position), dtype=np.bool_)
+        out[within] = self._near[tuple(cubes[within].T)]
+        return out
+
+
+def _grow(near: NDArray[np.bool_], axis: int) -> NDArray[np.bool_]:
+    rolled = np.moveaxis(near, axis, 0)
+    grown = rolled.copy()
+    grown[1:] |= rolled[:-1]
+    grown[:-1] |= rolled[1:]
+    return np.moveaxis(grown, 0, axis)
+
+
+def _inside(
+    point: NDArray[np.float64],
+    low: NDArray[np.float64],
+    high: NDArray[np.float64],
+    pad: NDArray[np.float64],
+) -> NDArray[np.bool_]:
+    return np.asarray(np.all((point >= low - pad) & (point <= high + pad), axis=1))
