@@ -6,7 +6,9 @@ import numpy as np
 from numpy.typing import DTypeLike, NDArray
 
 
-def store_read_only(record: Any, name: str, dtype: DTypeLike, shape: tuple[int | None, ...]) -> None:
+def store_read_only(
+    record: Any, name: str, dtype: DTypeLike, shape: tuple[int | None, ...]
+) -> None:
     """Replace an array field of a frozen record by a checked, read-only copy.
 
     Parameters
@@ -27,7 +29,8 @@ def store_read_only(record: Any, name: str, dtype: DTypeLike, shape: tuple[int |
     """
     array: NDArray[Any] = np.array(getattr(record, name), dtype=dtype)
     fits = array.ndim == len(shape) and all(
-        want is None or want == have for want, have in zip(shape, array.shape, strict=True)
+        want is None or want == have
+        for want, have in zip(shape, array.shape, strict=True)
     )
     if not fits:
         raise ValueError(f"{name} has shape {array.shape}; it must have {shape}")

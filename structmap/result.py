@@ -91,7 +91,9 @@ class AnalysisRecord:
     warnings: tuple[str, ...]
 
     def __post_init__(self) -> None:
-        store_read_only(self, "membership_probability", np.float64, (len(self.sites.name),))
+        store_read_only(
+            self, "membership_probability", np.float64, (len(self.sites.name),)
+        )
 
     def unit_of_site(self) -> NDArray[np.int64]:
         """Return for each site the index of its unit, -1 for none."""

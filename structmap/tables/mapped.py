@@ -1,5 +1,6 @@
 """``mapped.cif``: the coordinates with the value of each site in the B column."""
 
+import hashlib
 from pathlib import Path
 from typing import Any
 
@@ -49,13 +50,15 @@ def mapped_coordinates(record: AnalysisRecord, coordinates: Path) -> str:
 
 
 def _read_again(record: AnalysisRecord, coordinates: Path) -> gemmi.Structure:
-    from_disk = "read it again"
+    """Return the coordinates as they were analysed, hydrogens and all."""
+    remedy = "analyse it again"
     try:
-        structure = gemmi.read_structure(str(coordinates))
-    except (OSError, RuntimeError, ValueError) as error:
-        raise FileProblemError(
-            coordinates, f"cannot be read any more ({error})", from_disk
-        ) from error
+        content = coordinates.read_bytes()
+    except OSError as error:
+        raise FileProblemError(coordinates, "cannot be read any more", remedy) from error
+    if hashlib.sha256(content).hexdigest() != record.structure.sha256:
+        raise FileProblemError(coordinates, "changed since it was analysed", remedy)
+    structure = gemmi.read_structure(str(coordinates))
     structure.setup_entities()
     if structure.name.strip() == "":
         structure.name = record.structure.entry_id or "model"
