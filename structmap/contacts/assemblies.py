@@ -28,6 +28,7 @@ def choose_assemblies(structure: Structure, choice: str) -> tuple[Assembly, ...]
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     choice : str
         ``auto`` takes those that the authors determined, else those that software
         did, else all that are listed; ``none`` takes none; otherwise ids parted by
@@ -36,6 +37,7 @@ def choose_assemblies(structure: Structure, choice: str) -> tuple[Assembly, ...]
     Returns
     -------
     tuple of Assembly
+        The assemblies.
 
     Raises
     ------
@@ -87,7 +89,9 @@ def assembly_frames(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     assemblies : sequence of Assembly
+        Biological assemblies.
 
     Returns
     -------
@@ -136,6 +140,7 @@ def corners_of(structure: Structure) -> NDArray[np.float64]:
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
 
     Returns
     -------

@@ -18,6 +18,7 @@ def contact_cutoff(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     cutoff_angstrom : float
         Between any heavy atoms.
     ca_cutoff_angstrom : float
@@ -37,6 +38,7 @@ def contacts_within(contacts: Contacts, cutoff_angstrom: float) -> Contacts:
     Parameters
     ----------
     contacts : Contacts
+        Contacts as found.
     cutoff_angstrom : float
         At most the reach that the contacts were searched to.
 
@@ -71,7 +73,9 @@ def operator_text(structure: Structure, contacts: Contacts, index: int) -> str:
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     contacts : Contacts
+        Contacts as found.
     index : int
         Which contact.
 
@@ -99,6 +103,7 @@ def image_matrix(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     operator : int
         Index of the crystal's operator.
     shift : array_like of int, shape (3,)
@@ -134,6 +139,7 @@ def mate_matrix(structure: Structure, assembly_operator: str) -> NDArray[np.floa
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     assembly_operator : str
         As contacts name it: ``1:5``, or ``1:5/2`` for operator 5 seen from the
         molecule that operator 2 makes.
@@ -141,6 +147,7 @@ def mate_matrix(structure: Structure, assembly_operator: str) -> NDArray[np.floa
     Returns
     -------
     ndarray of float, shape (4, 4)
+        Cartesian transform with the translation in the last column.
 
     Raises
     ------
@@ -157,7 +164,7 @@ def mate_matrix(structure: Structure, assembly_operator: str) -> NDArray[np.floa
         ) from error
     if len(chosen) == 1:
         return np.array(chosen[0])
-    return np.linalg.inv(chosen[1]) @ chosen[0]
+    return np.asarray(np.linalg.inv(chosen[1]) @ chosen[0])
 
 
 def contact_matrix(
@@ -168,13 +175,16 @@ def contact_matrix(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     contacts : Contacts
+        Contacts as found.
     index : int
         Which contact.
 
     Returns
     -------
     ndarray of float, shape (4, 4)
+        Cartesian transform with the translation in the last column.
     """
     label = str(contacts.assembly_operator[index])
     if label:

@@ -57,6 +57,7 @@ def find_contacts(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     reach_angstrom : float
         Largest distance between heavy atoms, above 0.
     assemblies : sequence of Assembly

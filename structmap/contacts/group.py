@@ -49,7 +49,9 @@ class GroupTable:
         Returns
         -------
         operator : ndarray of int, shape (n,)
+            Operators.
         shift : ndarray of int, shape (n, 3)
+            Whole cell shifts.
         """
         (k, n), (other_k, other_n) = first, second
         turned = np.einsum("...ij,...j->...i", self.rotations[k], other_n)
@@ -65,12 +67,16 @@ class GroupTable:
         Parameters
         ----------
         operator : ndarray of int, shape (n,)
+            Operators.
         shift : ndarray of int, shape (n, 3)
+            Whole cell shifts.
 
         Returns
         -------
         operator : ndarray of int, shape (n,)
+            Operators.
         shift : ndarray of int, shape (n, 3)
+            Whole cell shifts.
         """
         inverse = self.inverse_operator[operator]
         turned = np.einsum("...ij,...j->...i", self.rotations[inverse], shift)
@@ -83,10 +89,12 @@ def make_group_table(crystal: Crystal) -> GroupTable:
     Parameters
     ----------
     crystal : Crystal
+        Cell and operators.
 
     Returns
     -------
     GroupTable
+        Products and inverses of the operators.
 
     Raises
     ------
@@ -136,13 +144,16 @@ def element_matrix(
     Parameters
     ----------
     crystal : Crystal
+        Cell and operators.
     operator : int
+        Operators.
     shift : ndarray of int, shape (3,)
+        Whole cell shifts.
 
     Returns
     -------
     ndarray of float, shape (4, 4)
-        x' = O (R (F x + f) + t + n) + o with the matrices and vectors of the file, so
+        Cartesian x' = O (R (F x + f) + t + n) + o with the matrices and vectors of the file, so
         that frames other than the standard one are right too.
     """
     inner = np.eye(4)
@@ -157,10 +168,12 @@ def orthogonalising(crystal: Crystal) -> NDArray[np.float64]:
     Parameters
     ----------
     crystal : Crystal
+        Cell and operators.
 
     Returns
     -------
     ndarray of float, shape (4, 4)
+        Cartesian transform with the translation in the last column.
     """
     matrix = np.eye(4)
     matrix[:3, :3] = crystal.orthogonalisation
@@ -174,10 +187,12 @@ def fractionalising(crystal: Crystal) -> NDArray[np.float64]:
     Parameters
     ----------
     crystal : Crystal
+        Cell and operators.
 
     Returns
     -------
     ndarray of float, shape (4, 4)
+        Cartesian transform with the translation in the last column.
     """
     matrix = np.eye(4)
     matrix[:3, :3] = crystal.fractionalisation

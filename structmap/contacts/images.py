@@ -18,13 +18,18 @@ def candidate_images(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     crystal : Crystal
+        Cell and operators.
     table : GroupTable
+        Products and inverses of the operators.
     reach_angstrom : float
+        Largest distance between heavy atoms.
 
     Returns
     -------
     operator : ndarray of int, shape (n_images,)
+        Operators.
     shift : ndarray of int, shape (n_images, 3)
         Sorted; of an element and its inverse the lexicographically smaller one; the
         identity is not among them.
@@ -95,6 +100,7 @@ def comes_before(
     Parameters
     ----------
     left, right : ndarray of int, shape (n, m)
+        Rows to compare.
 
     Returns
     -------

@@ -61,6 +61,7 @@ def mates_of_assemblies(
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     frames : sequence of Frame
         Members of the assemblies.
     reach_angstrom : float
@@ -138,7 +139,7 @@ def _landmarks(
     structure: Structure, matrices: NDArray[np.float64]
 ) -> NDArray[np.float64]:
     places = np.einsum("mij,cj->mci", matrices, corners_of(structure))[..., :3]
-    return places.reshape(len(matrices), -1)
+    return np.asarray(places.reshape(len(matrices), -1))
 
 
 def _groups(places: NDArray[np.float64]) -> list[list[int]]:
@@ -191,7 +192,8 @@ def _without_repeats(structure: Structure, mates: list[Mate]) -> list[Mate]:
         return []
     both = np.array([[mate.matrix, np.linalg.inv(mate.matrix)] for mate in mates])
     groups = _groups(_landmarks(structure, both.reshape(-1, 4, 4)))
-    kept, done = [], set()
+    kept: list[Mate] = []
+    done: set[int] = set()
     for rows in groups:  # row 2 i is mate i, row 2 i + 1 its inverse
         if rows[0] in done:
             continue

@@ -43,10 +43,12 @@ class ResiduePairs:
         Parameters
         ----------
         index : ndarray of int, shape (n,)
+            Which pairs.
 
         Returns
         -------
         ResiduePairs
+            The pairs.
         """
         return ResiduePairs(
             **{name: getattr(self, name)[index] for name in PAIR_COLUMNS}
@@ -58,10 +60,12 @@ class ResiduePairs:
         Parameters
         ----------
         flipped : ndarray of bool, shape (n,)
+            Pairs to turn round.
 
         Returns
         -------
         ResiduePairs
+            The pairs.
         """
         return replace(
             self,
@@ -86,6 +90,7 @@ def join_pairs(parts: Sequence[ResiduePairs]) -> ResiduePairs:
     Returns
     -------
     ResiduePairs
+        The pairs.
     """
     return ResiduePairs(
         **{
@@ -116,10 +121,12 @@ class AtomPairs:
         Parameters
         ----------
         keep : ndarray of bool, shape (n,)
+            Pairs to keep.
 
         Returns
         -------
         AtomPairs
+            The pairs.
         """
         return AtomPairs(
             first=self.first[keep],
@@ -134,6 +141,7 @@ class Molecule:
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     model : int
         Rank of the model.
     reach_angstrom : float
@@ -161,10 +169,9 @@ class Molecule:
         self.altloc = np.unique(letters, return_inverse=True)[1] * (letters != "")
         self.n_residues = len(structure.kind_of_residue)
         names = structure.atom_name[self.atom]
-        ends = ("CA",), ("CA",)
-        if not structure.ca_only:
-            ends = ("C", "O3'"), ("N", "P")
-        self._leaves, self._enters = np.isin(names, ends[0]), np.isin(names, ends[1])
+        leaves = ("CA",) if structure.ca_only else ("C", "O3'")
+        enters = ("CA",) if structure.ca_only else ("N", "P")
+        self._leaves, self._enters = np.isin(names, leaves), np.isin(names, enters)
         self._longest_bond = (
             LONGEST_CA_STEP_ANGSTROM if structure.ca_only else LONGEST_BOND_ANGSTROM
         )
@@ -319,7 +326,10 @@ class _Grid:
         self._near = near
 
     def _cubes(self, position: NDArray[np.float64]) -> NDArray[np.int64]:
-        return ((position - self._low) / self._edge).astype(np.int64)
+        cubes: NDArray[np.int64] = ((position - self._low) / self._edge).astype(
+            np.int64
+        )
+        return cubes
 
     def is_near(self, position: NDArray[np.float64]) -> NDArray[np.bool_]:
         cubes = self._cubes(position)

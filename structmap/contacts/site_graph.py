@@ -21,6 +21,7 @@ def make_site_graph(
     Parameters
     ----------
     contacts : Contacts
+        Contacts as found.
     sites : Sites
         Several sites may share a residue; they are joined by a `chain` edge of length
         0.

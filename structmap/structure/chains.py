@@ -30,7 +30,9 @@ def make_chain_copies(
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
     entries : sequence of Entry
+        Residues of the file, without NCS copies.
     ncs : sequence of ndarray, shape (4, 4)
         The identity first, then the operators that make further copies.
 
@@ -122,6 +124,7 @@ def read_assemblies(parsed: ParsedFile) -> tuple[Assembly, ...]:
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
 
     Returns
     -------
@@ -170,10 +173,12 @@ def matrix_of(transform: gemmi.Transform) -> NDArray[np.float64]:
     Parameters
     ----------
     transform : gemmi.Transform
+        Rotation and translation.
 
     Returns
     -------
     ndarray of float, shape (4, 4)
+        Cartesian transform with the translation in the last column.
     """
     matrix = np.eye(4)
     matrix[:3, :3] = transform.mat.tolist()
@@ -189,7 +194,9 @@ def secondary_structure(
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
     entries : sequence of Entry
+        Residues of the file, without NCS copies.
 
     Returns
     -------

@@ -11,7 +11,7 @@ from structmap.structure.files import ParsedFile
 from structmap.structure.record import LIGAND, POLYMER, WATER
 
 LARGEST_COORDINATE_ANGSTROM = 9000.0
-DEUTERIUM = gemmi.Element("D").atomic_number
+HYDROGENS = (1, 119)  # gemmi numbers deuterium beyond the periodic table
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -36,12 +36,24 @@ class Entry:
 
     @property
     def chain(self) -> tuple[str, str]:
-        """Author and label name of its chain."""
+        """Author and label name of its chain.
+
+        Returns
+        -------
+        tuple of str
+            Both names.
+        """
         return self.auth_asym_id, self.label_asym_id
 
     @property
     def key(self) -> tuple[str | int, ...]:
-        """What tells it from all other entries."""
+        """What tells it from all other entries.
+
+        Returns
+        -------
+        tuple
+            Names of the chain, number, insertion code; for ligands the name too.
+        """
         name = "" if self.kind == POLYMER else self.auth_comp_id
         return (*self.chain, self.auth_seq_id, self.ins_code, name)
 
@@ -78,6 +90,7 @@ def collect_entries(
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
     models : list of gemmi.Model
         Models of that file.
 
@@ -165,18 +178,18 @@ def _atom_table(
 ) -> AtomTable:
     flat = gemmi.FlatStructure(content)
     of_used = np.isin(flat.model_num, list(used))
-    hydrogen = (flat.elements == 1) | (flat.elements == DEUTERIUM)
+    hydrogen = np.isin(flat.elements, HYDROGENS)
     keep = np.flatnonzero(of_used & ~hydrogen & (flat.occ > 0))
     rank = np.cumsum(of_used) - 1
-    letters = np.ascontiguousarray(flat.altlocs[keep]).view("S1")
+    names = np.asarray(flat.atom_names)[keep]
+    elements = np.asarray(flat.element_names)[keep]
+    letters = np.ascontiguousarray(np.asarray(flat.altlocs)[keep]).view("S1")
     return AtomTable(
         entry=entry[rank[keep]],
         model=model[rank[keep]],
         position=flat.pos[keep],
-        name=np.ascontiguousarray(flat.atom_names[keep])
-        .view("S8")[:, 0]
-        .astype(np.str_),
-        element=flat.element_names[keep].astype(np.str_),
+        name=np.ascontiguousarray(names).view("S8")[:, 0].astype(np.str_),
+        element=elements.astype(np.str_),
         altloc=np.char.strip(letters.astype(np.str_)),
         occupancy=flat.occ[keep].astype(np.float64),
         b_iso=flat.b_iso[keep].astype(np.float64),
@@ -207,10 +220,10 @@ def _in_order(entries: list[Entry], table: AtomTable) -> tuple[list[Entry], Atom
     )
     new_index = np.full(len(entries), -1)
     new_index[order] = np.arange(len(order))
-    entry = new_index[table.entry]
-    by_model = np.lexsort((np.arange(len(entry)), entry, table.model))
+    entry_of_atom = new_index[table.entry]
+    by_model = np.lexsort((entry_of_atom, table.model))
     return [entries[index] for index in order], AtomTable(
-        entry=entry[by_model],
+        entry=entry_of_atom[by_model],
         model=table.model[by_model],
         position=table.position[by_model],
         name=table.name[by_model],

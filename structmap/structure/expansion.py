@@ -38,6 +38,7 @@ def make_layout(entries: Sequence[Entry], n_ncs: int) -> Layout:
     Returns
     -------
     Layout
+        Entry and copy of each residue.
     """
     kind = np.tile([entry.kind for entry in entries], n_ncs)
     entry_index = np.tile(np.arange(len(entries)), n_ncs)
@@ -54,7 +55,9 @@ def residue_columns(
     Parameters
     ----------
     entries : sequence of Entry
+        Residues of the file, without NCS copies.
     layout : Layout
+        Order of the residues.
 
     Returns
     -------
@@ -102,7 +105,9 @@ def atom_columns(
     Parameters
     ----------
     atoms : AtomTable
+        Atoms of the file, without NCS copies.
     layout : Layout
+        Order of the residues.
     ncs : sequence of ndarray, shape (4, 4)
         The identity first.
 

@@ -50,11 +50,12 @@ def parse_file(path: Path) -> ParsedFile:
     Parameters
     ----------
     path : Path
-        mmCIF, PDB or mmJSON, gzipped or not; the content decides, not the name.
+        File in mmCIF, PDB or mmJSON, gzipped or not; the content decides, not the name.
 
     Returns
     -------
     ParsedFile
+        The file after parsing.
 
     Raises
     ------
@@ -85,12 +86,14 @@ def find_model(parsed: ParsedFile, number: int) -> gemmi.Model:
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
     number : int
         As in the file.
 
     Returns
     -------
     gemmi.Model
+        The model.
 
     Raises
     ------

@@ -34,6 +34,7 @@ def residue_label(structure: Structure, residue_index: int) -> str:
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     residue_index : int
         Index into the residues of the structure.
 

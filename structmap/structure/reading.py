@@ -33,7 +33,7 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     Parameters
     ----------
     path : Path or str
-        mmCIF, PDB or mmJSON, gzipped or not; the content decides, not the name.
+        File in mmCIF, PDB or mmJSON, gzipped or not; the content decides, not the name.
     model : int
         Number of the model to use alone; 0 is the first of a crystal and all of an
         ensemble.
@@ -113,9 +113,9 @@ def _warnings(
     low, high = USUAL_VOLUME_PER_DALTON
     if not low <= volume / weight <= high:
         warnings.append(
-            f"The cell has {volume / weight:.2f} Å³ for each Da of polymer, where {low:g} to "
-            f"{high:g} is usual: the coordinates may be a fragment, or the cell or space "
-            "group wrong."
+            f"The cell has {volume / weight:.2f} Å³ for each Da of polymer, where "
+            f"{low:g} to {high:g} is usual: the coordinates may be a fragment, or the "
+            "cell or space group wrong."
         )
     return warnings
 

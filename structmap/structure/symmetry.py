@@ -27,10 +27,12 @@ def find_crystal(parsed: ParsedFile) -> tuple[Crystal | None, str]:
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
 
     Returns
     -------
     crystal : Crystal or None
+        Cell and operators.
     reason : str
         Words that can follow "because"; blank for a crystal.
 
@@ -62,6 +64,7 @@ def stated_operators(parsed: ParsedFile) -> list[gemmi.Op]:
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
 
     Returns
     -------
@@ -179,7 +182,9 @@ def check_cell_against_group(parsed: ParsedFile, crystal: Crystal) -> list[str]:
     Parameters
     ----------
     parsed : ParsedFile
+        The file after parsing.
     crystal : Crystal
+        Cell and operators.
 
     Returns
     -------
