@@ -274,7 +274,8 @@ def _profile_points(
             )
         notes.append(
             f"{grid.path.name}: the {len(columns)} columns {named[0]} to {named[-1]} "
-            f"were recognised by their names as one profile of {stem}, x in {units.pop()}."
+            f"were recognised by their names as one profile of {stem}, "
+            f"x in {units.pop()}."
         )
     return points
 

@@ -1,10 +1,11 @@
 """A table that says which measured number is which residue of the coordinates."""
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 
-from structmap.errors import RepeatedRowError, UnclearColumnsError
+from structmap.errors import FileProblemError, RepeatedRowError, UnclearColumnsError
 from structmap.values.files import read_grid
 from structmap.values.grid import Grid, read_source
 from structmap.values.headers import find_column
@@ -24,8 +25,8 @@ def read_mapping(path: Path | str) -> NumberMapping:
 
     Columns ``table_seq_id`` (with ``table_asym_id`` and ``table_ins_code`` where
     needed) for the value table, ``auth_seq_id`` (with ``auth_asym_id`` and
-    ``pdbx_PDB_ins_code``) for the coordinates; or just ``from`` and ``to`` with chain,
-    number and code written together (``A/56A``).
+    ``pdbx_PDB_ins_code``) for the coordinates, as the table of `match` has them; or
+    just ``from`` and ``to`` with chain, number and code written together (``A/56A``).
 
     Parameters
     ----------
@@ -50,7 +51,7 @@ def read_mapping(path: Path | str) -> NumberMapping:
         If two rows lay the same measured residue.
     """
     source = read_source(Path(path))
-    grid = read_grid(source, (), keys=_NUMBER)
+    grid = _without_blank_targets(read_grid(source, (), keys=_NUMBER))
     before = _residues(grid, _TABLE_NUMBER, _TABLE_CHAIN, _TABLE_CODE)
     after = _residues(grid, _NUMBER, _CHAIN, _CODE)
     seen: dict[ResidueNumber, int] = {}
@@ -72,6 +73,17 @@ def read_mapping(path: Path | str) -> NumberMapping:
         ins_code=np.array([residue.ins_code for residue in after], dtype=np.str_),
         line=np.array(grid.lines),
     )
+
+
+def _without_blank_targets(grid: Grid) -> Grid:
+    """Drop rows that lead nowhere, as the table of `match` has them."""
+    column = find_column(grid.header, _NUMBER)
+    kept = [n for n, row in enumerate(grid.rows) if row[column]]
+    if not kept:
+        problem, remedy = "maps no number", "fill the column auth_seq_id"
+        raise FileProblemError(grid.path, problem, remedy)
+    rows = tuple(grid.rows[n] for n in kept)
+    return replace(grid, rows=rows, lines=tuple(grid.lines[n] for n in kept))
 
 
 def _residues(

@@ -1,4 +1,4 @@
-"""Bringing the numbering of the values and of the coordinates together."""
+"""What bringing the numbering of values and coordinates together hands on."""
 
 from dataclasses import dataclass
 from typing import Any

@@ -1,0 +1,7 @@
+"""Bringing the numbering of the values and of the coordinates together."""
+
+from structmap.sites.listing import match_rows, site_centres
+from structmap.sites.matching import match_sites
+from structmap.sites.record import ChainMatch, Sites
+
+__all__ = ["ChainMatch", "Sites", "match_rows", "match_sites", "site_centres"]
