@@ -136,7 +136,8 @@ class RaggedRowError(StructmapError):
 
     def __str__(self) -> str:
         remedy = (
-            "write NA where a value is missing, or fetch the file again if it is cut short"
+            "write NA where a value is missing, or fetch the file again if it is cut "
+            "short"
             if self.found < self.expected
             else "remove the surplus cells or name their columns"
         )
@@ -157,7 +158,8 @@ class RepeatedRowError(StructmapError):
     def __str__(self) -> str:
         return (
             f"{self.path}, rows {self.rows[0]} and {self.rows[1]}: both give "
-            f"{self.site}; keep one of them, or tell them apart by chain, insertion code or atom"
+            f"{self.site}; keep one of them, or tell them apart by chain, insertion "
+            "code or atom"
         )
 
 
@@ -230,7 +232,8 @@ class DisagreeingNamesError(StructmapError):
         )
         return (
             f"{self.values}: {len(self.examples)} of {self.n_named} named residues "
-            f"differ from {self.coordinates} where it fits best ({shown}); check that the two "
+            f"differ from {self.coordinates} where it fits best ({shown}); check "
+            "that the two "
             "belong together, or state the numbering with --offset or --mapping"
         )
 
@@ -354,7 +357,8 @@ class UnknownSymmetryError(StructmapError):
             else ("there is a unit cell but no space group")
         )
         return (
-            f"{self.path}: {name}, and no operators are listed; state the space group in "
+            f"{self.path}: {name}, and no operators are listed; state the space "
+            "group in "
             "CRYST1 (PDB) or _symmetry (mmCIF; P 1 if there is no symmetry), or remove "
             "the cell if the molecule is not in a crystal"
         )
@@ -426,7 +430,8 @@ class CrowdedCellError(StructmapError):
 
     def __str__(self) -> str:
         return (
-            f"{self.structure}: {self.n_images} images of the molecule overlap with it; "
+            f"{self.structure}: {self.n_images} images of the molecule overlap with "
+            "it; "
             "correct the unit cell or the coordinates that lie far away"
         )
 
@@ -454,6 +459,8 @@ class MissingTemplateError(StructmapError):
 
     def __str__(self) -> str:
         return (
-            f"{self.path}: this file of the page is missing; in a checkout fetch it with "
-            "'pip install -e .' (needs npm or the network), else install structmap again"
+            f"{self.path}: this file of the page is missing; in a checkout fetch it "
+            "with "
+            "'pip install -e .' (needs npm or the network), else install structmap "
+            "again"
         )

@@ -1,0 +1,394 @@
+// The writing over the picture: names, contacts, rings; and the picture drawn flat.
+
+const PLACES_X = 190;
+const PLACES_Y = 120;
+
+/**
+ * @typedef {{x: number, y: number, w: number, h: number}} Box
+ * @typedef {{beads: {x: number, y: number, r: number}[], dashes: number[][], own: number[][], mates: number[][], taken: Box[]}} Obstacles
+ */
+
+/** @type {Map<string, {x: number, y: number}>} offsets found last, kept while turning */
+const lastPlaces = new Map();
+
+/**
+ * Draw rings and writing anew.
+ * @param {boolean} place find places anew, or keep the last ones
+ */
+function drawOverlay(place) {
+  const over = byId("over");
+  const nodes = [];
+  if (state.flat) nodes.push(drawFlat());
+  const seen = beads.map((bead) => ({ bead, ...project(bead.at), r: bead.radius * pixelsPerAngstrom() }));
+  const obstacles = findObstacles(seen);
+  const names = [...unitNames(seen, obstacles), ...residueNames(seen, obstacles)];
+  nodes.push(...rings(seen), ...contactNames(obstacles, place), ...distances(), ...names);
+  over.setAttribute("viewBox", `0 0 ${view.width} ${view.height}`);
+  over.replaceChildren(...nodes);
+}
+
+/** @param {{bead: Bead, x: number, y: number, z: number, r: number}[]} seen @returns {Obstacles} */
+function findObstacles(seen) {
+  const shown = seen.filter((s) => s.bead.image < 0 || state.neighbours);
+  const joining = shownDashes().filter((s) => s.dash.unit >= 0);
+  return {
+    beads: shown.map(({ x, y, r }) => ({ x, y, r })),
+    dashes: joining.flatMap((s) => samples(s.ends, 9)),
+    own: threadPoints(-1),
+    mates: state.neighbours ? data.images.flatMap((_, i) => threadPoints(i)) : [],
+    taken: [],
+  };
+}
+
+/** @param {number[][]} ends @param {number} count */
+function samples(ends, count) {
+  const [a, b] = ends.map(project);
+  return Array.from({ length: count }, (_, i) => {
+    const t = (i + 0.5) / count;
+    return [a.x + (b.x - a.x) * t, a.y + (b.y - a.y) * t];
+  });
+}
+
+/** @param {number} image */
+function threadPoints(image) {
+  const ranges = image < 0 ? [[0, data.residues.name.length]] : data.images[image].drawn;
+  const points = [];
+  for (const [from, to] of ranges) {
+    const step = to - from > 600 ? 3 : 1;
+    for (let r = from; r < to; r += step) {
+      const p = project(residueAt(r, image));
+      if (p.x > 0 && p.x < view.width && p.y > 0 && p.y < view.height) points.push([p.x, p.y]);
+    }
+  }
+  return points;
+}
+
+/**
+ * What a text would cover.
+ * @param {Box} box
+ * @param {Obstacles} obstacles
+ */
+function covering(box, obstacles) {
+  const inside = (/** @type {number} */ x, /** @type {number} */ y, /** @type {number} */ m) =>
+    x > box.x - m && x < box.x + box.w + m && y > box.y - m && y < box.y + box.h + m;
+  let cost = 0;
+  for (const b of obstacles.beads) if (inside(b.x, b.y, b.r * 0.8)) cost += 5;
+  for (const [x, y] of obstacles.dashes) if (inside(x, y, 2)) cost += 1.2;
+  for (const [x, y] of obstacles.own) if (inside(x, y, 3)) cost += 1.5;
+  for (const [x, y] of obstacles.mates) if (inside(x, y, 2)) cost += 0.15;
+  for (const t of obstacles.taken) {
+    const apart = box.x > t.x + t.w || box.x + box.w < t.x || box.y > t.y + t.h || box.y + box.h < t.y;
+    if (!apart) cost += 30;
+  }
+  const outside = box.x < 4 || box.y < 4 || box.x + box.w > view.width - 4 || box.y + box.h > view.height - 4;
+  const legend = box.x < 210 && box.y + box.h > view.height - 40;
+  return cost + (outside ? 60 : 0) + (legend ? 30 : 0);
+}
+
+/**
+ * Best of eight places round a bead.
+ * @param {{x: number, y: number, r: number}} bead
+ * @param {number} width
+ * @param {Obstacles} obstacles
+ */
+function besideBead(bead, width, obstacles) {
+  let best = { cost: Infinity, x: 0, y: 0 };
+  const h = 14;
+  const gap = bead.r + 3;
+  for (let k = 0; k < 8; k++) {
+    const angle = (k * Math.PI) / 4;
+    const cx = bead.x + Math.cos(angle) * (gap + width / 2);
+    const cy = bead.y - Math.sin(angle) * (gap + h / 2);
+    const box = { x: cx - width / 2, y: cy - h / 2, w: width, h };
+    const cost = covering(box, obstacles) + k * 0.1;
+    if (cost < best.cost) best = { cost, x: box.x, y: box.y };
+  }
+  obstacles.taken.push({ x: best.x, y: best.y, w: width, h });
+  return { x: best.x, y: best.y + 11 };
+}
+
+/**
+ * The name of each unit at its largest bead.
+ * @param {{bead: Bead, x: number, y: number, r: number}[]} seen
+ * @param {Obstacles} obstacles
+ */
+function unitNames(seen, obstacles) {
+  if (state.chosen.size) return [];
+  return data.units.flatMap((unit, u) => {
+    const own = seen.filter((s) => s.bead.image < 0 && data.entries.unit[s.bead.entry] === u);
+    if (!own.length) return [];
+    const largest = own.reduce((a, b) => (b.bead.radius > a.bead.radius ? b : a));
+    const at = besideBead(largest, textWidth(unit.name), obstacles);
+    return [svgText(unit.name, at.x, at.y, "name")];
+  });
+}
+
+/**
+ * Names of the chosen residues, up to 16, and of the one under the pointer.
+ * @param {{bead: Bead, x: number, y: number, r: number}[]} seen
+ * @param {Obstacles} obstacles
+ */
+function residueNames(seen, obstacles) {
+  const wanted = new Set(state.chosen.size <= 16 ? state.chosen : []);
+  if (state.hovered >= 0) wanted.add(state.hovered);
+  const nodes = [];
+  const named = new Set();
+  for (const s of seen) {
+    if (!wanted.has(s.bead.entry)) continue;
+    const mate = s.bead.image >= 0;
+    if (mate && (!state.neighbours || state.unit < 0)) continue;
+    named.add(s.bead.entry);
+    const text = data.residues.name[s.bead.residue] + (mate ? "′" : "");
+    const at = besideBead(s, textWidth(text), obstacles);
+    nodes.push(svgText(text, at.x, at.y, mate ? "mate-name" : "name"));
+  }
+  for (const e of wanted) {
+    if (named.has(e)) continue;
+    const p = project(residueAt(data.entries.residue[e]));
+    const at = besideBead({ ...p, r: 6 }, textWidth(data.entries.name[e]), obstacles);
+    nodes.push(svgText(data.entries.name[e], at.x, at.y, "name"));
+  }
+  return nodes;
+}
+
+/** @param {{bead: Bead, x: number, y: number, r: number}[]} seen */
+function rings(seen) {
+  const nodes = [];
+  const ringed = new Set();
+  for (const s of seen) {
+    const chosen = state.chosen.has(s.bead.entry);
+    const hovered = s.bead.entry === state.hovered;
+    if (s.bead.image >= 0 || !(chosen || hovered)) continue;
+    ringed.add(s.bead.entry);
+    nodes.push(...ring(s.x, s.y, s.r + 3, chosen ? 1.6 : 1, ""));
+  }
+  for (const e of new Set([...state.chosen, state.hovered])) {
+    if (e < 0 || ringed.has(e)) continue;
+    const p = project(residueAt(data.entries.residue[e]));
+    nodes.push(...ring(p.x, p.y, 7, state.chosen.has(e) ? 1.6 : 1, "3 2.5"));
+  }
+  return nodes;
+}
+
+/** @param {number} cx @param {number} cy @param {number} r @param {number} width @param {string} dash */
+function ring(cx, cy, r, width, dash) {
+  const at = { cx: short(cx), cy: short(cy), r: short(r), fill: "none" };
+  return [
+    svg("circle", { ...at, stroke: tokens.paper, "stroke-width": width + 2.4 }),
+    svg("circle", { ...at, stroke: tokens.ink, "stroke-width": width, "stroke-dasharray": dash || undefined }),
+  ];
+}
+
+/**
+ * Numeral, operator and shift at each contact that joins a unit.
+ * @param {Obstacles} obstacles
+ * @param {boolean} place
+ */
+function contactNames(obstacles, place) {
+  /** @type {Map<number, {ends: number[][]}[]>} */
+  const sides = new Map();
+  for (const shown of shownDashes()) {
+    if (shown.dash.unit < 0) continue;
+    const list = sides.get(shown.dash.image) || [];
+    list.push(shown);
+    sides.set(shown.dash.image, list);
+  }
+  return [...sides].flatMap(([image, list]) => contactName(image, list, obstacles, place));
+}
+
+/**
+ * @param {number} image
+ * @param {{ends: number[][]}[]} list
+ * @param {Obstacles} obstacles
+ * @param {boolean} place
+ */
+function contactName(image, list, obstacles, place) {
+  const { numeral, printed, shift } = data.images[image];
+  const shifts = `(${shift.map(minus).join(" ")})`;
+  const oneLine = view.width >= 620;
+  const first = textWidth(numeral, "700 12px serif") + 9;
+  const lines = oneLine ? [`${printed}  ${shifts}`] : [printed, shifts];
+  const width = first + Math.max(...lines.map((l) => textWidth(l, '400 12px "Noto Sans", sans-serif')));
+  const height = oneLine ? 15 : 29;
+  const points = list.flatMap((s) => samples(s.ends, 9));
+  const middle = points.reduce((m, p) => [m[0] + p[0] / points.length, m[1] + p[1] / points.length], [0, 0]);
+  const key = `${image}`;
+  let offset = lastPlaces.get(key);
+  if (place || !offset) {
+    offset = bestPlace(middle, width, height, points, obstacles);
+    lastPlaces.set(key, offset);
+  }
+  const box = { x: middle[0] + offset.x - width / 2, y: middle[1] + offset.y - height / 2, w: width, h: height };
+  obstacles.taken.push(box);
+  const nodes = leader(box, points);
+  nodes.push(svgText(numeral, box.x, box.y + 12, "numeral"));
+  lines.forEach((line, i) => nodes.push(svgText(line, box.x + first, box.y + 12 + 14 * i, "operator")));
+  return nodes;
+}
+
+/**
+ * @param {number[]} middle
+ * @param {number} w
+ * @param {number} h
+ * @param {number[][]} points of its own dashes
+ * @param {Obstacles} obstacles
+ */
+function bestPlace(middle, w, h, points, obstacles) {
+  let best = { x: 0, y: 0, cost: Infinity };
+  for (let ix = -10; ix <= 10; ix++) {
+    for (let iy = -10; iy <= 10; iy++) {
+      const x = (ix * PLACES_X) / 10;
+      const y = (iy * PLACES_Y) / 10;
+      const box = { x: middle[0] + x - w / 2, y: middle[1] + y - h / 2, w, h };
+      const cost = covering(box, obstacles) + 0.1 * distanceToBox(box, points).distance;
+      if (cost < best.cost) best = { x, y, cost };
+    }
+  }
+  return { x: best.x, y: best.y };
+}
+
+/** @param {Box} box @param {number[][]} points */
+function distanceToBox(box, points) {
+  let best = { distance: Infinity, point: [0, 0], from: [0, 0] };
+  for (const [x, y] of points) {
+    const nx = Math.max(box.x, Math.min(box.x + box.w, x));
+    const ny = Math.max(box.y, Math.min(box.y + box.h, y));
+    const distance = Math.hypot(nx - x, ny - y);
+    if (distance < best.distance) best = { distance, point: [x, y], from: [nx, ny] };
+  }
+  return best;
+}
+
+/** @param {Box} box @param {number[][]} points @returns {Node[]} */
+function leader(box, points) {
+  const near = distanceToBox(box, points);
+  if (near.distance <= 8 || near.distance > 260) return [];
+  const [x1, y1] = near.from;
+  const [x2, y2] = near.point;
+  return [svg("path", { d: `M${short(x1)} ${short(y1)}L${short(x2)} ${short(y2)}`, stroke: tokens.ink2, "stroke-width": 1, fill: "none" })];
+}
+
+/** Lengths of the dashes, written above them in the close look. */
+function distances() {
+  if (!state.sides || !state.chosen.size) return [];
+  return shownDashes()
+    .filter((s) => s.dash.unit >= 0 && s.dash.unit === state.unit)
+    .map((s) => {
+      const [a, b] = s.ends.map(project);
+      const text = `${data.contacts.distance[s.dash.contact].toFixed(1)}\u00a0Å`;
+      return svgText(text, (a.x + b.x) / 2, (a.y + b.y) / 2 - 5, "distance", "middle");
+    });
+}
+
+// --- flat ---
+
+/** The opening view as threads, beads and dashes in the order of their depth. */
+function drawFlat() {
+  const group = svg("g", { class: "flat" });
+  const reach = data.view.depth + 4;
+  /** @type {{z: number, node: SVGElement}[]} */
+  const items = [];
+  const fade = (/** @type {number} */ z) => 0.34 * Math.max(0, Math.min(1, 0.5 - z / (2 * reach)));
+  if (state.neighbours) data.images.forEach((_, i) => threadPieces(i, tokens.mate, 1.6, -60));
+  threadPieces(-1, tokens.thread, 4.5, 0);
+  for (const { dash, colour, radius, ends } of shownDashes()) {
+    if (dash.unit < 0 && !state.chosen.size) continue;
+    const [a, b] = ends.map(project);
+    items.push({
+      z: (a.z + b.z) / 2,
+      node: svg("path", {
+        d: `M${short(a.x)} ${short(a.y)}L${short(b.x)} ${short(b.y)}`,
+        stroke: colour,
+        "stroke-width": radius > 0.15 ? 2.4 : 1.4,
+        "stroke-dasharray": "5 3",
+        fill: "none",
+      }),
+    });
+  }
+  for (const bead of beads) {
+    if (bead.image >= 0 && !state.neighbours) continue;
+    const p = project(bead.at);
+    const r = bead.radius * pixelsPerAngstrom();
+    items.push({
+      z: p.z + 0.5,
+      node: svg("circle", { cx: short(p.x), cy: short(p.y), r: short(r), fill: mix(bead.colour, fade(p.z)), stroke: tokens.paper, "stroke-width": 1 }),
+    });
+  }
+  items.sort((a, b) => a.z - b.z);
+  group.append(...items.map((item) => item.node));
+  return group;
+
+  /** @param {number} image @param {string} colour @param {number} width @param {number} lower */
+  function threadPieces(image, colour, width, lower) {
+    const ranges = image < 0 ? [[0, data.residues.name.length]] : data.images[image].drawn;
+    for (const [from, to] of ranges) {
+      for (let r = from + 1; r < to; r++) {
+        if (data.residues.chain[r] !== data.residues.chain[r - 1]) continue;
+        const [pa, pb] = [residueAt(r - 1, image), residueAt(r, image)];
+        if (Math.hypot(pa[0] - pb[0], pa[1] - pb[1], pa[2] - pb[2]) > 9) continue;
+        const [a, b] = [project(pa), project(pb)];
+        const z = (a.z + b.z) / 2;
+        items.push({
+          z: z + lower,
+          node: svg("path", { d: `M${short(a.x)} ${short(a.y)}L${short(b.x)} ${short(b.y)}`, stroke: mix(colour, fade(z)), "stroke-width": width, "stroke-linecap": "round", fill: "none" }),
+        });
+      }
+    }
+  }
+}
+
+// --- the legend ---
+
+function drawLegend() {
+  const rows = [];
+  const { quantity } = data;
+  /** @param {string} colour @param {number} r */
+  const dot = (colour, r) => svg("svg", { width: 2 * r + 1, height: 2 * r + 1 }, svg("circle", { cx: r + 0.5, cy: r + 0.5, r, fill: colour }));
+  const thread = svg("svg", { width: 22, height: 8 }, svg("path", { d: "M1 5C4 0 8 0 11 4S18 8 21 3", stroke: tokens.thread, "stroke-width": 2.4, fill: "none" }));
+  if (state.colour === "value") {
+    rows.push(valueLegend());
+    rows.push(element("div", {}, item(thread, ["no bead: not measured"])));
+  } else {
+    const first = element("div");
+    if (data.entries.moves.some((m, e) => m && data.entries.unit[e] < 0)) {
+      first.append(item(dot(tokens.ink2, 4.5), ["moves, in no unit"]));
+    }
+    if (data.entries.moves.some((m, e) => !m && isMeasured(e) && data.entries.unit[e] < 0)) {
+      first.append(item(dot(tokens.quiet, 3.5), ["baseline"]));
+    }
+    const what = state.colour === "membership" ? ["membership"] : rich(sizedByDistance() ? `${quantity.name} from the baseline` : quantity.name);
+    rows.push(first, element("div", {}, item(thread, ["no bead: not measured; bead size: ", ...what])));
+  }
+  if (state.flat) {
+    rows.push(element("div", {}, "Drawn flat: this browser offers no WebGL, so the picture cannot be turned."));
+  }
+  byId("legend").replaceChildren(...rows);
+
+  /** @param {Node} sign @param {(Node|string)[]} words */
+  function item(sign, words) {
+    return element("span", { class: "item" }, sign, element("span", {}, ...words));
+  }
+}
+
+function valueLegend() {
+  const { quantity } = data;
+  const width = 168;
+  const band = quantity.band;
+  const centre = scale.signed && band ? (band[0] + band[1]) / 2 : 0;
+  const reach = Math.max(scale.high - centre, centre - scale.low);
+  const [low, high] = scale.signed ? [centre - reach, centre + reach] : [scale.low, scale.high];
+  const steps = 48;
+  const bar = svg("svg", { width: width + 12, height: 27 });
+  for (let i = 0; i < steps; i++) {
+    const colour = valueColour(low + ((i + 0.5) / steps) * (high - low));
+    bar.append(svg("rect", { x: (i * width) / steps, y: 1, width: width / steps + 0.4, height: 8, fill: colour }));
+  }
+  bar.append(svg("rect", { x: 0.5, y: 1, width: width - 1, height: 8, fill: "none", stroke: tokens.ink, "stroke-width": 0.6 }));
+  for (const tick of ticksBetween(low, high, 4)) {
+    const x = ((tick - low) / (high - low)) * width;
+    bar.append(svgText(tickText(tick), Math.max(3, x), 22, "tick", x < 6 ? "start" : "middle"));
+  }
+  const name = quantity.unit ? `${quantity.name} (${quantity.unit})` : quantity.name;
+  const note = scale.signed ? "; blue below, brown above the baseline (vik)" : "";
+  return element("div", {}, element("span", {}, ...rich(name + note), bar));
+}

@@ -1,0 +1,221 @@
+"""The page as one text: templates, data and scripts joined under a strict policy."""
+
+import base64
+import gzip
+import hashlib
+import json
+import re
+from dataclasses import fields
+from html import escape
+from pathlib import Path
+from string import Template
+
+from structmap import words
+from structmap.errors import MissingTemplateError
+from structmap.page import markup
+from structmap.page.listing import Listing, list_entries
+from structmap.page.payload import page_payload
+from structmap.result import AnalysisRecord
+from structmap.settings import Settings
+from structmap.tables import library_versions
+from structmap.version import __version__
+
+SCRIPTS = (
+    "state.js",
+    "drawing.js",
+    "geometry.js",
+    "picture.js",
+    "writing.js",
+    "profiles.js",
+    "caption.js",
+    "chain.js",
+    "units.js",
+    "touching.js",
+    "sites.js",
+    "start.js",
+)
+COMPRESS_ABOVE_BYTES = 150_000
+CARE_SHOWN = 3
+
+
+def page_html(record: AnalysisRecord) -> str:
+    """Return the page of an analysis: one HTML text that opens from disk.
+
+    Nothing in it asks the network for anything, and its content policy forbids that.
+    Texts of the input files stand in it escaped.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    str
+        The same for the same record.
+
+    Raises
+    ------
+    MissingTemplateError
+        If a file that the page is made from is not there.
+    """
+    listing = list_entries(record)
+    library = _template("built/3Dmol-min.js")
+    styles, scripts = _template("page.css"), _joined_scripts()
+    parts = {
+        "policy": _policy(styles, (library, scripts)),
+        "styles": styles,
+        "library": library,
+        "scripts": scripts,
+        "data": _data_block(page_payload(record, listing)),
+        **_texts(record, listing),
+        **_foot(record),
+    }
+    return Template(_template("page.html")).substitute(parts)
+
+
+def _folder() -> Path:
+    package = Path(__file__).resolve().parent.parent
+    inside = package / "html_templates"
+    return inside if inside.is_dir() else package.parent / "html_templates"
+
+
+def _template(name: str) -> str:
+    path = _folder() / name
+    try:
+        return path.read_text(encoding="utf-8")
+    except OSError as error:
+        raise MissingTemplateError(path) from error
+
+
+def _joined_scripts() -> str:
+    body = "\n".join(_template(name) for name in SCRIPTS)
+    return f'"use strict";\n(() => {{\n{body}\n}})();\n'
+
+
+def _policy(styles: str, scripts: tuple[str, ...]) -> str:
+    sources = " ".join(_source(script) for script in scripts)
+    return (
+        f"default-src 'none'; script-src {sources}; style-src {_source(styles)}; "
+        "img-src data: blob:; base-uri 'none'; form-action 'none'"
+    )
+
+
+def _source(text: str) -> str:
+    digest = hashlib.sha256(text.encode("utf-8")).digest()
+    return f"'sha256-{base64.b64encode(digest).decode()}'"
+
+
+def _data_block(payload: dict[str, object]) -> str:
+    text = json.dumps(payload, ensure_ascii=False, separators=(",", ":"), allow_nan=False)
+    if len(text.encode("utf-8")) > COMPRESS_ABOVE_BYTES:
+        packed = gzip.compress(text.encode("utf-8"), compresslevel=9, mtime=0)
+        return json.dumps({"gzip": base64.b64encode(packed).decode()})
+    # In a script element only "<" can end it, and JSON lets it be written as an escape.
+    for character in "<>&\u2028\u2029":
+        text = text.replace(character, f"\\u{ord(character):04x}")
+    return text
+
+
+# --- words of the page ----------------------------------------------------------------
+
+
+def _texts(record: AnalysisRecord, listing: Listing) -> dict[str, str]:
+    title = words.title(record)
+    plain_title = re.sub(r"_\{([^}]*)\}", r"\1", markup.mark_text(title))
+    result = " ".join(
+        markup.with_unit_buttons(s, record) for s in words.result_sentences(record)
+    )
+    return {
+        "page_title": escape(plain_title),
+        "title": markup.rich_html(title),
+        "result": result,
+        "care": _care(record),
+        "facts": _facts(record),
+        "unit_rows": markup.units_rows(record, listing),
+        "site_rows": markup.sites_rows(record, listing),
+        "rests_on": _rests_on(record),
+        "settings": _settings(record.settings),
+    }
+
+
+def _care(record: AnalysisRecord) -> str:
+    sentences = words.care_sentences(record)
+    shown = " ".join(markup.rich_html(s) for s in sentences[:CARE_SHOWN])
+    more = len(sentences) - CARE_SHOWN
+    if more > 0:
+        shown += f' <a href="#rests">And {words.number_in_words(more)} more below.</a>'
+    return f"<b>Read with care.</b> {shown}" if sentences else ""
+
+
+def _facts(record: AnalysisRecord) -> str:
+    rows = []
+    for label, lines in words.facts(record):
+        inner = "".join(f"<span>{markup.space_group_html(line)}</span>" for line in lines)
+        rows.append(f"<dt>{escape(label)}</dt><dd>{inner}</dd>")
+    return "".join(rows)
+
+
+def _rests_on(record: AnalysisRecord) -> str:
+    paragraphs = [*words.rests_on(record), *words.care_sentences(record)[CARE_SHOWN:]]
+    if record.sites.unmatched:
+        listed = "; ".join(record.sites.unmatched[:12])
+        paragraphs.append(f"Rows without a residue in the coordinates: {listed}.")
+    return "".join(f"<p>{markup.rich_html(p)}</p>" for p in paragraphs)
+
+
+def _settings(settings: Settings) -> str:
+    """Return the settings that differ from their defaults, and the main ones always."""
+    always = {"cutoff_angstrom", "assembly", "profile_part", "seed"}
+    rows = []
+    for field in fields(Settings):
+        value = getattr(settings, field.name)
+        if field.name in {"title", "data_note"}:
+            continue
+        if field.name in always or value != field.default:
+            rows.append(
+                f"<dt>{escape(_setting_label(field.name))}</dt>"
+                f"<dd>{escape(_setting_text(field.name, value))}</dd>"
+            )
+    return "".join(rows)
+
+
+_UNITS_IN_NAMES = {"_angstrom": "Å", "_megahertz": "MHz", "_hertz": "Hz"}
+
+
+def _setting_label(name: str) -> str:
+    for ending in _UNITS_IN_NAMES:
+        name = name.removesuffix(ending)
+    return name.replace("_", " ")
+
+
+def _setting_text(name: str, value: object) -> str:
+    unit = next((u for end, u in _UNITS_IN_NAMES.items() if name.endswith(end)), "")
+    if isinstance(value, tuple):
+        text = ", ".join(str(item) for item in value)
+    elif isinstance(value, bool):
+        text = "yes" if value else "no"
+    else:
+        text = f"{value:g}" if isinstance(value, float) else str(value)
+    return f"{text}\u00a0{unit}" if unit else text.replace("-", "−")
+
+
+def _foot(record: AnalysisRecord) -> dict[str, str]:
+    library = _template("built/3Dmol-min.js")
+    found = re.search(r"3dmol v([0-9.]+)", library[:400])
+    versions = " · ".join(f"{n} {v}" for n, v in library_versions().items())
+    name = f"3Dmol.js {found.group(1)}" if found else "3Dmol.js"
+    pairs = [
+        (record.structure.name, record.structure.sha256),
+        *zip(record.table.names, record.table.sha256, strict=True),
+    ]
+    return {
+        "versions": escape(
+            f"structmap {__version__} · {versions} · {name} (BSD-3-Clause) · "
+            "page under MIT. No network is used."
+        ),
+        "licence": escape(_template("built/3Dmol-LICENSE.txt")),
+        "hashes": "".join(
+            f"<span>{escape(n)}<br>sha256 <code>{escape(h)}</code></span>" for n, h in pairs
+        ),
+        "colophon": markup.rich_html(words.colophon(record)),
+    }

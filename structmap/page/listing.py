@@ -1,0 +1,180 @@
+"""The residues that the page lists, one a column of the chain and a row of the table."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from structmap.records import store_read_only
+from structmap.result import AnalysisRecord
+from structmap.structure import POLYMER, Structure, one_letter
+from structmap.words import measured_chains, site_name
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Listing:
+    """Residues of the measured chains in order, those with several sites repeated.
+
+    Attributes
+    ----------
+    residue : ndarray of int, shape (n_entries,)
+        Residue of each entry: the first copy of its site.
+    site : ndarray of int, shape (n_entries,)
+        Its site, -1 where nothing was measured.
+    measured : ndarray of int, shape (n_entries,)
+        Its row of the measurements, -1 where it has none.
+    first : ndarray of int, shape (n_drawn,)
+        For each polymer residue the listed residue that it is or is a copy of, else -1.
+    """
+
+    residue: NDArray[np.int64]
+    site: NDArray[np.int64]
+    measured: NDArray[np.int64]
+    first: NDArray[np.int64]
+
+    def __post_init__(self) -> None:
+        for name in ("residue", "site", "measured"):
+            store_read_only(self, name, np.int64, (len(self.residue),))
+        store_read_only(self, "first", np.int64, (None,))
+
+
+def list_entries(record: AnalysisRecord) -> Listing:
+    """Return the residues that the page lists.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    Listing
+        Residues of the measured chains in the order of the coordinates.
+    """
+    structure = record.structure
+    polymer = np.flatnonzero(structure.kind_of_residue == POLYMER)
+    listed = np.isin(structure.auth_asym_id[polymer], measured_chains(record))
+    listed &= structure.original_residue[polymer] == polymer
+    sites_at: dict[int, list[int]] = {}
+    for site, residue in enumerate(record.sites.residue.tolist()):
+        sites_at.setdefault(residue, []).append(site)
+    pairs = [(r, s) for r in polymer[listed].tolist() for s in sites_at.get(r, [-1])]
+    residue, site = np.array(pairs, dtype=np.int64).reshape(-1, 2).T
+    row_of_site = np.full(len(record.sites.name) + 1, -1)
+    row_of_site[record.measurements.site] = np.arange(len(record.measurements.site))
+    return Listing(
+        residue=residue,
+        site=site,
+        measured=row_of_site[site],
+        first=_first_copies(record, len(polymer), polymer[listed]),
+    )
+
+
+def _first_copies(
+    record: AnalysisRecord, n_drawn: int, listed: NDArray[np.int64]
+) -> NDArray[np.int64]:
+    """Lead each residue back to a listed one: measured copies, then all between them."""
+    structure, sites = record.structure, record.sites
+    first = np.full(n_drawn, -1)
+    originals = structure.original_residue[:n_drawn]
+    first[listed] = listed
+    first[sites.copy_residue] = sites.residue[sites.copy_site]
+    for chain in np.unique(structure.copy_of_residue[:n_drawn]):
+        members = np.flatnonzero(structure.copy_of_residue[:n_drawn] == chain)
+        known = members[(first[members] >= 0) & (first[members] != members)]
+        if len(known):
+            _fill_between(structure, first, members, known)
+    unknown = first < 0
+    first[unknown] = first[originals[unknown]]
+    return first
+
+
+def _fill_between(
+    structure: Structure,
+    first: NDArray[np.int64],
+    members: NDArray[np.int64],
+    known: NDArray[np.int64],
+) -> None:
+    """Lay the unmeasured residues of a copy on the listed chain by their numbers."""
+    targets = first[known]
+    chain = structure.copy_of_residue[targets[0]]
+    shifts = structure.auth_seq_id[targets] - structure.auth_seq_id[known]
+    shift = int(np.median(shifts))
+    places = {
+        (int(structure.auth_seq_id[r]), str(structure.ins_code[r])): int(r)
+        for r in np.flatnonzero(structure.copy_of_residue == chain)
+    }
+    for residue in members[first[members] < 0].tolist():
+        key = (int(structure.auth_seq_id[residue]) + shift, str(structure.ins_code[residue]))
+        first[residue] = places.get(key, -1)
+
+
+def residue_names(record: AnalysisRecord, n_drawn: int) -> list[str]:
+    """Return the short names of the drawn residues, ``D56A``.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    n_drawn : int
+        Number of polymer residues, which come first.
+
+    Returns
+    -------
+    list of str
+        The chain stands in front when the structure has several.
+    """
+    structure = record.structure
+    several = len(measured_chains(record)) > 1
+    names = []
+    for r in range(n_drawn):
+        letter = one_letter(str(structure.auth_comp_id[r]))
+        text = f"{letter}{structure.auth_seq_id[r]}{structure.ins_code[r]}"
+        names.append(f"{structure.auth_asym_id[r]}\u00a0{text}" if several else text)
+    return names
+
+
+def entry_names(record: AnalysisRecord, listing: Listing) -> list[str]:
+    """Return the short name of each entry, with the atom where sites share a residue.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    listing : Listing
+
+    Returns
+    -------
+    list of str
+        As the sentences have them.
+    """
+    names = residue_names(record, len(listing.first))
+    return [
+        site_name(record, s) if s >= 0 else names[r]
+        for r, s in zip(listing.residue.tolist(), listing.site.tolist(), strict=True)
+    ]
+
+
+def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:
+    """Return the note of each entry: why it has no value, what is odd about it.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+    listing : Listing
+
+    Returns
+    -------
+    list of str
+        Blank where there is nothing to say.
+    """
+    fringe: dict[int, list[str]] = {}
+    for unit in record.units:
+        for site in unit.fringe.tolist():
+            fringe.setdefault(site, []).append(unit.name)
+    notes = []
+    for site, row in zip(listing.site.tolist(), listing.measured.tolist(), strict=True):
+        if site < 0:
+            notes.append("not measured")
+        elif row < 0:
+            notes.append("in the table, but with too few values to compare or left out")
+        else:
+            notes.append("; ".join(f"at the edge of {name}" for name in fringe.get(site, [])))
+    return notes
