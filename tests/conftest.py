@@ -2,6 +2,8 @@
 
 import os
 import shutil
+import subprocess
+import sys
 from pathlib import Path
 
 import pytest
@@ -50,8 +52,13 @@ def chromium() -> str:
     """Path of a Chromium; without one the test is skipped, or fails where asked to."""
     names = ("chromium", "chromium-browser", "google-chrome")
     found = next(filter(None, map(shutil.which, names)), None)
-    if found:
+    driver = [sys.executable, "-m", "playwright", "--version"]
+    if not found:
+        lacking = "no Chromium on the PATH; on Debian: apt-get install chromium"
+    elif subprocess.run(driver, capture_output=True, check=False).returncode != 0:
+        lacking = "playwright does not start; on Debian: apt-get install libatomic1"
+    else:
         return found
     if os.environ.get("STRUCTMAP_REQUIRE_BROWSER") == "1":
-        pytest.fail("no Chromium on the PATH, and STRUCTMAP_REQUIRE_BROWSER is 1")
-    pytest.skip("no Chromium on the PATH; on Debian: apt-get install chromium")
+        pytest.fail(f"{lacking} (STRUCTMAP_REQUIRE_BROWSER is 1)")
+    pytest.skip(lacking)
