@@ -12,8 +12,14 @@ from structmap.contacts.images import candidate_images
 from structmap.contacts.kinds import kinds_of_contacts
 from structmap.contacts.mates import Mate, mates_of_assemblies
 from structmap.contacts.record import Contacts
-from structmap.contacts.search import Molecule, ResiduePairs, join_pairs
-from structmap.structure import POLYMER, Assembly, Structure
+from structmap.contacts.search import (
+    Molecule,
+    ResiduePairs,
+    join_pairs,
+    no_pairs,
+    polymer_atoms,
+)
+from structmap.structure import Assembly, Structure
 
 Progress = Callable[[float], object]
 
@@ -94,9 +100,8 @@ def find_contacts(
     """
     if not reach_angstrom > 0:
         raise ValueError(f"reach_angstrom is {reach_angstrom}; it must be above 0")
-    taken = structure.kind_of_residue == POLYMER
-    if residues is not None:
-        taken = taken & residues
+    everything = np.ones(len(structure.kind_of_residue), dtype=np.bool_)
+    taken = everything if residues is None else residues
     table = None if structure.crystal is None else make_group_table(structure.crystal)
     frames = assembly_frames(structure, assemblies)
     mates = mates_of_assemblies(structure, frames, reach_angstrom=reach_angstrom)
@@ -165,11 +170,9 @@ def _search(
         {IDENTITY}.union(*({image.name, image.inverse_name} for image in images))
     )
     rank = {name: index for index, name in enumerate(names)}
-    molecules = [
-        Molecule(structure, model=model, reach_angstrom=reach_angstrom, residues=taken)
-        for model in range(structure.n_models)
-    ]
-    pairs, share = _over_models([molecule.own_pairs() for molecule in molecules])
+    molecules = _molecules(structure, taken, reach_angstrom)
+    own = [molecule.own_pairs() if molecule else no_pairs() for molecule in molecules]
+    pairs, share = _over_models(own)
     parts, shares = [pairs], [share]
     places = [np.full(len(share), rank[IDENTITY])]
     for done, image in enumerate(images, start=1):
@@ -187,12 +190,27 @@ def _search(
     )
 
 
+def _molecules(
+    structure: Structure, taken: NDArray[np.bool_], reach_angstrom: float
+) -> list[Molecule | None]:
+    """Return what to search of each model, None where nothing takes part."""
+    return [
+        Molecule(structure, model=model, reach_angstrom=reach_angstrom, residues=taken)
+        if polymer_atoms(structure, model, residues=taken).size
+        else None
+        for model in range(structure.n_models)
+    ]
+
+
 def _search_image(
-    structure: Structure, molecules: Sequence[Molecule], image: _Image
+    structure: Structure, molecules: Sequence[Molecule | None], image: _Image
 ) -> tuple[ResiduePairs, NDArray[np.float64], NDArray[np.bool_]]:
     """Return the pairs, their share of models and which are seen from the image."""
     per_model = []
     for molecule in molecules:
+        if molecule is None:
+            per_model.append(no_pairs())
+            continue
         pairs = molecule.image_pairs(image.matrix, self_inverse=image.self_inverse)
         if image.allowed is not None:
             copy_1 = structure.copy_of_residue[pairs.first]

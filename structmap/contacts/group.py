@@ -153,8 +153,8 @@ def element_matrix(
     Returns
     -------
     ndarray of float, shape (4, 4)
-        Cartesian x' = O (R (F x + f) + t + n) + o with the matrices and vectors of the file, so
-        that frames other than the standard one are right too.
+        Cartesian x' = O (R (F x + f) + t + n) + o with the matrices and vectors of the
+        file, so that frames other than the standard one are right too.
     """
     inner = np.eye(4)
     inner[:3, :3] = crystal.rotations[operator]

@@ -100,6 +100,25 @@ def join_pairs(parts: Sequence[ResiduePairs]) -> ResiduePairs:
     )
 
 
+def no_pairs() -> ResiduePairs:
+    """Return an empty list of pairs.
+
+    Returns
+    -------
+    ResiduePairs
+        Without any pair.
+    """
+    nothing = np.zeros(0, dtype=np.int64)
+    return ResiduePairs(
+        first=nothing,
+        second=nothing,
+        distance_angstrom=np.zeros(0),
+        atom_1=nothing,
+        atom_2=nothing,
+        n_atom_pairs=nothing,
+    )
+
+
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class AtomPairs:
     """Atom pairs within reach, the second in an image.
@@ -135,6 +154,30 @@ class AtomPairs:
         )
 
 
+def polymer_atoms(
+    structure: Structure, model: int, *, residues: NDArray[np.bool_]
+) -> NDArray[np.int64]:
+    """Return the atoms of some polymer residues in one model.
+
+    Parameters
+    ----------
+    structure : Structure
+        Coordinates as read.
+    model : int
+        Rank of the model.
+    residues : ndarray of bool, shape (n_residues,)
+        Residues that take part; others than those of polymers do not.
+
+    Returns
+    -------
+    ndarray of int, shape (n,)
+        Rising indices of atoms.
+    """
+    taken = residues & (structure.kind_of_residue == POLYMER)
+    of_model = structure.model_of_atom == model
+    return np.flatnonzero(of_model & taken[structure.residue_of_atom])
+
+
 class Molecule:
     """The polymer atoms of one model, ready to be searched.
 
@@ -147,7 +190,12 @@ class Molecule:
     reach_angstrom : float
         Largest distance that counts.
     residues : ndarray of bool, shape (n_residues,)
-        Residues that take part.
+        Residues that take part; others than those of polymers do not.
+
+    Raises
+    ------
+    ValueError
+        If no atom takes part.
     """
 
     def __init__(
@@ -158,10 +206,9 @@ class Molecule:
         reach_angstrom: float,
         residues: NDArray[np.bool_],
     ) -> None:
-        taken = residues & (structure.kind_of_residue == POLYMER)
-        self.atom = np.flatnonzero(
-            (structure.model_of_atom == model) & taken[structure.residue_of_atom]
-        )
+        self.atom = polymer_atoms(structure, model, residues=residues)
+        if not self.atom.size:
+            raise ValueError(f"no atom of model {model} takes part")
         self.reach = reach_angstrom
         self.position = structure.position[self.atom]
         self.residue = structure.residue_of_atom[self.atom]
