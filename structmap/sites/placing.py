@@ -313,7 +313,7 @@ def _say_what_prolines_say(
         chain = context.families[best.family].chains[best.chain].auth_asym_id
         notes.append(
             f"Every row of chain {chain} has its number in the coordinates, so offset "
-            f"0 was kept; if these are amide data, offset {best.laying.offset:+d} would "
+            f"0 was kept; if these are amide data, {best.laying.offset:+d} would "
             "put fewer values on proline (--offset states it)."
         )
 

@@ -143,6 +143,9 @@ def take_rows(grid: Grid, layout: Layout, *, sha256: str) -> Reading:
     seen: dict[tuple[SiteKey, float, str], int] = {}
     series: dict[str, Series] = {}
     zeros: Counter[str] = Counter()
+    if layout.quantity < 0:
+        for column in layout.measured:  # in the order of the header
+            _series_of(series, layout, column, "")
     for row, line, (key, facts) in zip(grid.rows, grid.lines, identified, strict=True):
         _keep_site(grid, sites, key, facts)
         x = _x_of_row(grid, layout, row, line)
@@ -169,7 +172,7 @@ def take_rows(grid: Grid, layout: Layout, *, sha256: str) -> Reading:
         path=grid.path,
         sha256=sha256,
         sites=sites,
-        series=tuple(series.values()),
+        series=tuple(one for one in series.values() if one.points),
         notes=tuple(notes),
     )
 
