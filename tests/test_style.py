@@ -13,17 +13,10 @@ PACKAGE = Path(__file__).resolve().parent.parent / "structmap"
 MODULES = sorted(PACKAGE.rglob("*.py"))
 ORDER = (
     *("version", "errors", "records", "files", "settings", "structure", "values"),
-    *("sites", "contacts", "quotient", "experiment", "behaviour"),
-    *(
-        "motional_units",
-        "significance",
-        "lattice",
-        "one_process",
-        "network",
-        "exposure",
-        "result",
-    ),
-    *("words", "tables", "page", "figures", "analysis", "batch", "cli"),
+    *("sites", "contacts", "atom_pairs", "quotient", "weakest"),
+    *("experiment", "behaviour", "motional_units", "significance", "lattice"),
+    *("one_process", "network", "exposure", "result", "words", "tables", "page"),
+    *("figures", "analysis", "batch", "cli"),
 )
 FUNCTIONS = (ast.FunctionDef, ast.AsyncFunctionDef)
 
