@@ -684,10 +684,9 @@ def test_gb1_matches_with_its_two_mutations_unnamed(data_folder):
 
 
 def test_homodimer_of_two_numberings_is_found_by_its_names(data_folder, tmp_path):
-    rows = [r for r in map(str.split, lines) if len(r) > 15 and r[9] == "15"]
     folder = data_folder / "public/nmrstar"
     lines = (folder / "bmr16656.str").read_text().splitlines()
-    rows = [line.split() for line in lines if " 15 " in line and len(line.split()) > 15]
+    rows = [r for r in map(str.split, lines) if len(r) > 15 and r[9] == "15"]
     shifts = [f"{r[5]},{r[6]},{r[10]}" for r in rows if r[7] == "N"]
     assert len(shifts) == 63
     path = tmp_path / "shifts.csv"
