@@ -60,7 +60,13 @@ class Chain:
 
     @property
     def letters(self) -> str:
-        """Sequence in one-letter codes."""
+        """Return the sequence in one-letter codes.
+
+        Returns
+        -------
+        str
+            A letter a position.
+        """
         return "".join(letter_of(str(name)) for name in self.name)
 
     def label(self, position: int) -> str:
@@ -69,10 +75,12 @@ class Chain:
         Parameters
         ----------
         position : int
+            Position in the sequence.
 
         Returns
         -------
         str
+            Such as ``A/56A``.
         """
         return f"{self.auth_asym_id}/{self.number[position]}{self.ins_code[position]}"
 
@@ -96,6 +104,7 @@ def find_families(structure: Structure) -> tuple[Family, ...]:
     Parameters
     ----------
     structure : Structure
+        The coordinates.
 
     Returns
     -------

@@ -15,7 +15,9 @@ def site_centres(structure: Structure, sites: Sites) -> NDArray[np.float64]:
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     sites : Sites
+        The matched sites.
 
     Returns
     -------
@@ -44,8 +46,11 @@ def match_rows(
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     table : ValueTable
+        The measured values.
     sites : Sites
+        The matched sites.
 
     Returns
     -------

@@ -21,8 +21,11 @@ def place_by_mapping(
     Parameters
     ----------
     context : Context
+        Table and coordinates.
     parts : sequence of Part
+        Rows by the chain that they name.
     mapping : NumberMapping
+        Says which number is which residue.
 
     Returns
     -------

@@ -57,7 +57,9 @@ def match_sites(
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     table : ValueTable
+        The measured values.
     offset : int or None
         Number to add to the table's numbers; overrides the search.
     mapping : NumberMapping or None
@@ -71,6 +73,7 @@ def match_sites(
     Returns
     -------
     Sites
+        Sites, their copies, and how the numbering was reconciled.
 
     Raises
     ------

@@ -77,7 +77,13 @@ class Laying:
 
     @property
     def score(self) -> int:
-        """Names that agree less names that do not."""
+        """Return how many more names agree than do not.
+
+        Returns
+        -------
+        int
+            Names that agree less names that do not.
+        """
         return 2 * self.n_agreeing - self.n_named
 
 
@@ -112,12 +118,16 @@ def lay_by_offset(
     Parameters
     ----------
     residues : sequence of MeasuredResidue
+        As the table names them.
     chain : Chain
+        Where they are laid.
     offset : int
+        Added to the numbers of the table.
 
     Returns
     -------
     Laying
+        Where they come to lie.
     """
     position = _positions(residues, chain, [offset])[0]
     return lay_at(names_in_play(residues, chain), chain, position, offset=offset)
@@ -129,11 +139,14 @@ def names_in_play(residues: Sequence[MeasuredResidue], chain: Chain) -> NamesInP
     Parameters
     ----------
     residues : sequence of MeasuredResidue
+        As the table names them.
     chain : Chain
+        Where they are laid.
 
     Returns
     -------
     NamesInPlay
+        As arrays.
     """
     return NamesInPlay(
         number=np.array([residue.number for residue in residues]),
@@ -155,7 +168,9 @@ def lay_at(
     Parameters
     ----------
     names : NamesInPlay
+        Names and letters of both sides.
     chain : Chain
+        Where they are laid.
     position : ndarray of int, shape (n_residues,)
         Position on the chain of each measured residue, -1 outside its sequence.
     offset : int or None
@@ -164,6 +179,7 @@ def lay_at(
     Returns
     -------
     Laying
+        The positions with their counts.
     """
     laid = np.flatnonzero(position >= 0)
     at = position[laid]
@@ -191,7 +207,9 @@ def lay_by_names(residues: Sequence[MeasuredResidue], chain: Chain) -> list[Layi
     Parameters
     ----------
     residues : sequence of MeasuredResidue
+        As the table names them.
     chain : Chain
+        Where they are laid.
 
     Returns
     -------
@@ -231,10 +249,12 @@ def name_rank(laying: Laying) -> tuple[int, ...]:
     Parameters
     ----------
     laying : Laying
+        The one to rank.
 
     Returns
     -------
     tuple of int
+        Lowest for the best.
     """
     return (-laying.score, -laying.n_inside, int(laying.offset != 0))
 
@@ -245,11 +265,14 @@ def lay_by_numbers(residues: Sequence[MeasuredResidue], chain: Chain) -> list[La
     Parameters
     ----------
     residues : sequence of MeasuredResidue
+        As the table names them.
     chain : Chain
+        Where they are laid.
 
     Returns
     -------
     list of Laying
+        One for each offset.
     """
     offsets = list(range(-LARGEST_OFFSET, LARGEST_OFFSET + 1))
     found = _positions(residues, chain, offsets)
@@ -272,10 +295,12 @@ def avoid_prolines(layings: Sequence[Laying], chain: Chain) -> bool:
     layings : sequence of Laying
         On one chain, by offsets.
     chain : Chain
+        Where they are laid.
 
     Returns
     -------
     bool
+        True when the values are to be taken for amide data.
     """
     full = full_enough(layings)
     if not full:
@@ -301,10 +326,12 @@ def full_enough(layings: Sequence[Laying]) -> list[Laying]:
     Parameters
     ----------
     layings : sequence of Laying
+        All that were tried.
 
     Returns
     -------
     list of Laying
+        Those with at least 80 % of the most.
     """
     most = max((laying.n_inside for laying in layings), default=0)
     return [laying for laying in layings if laying.n_inside >= _NEARLY_AS_MANY * most]
@@ -316,12 +343,14 @@ def number_rank(laying: Laying, *, amide: bool) -> tuple[int, ...]:
     Parameters
     ----------
     laying : Laying
+        The one to rank.
     amide : bool
         Whether the values avoid prolines on purpose; then proline decides first.
 
     Returns
     -------
     tuple of int
+        Lowest for the best.
     """
     away = int(laying.offset != 0)
     if amide:
@@ -335,10 +364,12 @@ def names_decide(residues: Sequence[MeasuredResidue]) -> bool:
     Parameters
     ----------
     residues : sequence of MeasuredResidue
+        As the table names them.
 
     Returns
     -------
     bool
+        True from five named residues on, or when all are named.
     """
     n_named = sum(letter_of(residue.name) != UNKNOWN for residue in residues)
     return n_named >= min(_FEWEST_NAMES, len(residues))

@@ -90,7 +90,13 @@ class Context:
 
     @property
     def values(self) -> str:
-        """Names of the value files, for messages."""
+        """Return the names of the value files, for messages.
+
+        Returns
+        -------
+        str
+            Parted by commas.
+        """
         return ", ".join(self.table.names)
 
     def chains(self) -> list[tuple[int, int, Chain]]:
@@ -99,6 +105,7 @@ class Context:
         Returns
         -------
         list of tuple
+            Family, chain in it, and the chain.
         """
         return [
             (f, c, chain)
@@ -113,6 +120,7 @@ def split_parts(table: ValueTable) -> list[Part]:
     Parameters
     ----------
     table : ValueTable
+        The measured values.
 
     Returns
     -------
@@ -154,14 +162,18 @@ def place_parts(
     Parameters
     ----------
     context : Context
+        Table and coordinates.
     parts : sequence of Part
+        Rows by the chain that they name.
     offset : int or None
         Stated by the user; None looks for it.
 
     Returns
     -------
     placements : list of Placement
+        One for each part that finds a residue.
     notes : list of str
+        What was decided, one sentence each.
 
     Raises
     ------
@@ -202,7 +214,9 @@ def named_chains(context: Context, part: Part) -> list[tuple[int, int, Chain]]:
     Parameters
     ----------
     context : Context
+        Table and coordinates.
     part : Part
+        Rows that name one chain, or none.
 
     Returns
     -------
@@ -378,11 +392,14 @@ def no_match(context: Context, parts: Sequence[Part]) -> NoMatchError:
     Parameters
     ----------
     context : Context
+        Table and coordinates.
     parts : sequence of Part
+        Rows by the chain that they name.
 
     Returns
     -------
     NoMatchError
+        To be raised.
     """
     numbers = [residue.number for part in parts for residue in part.residues]
     chain = parts[0].chain if len(parts) == 1 else ""
@@ -409,7 +426,9 @@ def disagreements(context: Context, placement: Placement) -> list[str]:
     Parameters
     ----------
     context : Context
+        Table and coordinates.
     placement : Placement
+        A part laid on a chain.
 
     Returns
     -------

@@ -49,6 +49,7 @@ def names_agree(table_name: str, file_name: str) -> bool | None:
     Returns
     -------
     bool or None
+        True, False, or None when either is unknown.
     """
     if not table_name or not file_name:
         return None

@@ -40,6 +40,7 @@ def read_values(
     Returns
     -------
     ValueTable
+        Sites of all files and what was measured on them.
 
     Raises
     ------
@@ -83,6 +84,7 @@ def read_grid(
     Parameters
     ----------
     source : Source
+        The file, as bytes.
     columns : sequence of str
         Names of the columns of a table without a header; empty when it has one.
     keys : collection of str
@@ -91,6 +93,7 @@ def read_grid(
     Returns
     -------
     Grid
+        Its cells.
 
     Raises
     ------

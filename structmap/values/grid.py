@@ -83,10 +83,12 @@ def read_source(path: Path) -> Source:
     Parameters
     ----------
     path : Path
+        The file.
 
     Returns
     -------
     Source
+        Its bytes, unpacked.
 
     Raises
     ------
@@ -122,10 +124,12 @@ def binary_kind(source: Source) -> str:
     Parameters
     ----------
     source : Source
+        The file, as bytes.
 
     Returns
     -------
     str
+        ``sheet``, ``parquet`` or blank.
 
     Raises
     ------
@@ -152,6 +156,7 @@ def read_text(
     Parameters
     ----------
     source : Source
+        The file, as bytes.
     columns : sequence of str
         Names of the columns of a table without a header; empty when it has one.
     keys : collection of str
@@ -160,6 +165,7 @@ def read_text(
     Returns
     -------
     Grid
+        Its cells.
 
     Raises
     ------
@@ -205,12 +211,14 @@ def split_line(line: str, separator: str) -> tuple[str, ...]:
     Parameters
     ----------
     line : str
+        Text of the line.
     separator : str
         A blank stands for any run of blanks and tabs.
 
     Returns
     -------
     tuple of str
+        The cells.
     """
     if separator == " ":
         reader = csv.reader([" ".join(line.split())], delimiter=" ")
@@ -225,10 +233,12 @@ def mend_decimal_comma(grid: Grid) -> Grid:
     Parameters
     ----------
     grid : Grid
+        Cells of the table.
 
     Returns
     -------
     Grid
+        With decimal points only.
 
     Raises
     ------

@@ -89,6 +89,7 @@ def site_role(name: str) -> SiteRole | None:
     Returns
     -------
     str or None
+        Its role, in the words of the coordinate format.
     """
     return _ALIASES.get(_plain(name))
 
@@ -106,6 +107,7 @@ def find_column(header: Sequence[str], names: Collection[str]) -> int:
     Returns
     -------
     int
+        Index of the column.
     """
     return next((n for n, name in enumerate(header) if _plain(name) in names), -1)
 
@@ -145,6 +147,7 @@ def split_name(header: str) -> ColumnName:
     Returns
     -------
     ColumnName
+        Its parts.
     """
     name, unit = split_unit(header)
     error = _ERROR.fullmatch(name)

@@ -30,6 +30,7 @@ def join_readings(readings: Sequence[Reading]) -> ValueTable:
     Returns
     -------
     ValueTable
+        A row a site that has a value.
 
     Raises
     ------
@@ -193,6 +194,7 @@ def file_marks(paths: Sequence[Path]) -> list[str]:
     Parameters
     ----------
     paths : sequence of Path
+        The files.
 
     Returns
     -------

@@ -83,10 +83,12 @@ def find_layout(grid: Grid) -> Layout:
     Parameters
     ----------
     grid : Grid
+        Cells of the table.
 
     Returns
     -------
     Layout
+        What each column holds.
 
     Raises
     ------

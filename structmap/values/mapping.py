@@ -36,6 +36,7 @@ def read_mapping(path: Path | str) -> NumberMapping:
     Returns
     -------
     NumberMapping
+        An entry for each row that leads to a residue.
 
     Raises
     ------

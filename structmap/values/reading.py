@@ -123,13 +123,16 @@ def take_rows(grid: Grid, layout: Layout, *, sha256: str) -> Reading:
     Parameters
     ----------
     grid : Grid
+        Cells of the table.
     layout : Layout
+        What each column holds.
     sha256 : str
         Of the file.
 
     Returns
     -------
     Reading
+        Sites and points.
 
     Raises
     ------

@@ -43,10 +43,12 @@ def is_missing(cell: str) -> bool:
     Parameters
     ----------
     cell : str
+        Text of the cell.
 
     Returns
     -------
     bool
+        True for a blank, ``NA``, ``nan`` and the like.
     """
     return cell.lower() in MISSING
 
@@ -57,10 +59,12 @@ def is_residue_number(cell: str) -> bool:
     Parameters
     ----------
     cell : str
+        Text of the cell.
 
     Returns
     -------
     bool
+        True when `parse_residue` can read it.
     """
     return _RESIDUE.fullmatch(_plain_minus(cell)) is not None
 
@@ -82,6 +86,7 @@ def parse_residue(cell: str, *, path: Path, row: int, column: str) -> ResidueNum
     Returns
     -------
     ResidueNumber
+        Number, with chain, name and code where written.
 
     Raises
     ------
@@ -108,6 +113,7 @@ def parse_number(cell: str, *, path: Path, row: int, column: str) -> float:
     Parameters
     ----------
     cell : str
+        Text of the cell.
     path : Path
         For the message.
     row : int
@@ -141,6 +147,7 @@ def parse_error(cell: str, *, path: Path, row: int, column: str) -> float:
     Parameters
     ----------
     cell : str
+        Text of the cell.
     path : Path
         For the message.
     row : int
@@ -171,10 +178,12 @@ def holds_a_number(cell: str) -> bool:
     Parameters
     ----------
     cell : str
+        Text of the cell.
 
     Returns
     -------
     bool
+        True for a number.
     """
     return _NUMBER.fullmatch(_plain_minus(cell)) is not None
 

@@ -22,6 +22,7 @@ def read_sheet(
     Parameters
     ----------
     source : Source
+        The file, as bytes.
     columns : sequence of str
         Names of the columns of a sheet without a header; empty when it has one.
     keys : collection of str
@@ -30,6 +31,7 @@ def read_sheet(
     Returns
     -------
     Grid
+        Its cells.
 
     Raises
     ------
@@ -71,12 +73,14 @@ def read_parquet(source: Source, *, keys: Collection[str] = NUMBER_NAMES) -> Gri
     Parameters
     ----------
     source : Source
+        The file, as bytes.
     keys : collection of str
         Names of a column that must be there.
 
     Returns
     -------
     Grid
+        Its cells.
 
     Raises
     ------
