@@ -12,9 +12,10 @@ from structmap.values.layout import find_layout
 from structmap.values.reading import Reading, take_rows
 from structmap.values.records import ValueTable
 from structmap.values.sheets import read_parquet, read_sheet
+from structmap.values.star import read_star
 
 _COORDINATES = re.compile(rb"(?:HEADER|CRYST1|REMARK|TITLE |MODEL |ATOM  ) ")
-_STAR_START = re.compile(rb"\s*(?:#[^\n]*\n\s*)*(?:data|save)_\w", re.IGNORECASE)
+_STAR_START = re.compile(rb"\s*(?:#[^\n]*\n\s*)*(?:data|save)_\S", re.IGNORECASE)
 
 
 def read_values(
@@ -33,7 +34,8 @@ def read_values(
     Parameters
     ----------
     paths : path or sequence of paths
-        CSV, TSV or other text, Excel (.xlsx) or Parquet; text may be gzipped.
+        CSV, TSV or other text, Excel (.xlsx), Parquet, NMR-STAR 3 or NEF; text may be
+        gzipped.
     columns : sequence of str
         Names of the columns, in order, of a table without a header; ``-`` skips one.
 
@@ -115,10 +117,6 @@ def _read_table(source: Source, columns: Sequence[str]) -> Reading:
         remedy = "give the coordinates first and the values after them"
         raise FileProblemError(source.path, problem, remedy)
     if _STAR_START.match(head):
-        problem = "is an NMR-STAR or NEF file, which is not read yet"
-        remedy = (
-            "write its values as a table with columns auth_seq_id, NAME, NAME_error"
-        )
-        raise FileProblemError(source.path, problem, remedy)
+        return read_star(source)
     grid = read_grid(source, columns)
     return take_rows(grid, find_layout(grid), sha256=source.sha256)
