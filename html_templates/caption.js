@@ -2,7 +2,7 @@
 
 function drawCaption() {
   byId("caption").replaceChildren(element("span", {}, ...captionWords()));
-  byId("closer").hidden = state.chosen.size === 0;
+  byId("closer").hidden = state.flat || state.chosen.size === 0;
 }
 
 /** @returns {(Node|string)[]} */
@@ -53,7 +53,7 @@ function unitCaption(u) {
   if (unit.lattice.startsWith("lattice")) {
     const [first, ...rest] = unit.pieces;
     const image = shownImages(u)[0];
-    const where = image ? `the neighbour at ${image.printed}` : "a neighbour";
+    const where = image ? `the neighbour at ${image.printed}` : "another molecule of the file";
     words.push(`${names(first)} of this molecule ${first.length === 1 ? "meets" : "meet"} ${rest.map(names).join(" and ")} of ${where}`);
     words.push(shownImages(u).length > 1 ? "; the same contact returns on the other side. " : ". ");
   } else {
@@ -72,7 +72,7 @@ function unitCaption(u) {
 /** Images across which a unit is joined, each once. @param {number} u */
 function shownImages(u) {
   const found = new Map();
-  for (const dash of dashes) if (dash.unit === u) found.set(dash.image, data.images[dash.image]);
+  for (const dash of dashes) if (dash.unit === u && dash.image >= 0) found.set(dash.image, data.images[dash.image]);
   return [...found.values()];
 }
 

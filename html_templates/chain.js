@@ -60,9 +60,8 @@ function nearUnit(e) {
  */
 function chainRow(row) {
   const { first, count, column, labels, bars } = row;
-  const top = 12;
-  const band = data.quantity.band;
-  const low = Math.min(0, scale.low, band ? Math.max(band[0], -0.12 * scale.high) : 0);
+  const top = row.lead ? 17 : 12;
+  const low = lowest();
   const y = (/** @type {number} */ v) => top + bars * (1 - (v - low) / (scale.high - low));
   const foot = top + bars;
   const crystal = data.contacts.kind.some((k) => k === data.contacts.lattice);
@@ -84,14 +83,20 @@ function chainRow(row) {
   return picture;
 }
 
+/** Foot of the bars: zero, or lower where values or the baseline are. */
+function lowest() {
+  const band = data.quantity.band;
+  const foot = band ? Math.max(band[0], -0.15 * scale.high) : 0;
+  return Math.min(0, scale.low, foot);
+}
+
 /** @param {{labels: number, lead: boolean}} row @param {(v: number) => number} y @param {number} width */
 function rowGround(row, y, width) {
   const nodes = [];
   const band = data.quantity.band;
   if (band) {
-    const bottom = Math.max(band[0], -0.12 * scale.high, scale.low - 0.12 * scale.high);
-    const from = Math.min(scale.high, band[1]);
-    nodes.push(svg("rect", { x: row.labels, y: short(y(from)), width: short(width - row.labels), height: short(Math.max(0, y(Math.min(bottom, from)) - y(from))), fill: tokens.band }));
+    const [bottom, from] = [Math.max(band[0], lowest()), Math.min(scale.high, band[1])];
+    nodes.push(svg("rect", { x: row.labels, y: short(y(from)), width: short(width - row.labels), height: short(Math.max(2, y(bottom) - y(from))), fill: tokens.band }));
   }
   for (const tick of ticksBetween(scale.signed ? scale.low : Math.min(0, scale.low), scale.high, 2.4)) {
     const at = short(y(tick));
@@ -196,11 +201,11 @@ function columnUnit(e, x, column, bottom) {
 function columnCrystal(e, middle, column, y) {
   const numerals = [...new Set(touches[e].filter((t) => t.numeral).map((t) => t.numeral))];
   const unit = data.entries.unit[e];
-  const step = Math.min(7, column / Math.max(1, numerals.length));
+  const step = Math.min(8, column / Math.max(1, numerals.length));
   return numerals.map((numeral, i) => {
     const x = middle + (i - (numerals.length - 1) / 2) * step;
     const joins = unit >= 0 && touches[e].some((t) => t.numeral === numeral && data.units[unit].contacts.includes(t.contact));
-    const r = Math.min(3.2, column / 2.6);
+    const r = Math.min(3.8, column / 2.6);
     return svg("path", { d: `M${short(x - r)} ${y}h${short(2 * r)}l${short(-r)} ${short(1.6 * r)}Z`, fill: joins ? unitColour(unit) : tokens.ink3 });
   });
 }

@@ -144,11 +144,14 @@ function inWords(count) {
 function ticksBetween(low, high, wanted) {
   const rough = (high - low) / Math.max(1, wanted) || 1;
   const power = 10 ** Math.floor(Math.log10(rough));
-  const step = [1, 2, 2.5, 5, 10].map((m) => m * power).find((s) => s >= rough * 0.999) || rough;
+  const steps = [0.5, 1, 2, 2.5, 5, 10].map((m) => m * power);
+  let at = steps.findIndex((s) => s >= rough * 0.999);
+  const from = (/** @type {number} */ step) => Math.ceil(low / step - 1e-9);
+  const last = (/** @type {number} */ step) => Math.floor(high / step + 1e-6);
+  if (at > 0 && last(steps[at]) - from(steps[at]) < 1) at--;
+  const step = steps[at] || rough;
   const ticks = [];
-  for (let t = Math.ceil(low / step - 1e-9) * step; t <= high + step * 1e-6; t += step) {
-    ticks.push(Number(t.toPrecision(8)));
-  }
+  for (let n = from(step); n <= last(step); n++) ticks.push(Number((n * step).toPrecision(8)));
   return ticks;
 }
 
@@ -249,7 +252,7 @@ function along(map, at) {
 
 /** @param {number} value */
 function valueColour(value) {
-  if (!scale.signed) return along(VIRIDIS, (value - scale.low) / (scale.high - scale.low));
+  if (!scale.signed) return along(VIRIDIS, value / scale.high);
   const band = data.quantity.band;
   const centre = band ? (band[0] + band[1]) / 2 : 0;
   const reach = Math.max(scale.high - centre, centre - scale.low);

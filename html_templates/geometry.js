@@ -75,7 +75,12 @@ function namedAtom(residue, name) {
 function resetView() {
   view.centre = [...data.view.centre];
   setQuaternion(data.view.quaternion);
-  fitView(data.view.half_width, data.view.half_height);
+  fitView(...openingSize());
+}
+
+/** What must fit in, with room for the edges that fade. @returns {[number, number]} */
+function openingSize() {
+  return [data.view.half_width / 0.86, data.view.half_height / 0.84];
 }
 
 /** @param {number[]} q */

@@ -141,7 +141,7 @@ function findBeads() {
   const known = new Set();
   for (const dash of dashes) {
     const key = `${dash.other}/${dash.image}`;
-    if (dash.unit < 0 || known.has(key)) continue;
+    if (dash.unit < 0 || dash.image < 0 || known.has(key)) continue;
     known.add(key);
     const first = data.residues.first[dash.other];
     const there = entriesOfResidue.get(first) || [];
@@ -161,10 +161,10 @@ function findDashes() {
   units.forEach((unit, u) => unit.contacts.forEach((c) => unitOf.set(c, u)));
   contacts.a.forEach((a, c) => {
     const image = contacts.image[c];
-    if (contacts.kind[c] !== contacts.lattice || image < 0) return;
+    if (contacts.kind[c] !== contacts.lattice) return;
     const unit = unitOf.has(c) ? unitOf.get(c) : -1;
     add(c, a, contacts.b[c], image, unit, contacts.atomA[c], contacts.atomB[c]);
-    const back = images[image].inverse;
+    const back = image < 0 ? -1 : images[image].inverse;
     if (back >= 0 && !(back === image && a === contacts.b[c])) {
       add(c, contacts.b[c], a, back, unit, contacts.atomB[c], contacts.atomA[c]);
     }
@@ -299,11 +299,12 @@ function kinOfChosen() {
  * @returns {{dash: Dash, colour: string, radius: number, ends: number[][]}[]}
  */
 function shownDashes() {
-  if (!state.contacts || !state.neighbours) return [];
+  if (!state.contacts) return [];
   const shown = [];
   const sites = state.unit < 0 && state.chosen.size > 0;
   const chosenResidues = new Set(Array.from(state.chosen, (e) => data.entries.residue[e]));
   for (const dash of dashes) {
+    if (dash.image >= 0 && !state.neighbours) continue;
     const own =
       sites &&
       (chosenResidues.has(data.residues.first[dash.residue]) ||

@@ -112,12 +112,12 @@ function drawAxes(axes, how) {
   for (const tick of how.yTicks ? ticksBetween(axes.low, axes.high, how.yTicks) : []) {
     const y = short(axes.y(tick));
     nodes.push(svg("path", { d: `M${axes.left} ${y}H${axes.right}`, class: "grid" }));
-    nodes.push(svgText(tickText(tick), axes.left - 6, y + 4, "tick", "end"));
+    if (axes.left > 20) nodes.push(svgText(tickText(tick), axes.left - 6, y + 4, "tick", "end"));
   }
   nodes.push(svg("path", { d: `M${axes.left} ${short(axes.bottom)}H${axes.right}`, class: "axis" }));
   const first = profile.x[0];
   const last = profile.x[profile.x.length - 1];
-  const wanted = Math.max(2, Math.floor((axes.right - axes.left) / 44));
+  const wanted = Math.max(2, Math.floor((axes.right - axes.left) / 26));
   const ticks = profile.log ? logTicks(first, last, wanted) : ticksBetween(first, last, wanted);
   for (const tick of ticks) {
     const x = short(axes.x(tick));
@@ -214,11 +214,11 @@ function drawOverview(box, width, height) {
   const groups = data.units.map((unit, u) => ({ unit: u, members: unit.members }));
   const movers = data.entries.moves.flatMap((m, e) => (m ? [e] : []));
   if (!groups.length) groups.push({ unit: -1, members: movers.length ? movers : measuredEntries() });
-  const row = Math.max(groups.length > 4 ? 84 : 96, Math.min(138, (height - 22) / groups.length));
+  const row = Math.max(groups.length > 4 ? 84 : 96, Math.min(groups.length > 2 ? 138 : 190, (height - 22) / groups.length));
   const whole = row * groups.length + 22;
   if (whole > height + 1) box.style.overflowY = "auto";
   const range = rangeOf(groups.flatMap((g) => g.members), profile.above, null);
-  const side = Math.min(150, Math.max(104, width * 0.27));
+  const side = Math.min(150, Math.max(134, width * 0.27));
   const nodes = groups.map((group, i) => {
     const axes = axesIn(34, 14, width - 34 - side - 16, row - 46, range);
     const last = i === groups.length - 1;

@@ -159,7 +159,8 @@ function drawSiteHead() {
     const sorted = column.key === order.key;
     const arrow = sorted ? (order.falling ? "\u00a0↓" : "\u00a0↑") : "";
     const button = element("button", { type: "button", "data-key": column.key }, ...rich(column.head), arrow);
-    const kind = `${column.numeric ? "number" : ""} ${column.drawn ? "drawn" : ""}`.trim();
+    const named = column.key === "note" || column.key === "crystal" ? column.key : "";
+    const kind = `${column.numeric ? "number" : ""} ${column.drawn ? "drawn" : ""} ${named}`.trim();
     return element("th", { scope: "col", class: kind || undefined, "aria-sort": sorted ? (order.falling ? "descending" : "ascending") : undefined }, button);
   });
   byId("site-head").replaceChildren(element("tr", {}, ...cells));

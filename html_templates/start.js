@@ -44,7 +44,9 @@ function contactTip(contact) {
   const mate = image[contact] >= 0 ? data.images[image[contact]] : null;
   const names = `${data.residues.name[a[contact]]} – ${data.residues.name[b[contact]]}${mate ? "′" : ""}`;
   const lines = [element("b", {}, names), element("span", {}, `${distance[contact].toFixed(1)}\u00a0Å, ${atomA[contact]}–${atomB[contact]}`)];
-  if (mate?.numeral) lines.push(element("span", { class: "soft" }, `contact ${mate.numeral}, ${mate.printed} (${mate.shift.map(minus).join(" ")})`));
+  const numeral = data.contacts.numeral[contact];
+  const how = mate ? `, ${mate.printed} (${mate.shift.map(minus).join(" ")})` : ", between molecules of the file";
+  if (numeral) lines.push(element("span", { class: "soft" }, `contact ${numeral}${how}`));
   else if (mate) lines.push(element("span", { class: "soft" }, "of the assembly"));
   return lines;
 }
@@ -269,7 +271,7 @@ function listenToControls() {
     writeAddress();
   });
   byId("copy-link").addEventListener("click", (event) => copyText(location.href, event, "copied"));
-  if (state.flat) for (const id of ["whole", "closer", "turn"]) byId(id).remove?.();
+  if (state.flat) for (const id of ["whole", "turn"]) byId(id).hidden = true;
 }
 
 /** @param {string} colour */
@@ -481,10 +483,10 @@ function layOut() {
   const shown = view.half / Math.max(1, view.width);
   const before = { width: view.width, height: view.height };
   measurePicture();
-  view.half = Math.max(shown * view.width, (view.half * before.height * view.width) / (before.width * view.height));
   if (before.width !== view.width || before.height !== view.height) {
-    const wanted = Math.max(data.view.half_width, (data.view.half_height * view.width) / view.height);
-    const then = Math.max(data.view.half_width, (data.view.half_height * before.width) / before.height);
+    const [wide, high] = openingSize();
+    const wanted = Math.max(wide, (high * view.width) / view.height);
+    const then = Math.max(wide, (high * before.width) / before.height);
     view.half = (shown * before.width * wanted) / then;
   }
   if (viewer) {

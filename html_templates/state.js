@@ -76,7 +76,7 @@
  * @property {{name: string, unit: string, value: (number|null)[]}[]} columns
  * @property {Unit[]} units
  * @property {Profile|null} profile
- * @property {{a: number[], b: number[], kind: number[], distance: number[], image: number[], atomA: string[], atomB: string[], complex: number, lattice: number}} contacts
+ * @property {{a: number[], b: number[], kind: number[], distance: number[], image: number[], numeral: string[], atomA: string[], atomB: string[], complex: number, lattice: number}} contacts
  * @property {Image[]} images
  * @property {{entry: number[], residue: number[], atom: number[]}} copies
  * @property {any[][]} calls
@@ -175,7 +175,7 @@ function prepareData() {
     const kind = contacts.kind[contact];
     const first = residues.first[other];
     const there = (first >= 0 && entriesOfResidue.get(first)) || [-1];
-    const numeral = image >= 0 ? images[image].numeral : "";
+    const numeral = contacts.numeral[contact];
     for (const e of entriesOfResidue.get(residues.first[own]) || []) {
       const known = touches[e].find(
         (t) => t.residue === other && t.kind === kind && t.numeral === numeral,

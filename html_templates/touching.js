@@ -34,8 +34,7 @@ function drawMap() {
   const across = Math.min(330, box.clientWidth || 330);
   const left = 26;
   const room = across - left - 2;
-  const cell = Math.min(4, room / count);
-  mapPlan = { size: Math.max(cell * count, Math.min(room, 264)), left, top: 18, cell: 0 };
+  mapPlan = { size: room, left, top: 18, cell: 0 };
   mapPlan.cell = mapPlan.size / count;
   const height = mapPlan.top + mapPlan.size + 2;
   const picture = svg("svg", { width: across, height, role: "img", "aria-label": mapSentence() });

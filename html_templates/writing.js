@@ -22,7 +22,7 @@ function drawOverlay(place) {
   const seen = beads.map((bead) => ({ bead, ...project(bead.at), r: bead.radius * pixelsPerAngstrom() }));
   const obstacles = findObstacles(seen);
   const names = [...unitNames(seen, obstacles), ...residueNames(seen, obstacles)];
-  nodes.push(...rings(seen), ...contactNames(obstacles, place), ...distances(), ...names);
+  nodes.push(...rings(seen), ...contactNames(obstacles, place), ...distances(obstacles), ...names);
   over.setAttribute("viewBox", `0 0 ${view.width} ${view.height}`);
   over.replaceChildren(...nodes);
 }
@@ -77,7 +77,7 @@ function covering(box, obstacles) {
   for (const [x, y] of obstacles.own) if (inside(x, y, 3)) cost += 1.5;
   for (const [x, y] of obstacles.mates) if (inside(x, y, 2)) cost += 0.15;
   for (const t of obstacles.taken) {
-    const apart = box.x > t.x + t.w || box.x + box.w < t.x || box.y > t.y + t.h || box.y + box.h < t.y;
+    const apart = box.x > t.x + t.w + 6 || box.x + box.w + 6 < t.x || box.y > t.y + t.h || box.y + box.h < t.y;
     if (!apart) cost += 30;
   }
   const outside = box.x < 4 || box.y < 4 || box.x + box.w > view.width - 4 || box.y + box.h > view.height - 4;
@@ -185,7 +185,7 @@ function ring(cx, cy, r, width, dash) {
  * @param {boolean} place
  */
 function contactNames(obstacles, place) {
-  /** @type {Map<number, {ends: number[][]}[]>} */
+  /** @type {Map<number, {dash: Dash, ends: number[][]}[]>} */
   const sides = new Map();
   for (const shown of shownDashes()) {
     if (shown.dash.unit < 0) continue;
@@ -198,12 +198,13 @@ function contactNames(obstacles, place) {
 
 /**
  * @param {number} image
- * @param {{ends: number[][]}[]} list
+ * @param {{dash: Dash, ends: number[][]}[]} list
  * @param {Obstacles} obstacles
  * @param {boolean} place
  */
 function contactName(image, list, obstacles, place) {
-  const { numeral, printed, shift } = data.images[image];
+  const numeral = data.contacts.numeral[list[0].dash.contact];
+  const { printed, shift } = image < 0 ? { printed: "x, y, z", shift: [0, 0, 0] } : data.images[image];
   const shifts = `(${shift.map(minus).join(" ")})`;
   const oneLine = view.width >= 620;
   const first = textWidth(numeral, "700 12px serif") + 9;
@@ -268,16 +269,23 @@ function leader(box, points) {
   return [svg("path", { d: `M${short(x1)} ${short(y1)}L${short(x2)} ${short(y2)}`, stroke: tokens.ink2, "stroke-width": 1, fill: "none" })];
 }
 
-/** Lengths of the dashes, written above them in the close look. */
-function distances() {
+// Lengths of the dashes, written above them in the close look.
+/** @param {Obstacles} obstacles */
+function distances(obstacles) {
   if (!state.sides || !state.chosen.size) return [];
-  return shownDashes()
-    .filter((s) => s.dash.unit >= 0 && s.dash.unit === state.unit)
-    .map((s) => {
-      const [a, b] = s.ends.map(project);
-      const text = `${data.contacts.distance[s.dash.contact].toFixed(1)}\u00a0Å`;
-      return svgText(text, (a.x + b.x) / 2, (a.y + b.y) / 2 - 5, "distance", "middle");
-    });
+  const length = (/** @type {{dash: Dash}} */ s) => data.contacts.distance[s.dash.contact];
+  const own = shownDashes().filter((s) => (state.unit >= 0 ? s.dash.unit === state.unit : s.colour === tokens.ink || s.radius === 0.09));
+  const nodes = [];
+  for (const s of own.sort((p, q) => length(p) - length(q))) {
+    const [a, b] = s.ends.map(project);
+    const [x, y] = [(a.x + b.x) / 2, (a.y + b.y) / 2 - 5];
+    const box = { x: x - 18, y: y - 11, w: 36, h: 13 };
+    const free = obstacles.taken.every((t) => box.x > t.x + t.w || box.x + box.w < t.x || box.y > t.y + t.h || box.y + box.h < t.y);
+    if (!free) continue;
+    obstacles.taken.push(box);
+    nodes.push(svgText(`${length(s).toFixed(1)}\u00a0Å`, x, y, "distance", "middle"));
+  }
+  return nodes;
 }
 
 // --- flat ---
@@ -376,7 +384,7 @@ function valueLegend() {
   const band = quantity.band;
   const centre = scale.signed && band ? (band[0] + band[1]) / 2 : 0;
   const reach = Math.max(scale.high - centre, centre - scale.low);
-  const [low, high] = scale.signed ? [centre - reach, centre + reach] : [scale.low, scale.high];
+  const [low, high] = scale.signed ? [centre - reach, centre + reach] : [0, scale.high];
   const steps = 48;
   const bar = svg("svg", { width: width + 12, height: 27 });
   for (let i = 0; i < steps; i++) {

@@ -108,7 +108,7 @@ def _source(text: str) -> str:
 def _data_block(payload: dict[str, object]) -> str:
     text = json.dumps(payload, ensure_ascii=False, separators=(",", ":"), allow_nan=False)
     if len(text.encode("utf-8")) > COMPRESS_ABOVE_BYTES:
-        packed = gzip.compress(text.encode("utf-8"), compresslevel=9, mtime=0)
+        packed = gzip.compress(text.encode("utf-8"), compresslevel=6, mtime=0)
         return json.dumps({"gzip": base64.b64encode(packed).decode()})
     # In a script element only "<" can end it, and JSON lets it be written as an escape.
     for character in "<>&\u2028\u2029":
@@ -165,7 +165,7 @@ def _rests_on(record: AnalysisRecord) -> str:
 
 def _settings(settings: Settings) -> str:
     """Return the settings that differ from their defaults, and the main ones always."""
-    always = {"cutoff_angstrom", "assembly", "profile_part", "seed"}
+    always = {"cutoff_angstrom", "assembly", "profile_part"}
     rows = []
     for field in fields(Settings):
         value = getattr(settings, field.name)
@@ -195,8 +195,13 @@ def _setting_text(name: str, value: object) -> str:
     elif isinstance(value, bool):
         text = "yes" if value else "no"
     else:
-        text = f"{value:g}" if isinstance(value, float) else str(value)
-    return f"{text}\u00a0{unit}" if unit else text.replace("-", "−")
+        text = _figure(value) if isinstance(value, int | float) else str(value)
+    return f"{text}\u00a0{unit}" if unit else text
+
+
+def _figure(value: float) -> str:
+    text = f"{value:,.0f}" if abs(value) > 9999 else f"{value:g}"
+    return text.replace(",", "\u202f").replace("-", "−")
 
 
 def _foot(record: AnalysisRecord) -> dict[str, str]:

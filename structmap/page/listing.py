@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from structmap.records import store_read_only
 from structmap.result import AnalysisRecord
 from structmap.structure import POLYMER, Structure, one_letter
-from structmap.words import measured_chains, site_name
+from structmap.words import measured_chains
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -146,10 +146,11 @@ def entry_names(record: AnalysisRecord, listing: Listing) -> list[str]:
         As the sentences have them.
     """
     names = residue_names(record, len(listing.first))
-    return [
-        site_name(record, s) if s >= 0 else names[r]
-        for r, s in zip(listing.residue.tolist(), listing.site.tolist(), strict=True)
-    ]
+    residues = listing.residue.tolist()
+    if len(set(residues)) == len(residues):
+        return [names[r] for r in residues]
+    atoms = [str(record.sites.atom[s]) if s >= 0 else "" for s in listing.site.tolist()]
+    return [f"{names[r]}\u00a0{a}" if a else names[r] for r, a in zip(residues, atoms, strict=True)]
 
 
 def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:

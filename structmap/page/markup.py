@@ -11,8 +11,8 @@ from structmap.result import AnalysisRecord, MotionalUnit
 
 SHAPES = ("circle", "square", "triangle", "diamond", "circle", "square")
 _SUBSCRIPTS = (
-    (re.compile(r"R_?1[ _]?(?:rho|ρ|r)(?![a-z])", re.IGNORECASE), "R_{1ρ}"),
-    (re.compile(r"\bR_?([12])(?![0-9a-zA-Z])"), r"R_{\1}"),
+    (re.compile(r"(?<![\w-])(Δ?)R_?1[ _]?(?:rho|ρ)(?!\w|\.\w)", re.IGNORECASE), r"\1R_{1ρ}"),
+    (re.compile(r"(?<![\w-])(Δ?)R_?([12])(?!\w|\.\w)"), r"\1R_{\2}"),
     (re.compile(r"\bk_?ex\b"), "k_{ex}"),
     (re.compile(r"\bK_?[dD]\b"), "K_{d}"),
     (re.compile(r"\bR_?ex\b"), "R_{ex}"),

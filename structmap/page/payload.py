@@ -260,7 +260,7 @@ def _profile(record: AnalysisRecord, listing: Listing) -> dict[str, Any] | None:
         "name": mark_text(quantity.name),
         "unit": mark_unit(quantity.unit),
         "x": plain(x, 6),
-        "xName": mark_text(quantity.x_name.replace("_", " ")),
+        "xName": mark_text(_x_name(record, quantity)),
         "xUnit": mark_unit(x_unit),
         "log": bool(len(x) and x[0] > 0 and x[-1] / x[0] > LOG_WHEN_WIDER_THAN and factor_is_field(quantity)),
         "kept": [bool(k) for k in kept],
@@ -276,6 +276,23 @@ def _profile_quantity(record: AnalysisRecord) -> Quantity:
     grouped = words.grouped_quantities(record)
     with_x = [q for q in record.table.quantities if len(q.x)]
     return next((q for q in with_x if q.name in grouped), with_x[0])
+
+
+_X_OF_MODEL = {
+    "mas-r1rho": "spin-lock field ν_{1}",
+    "exchange-r1rho": "spin-lock field ν_{1}",
+    "cpmg": "CPMG frequency ν_{CPMG}",
+    "exponential": "time",
+    "binding": "total ligand",
+    "melting": "temperature",
+}
+
+
+def _x_name(record: AnalysisRecord, quantity: Quantity) -> str:
+    """Return what x is: as the table names it, else as the model has it."""
+    if quantity.x_name.strip().lower() not in {"", "x"}:
+        return quantity.x_name.replace("_", " ")
+    return _X_OF_MODEL.get(record.settings.model, "x")
 
 
 def factor_is_field(quantity: Quantity) -> bool:

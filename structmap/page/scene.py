@@ -364,15 +364,18 @@ def contacts_payload(record: AnalysisRecord, images: Images) -> dict[str, Any]:
     Returns
     -------
     dict
-        Residues, kind, distance, image and the closest atoms of each contact.
+        Residues, kind, distance, image, numeral and closest atoms of each contact.
     """
     contacts, structure = record.contacts, record.structure
+    numbered = number_crystal_contacts(structure, contacts)
+    numerals = [c.numeral for c in numbered.crystal_contacts]
     return {
         "a": contacts.residue_1.tolist(),
         "b": contacts.residue_2.tolist(),
         "kind": contacts.kind.tolist(),
         "distance": np.round(contacts.distance_angstrom, 2).tolist(),
         "image": images.of_contact.tolist(),
+        "numeral": [numerals[n] if n >= 0 else "" for n in numbered.of_contact.tolist()],
         "atomA": structure.atom_name[contacts.atom_1].tolist(),
         "atomB": structure.atom_name[contacts.atom_2].tolist(),
         "complex": COMPLEX,

@@ -12,6 +12,7 @@ from structmap.result import AnalysisRecord
 TURNS = 72
 MARGIN_ANGSTROM = 3.0
 COVERING_ANGSTROM = 2.5
+SEEN_AT_MOST, MEMBERS_AT_MOST = 800, 60
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -86,6 +87,8 @@ def _joining_images(record: AnalysisRecord, images: Images) -> list[int]:
         contacts = unit.lattice.contacts
         if unit.lattice.verdict.startswith("lattice") and len(contacts):
             found = images.of_contact[contacts]
+            if not (found >= 0).any():
+                continue
             main = int(np.bincount(found[found >= 0]).argmax())
             return [main, images.inverse[main]]
     return []
@@ -145,9 +148,15 @@ def _least_covered(
 ) -> NDArray[np.float64]:
     frames = [_frame(axis, 2 * np.pi * turn / TURNS) for turn in range(TURNS)]
     heights = np.array([np.ptp(framed @ frame[1]) for frame in frames])
-    covered = np.array([_share_covered(framed, members, frame) for frame in frames])
+    some = _every_nth(framed, SEEN_AT_MOST)
+    targets = _every_nth(members, MEMBERS_AT_MOST)
+    covered = np.array([_share_covered(some, targets, frame) for frame in frames])
     cost = covered + heights / heights.min()
     return frames[int(np.argmin(np.round(cost, 6)))]
+
+
+def _every_nth(points: NDArray[np.float64], at_most: int) -> NDArray[np.float64]:
+    return points[:: max(1, -(-len(points) // at_most))]
 
 
 def _frame(axis: NDArray[np.float64], angle: float) -> NDArray[np.float64]:
@@ -168,8 +177,6 @@ def _share_covered(
     if not len(members):
         return 0.0
     seen, targets = framed @ frame.T, members @ frame.T
-    count = 0
-    for target in targets:
-        gap = np.hypot(seen[:, 0] - target[0], seen[:, 1] - target[1])
-        count += int(((gap < COVERING_ANGSTROM) & (seen[:, 2] > target[2] + 0.5)).sum())
-    return count / len(members)
+    apart = targets[:, None, :] - seen[None, :, :]
+    close = (apart[..., :2] ** 2).sum(axis=2) < COVERING_ANGSTROM**2
+    return float((close & (apart[..., 2] < -0.5)).sum()) / len(members)
