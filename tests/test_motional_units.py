@@ -9,8 +9,8 @@ from structmap.motional_units import find_motional_units
 from structmap.motional_units.field import chi2_limits, make_field, make_links
 from structmap.motional_units.grouping import grow_seeds, screen_pairs, unlikeness
 from structmap.motional_units.refinement import (
-    belonging_gain,
     sum_profiles,
+    weigh_belonging,
     weigh_groups,
 )
 
@@ -36,13 +36,35 @@ def test_gain_and_energy_of_a_unit_worked_by_hand():
     field, links = four_sites()
     label = np.array([0, 0, 0, -1])
     sites = np.arange(4)
-    gain = belonging_gain(
-        field, sum_profiles(field, label), sites, 0 * sites, label == 0
-    )
+    gain = weigh_belonging(
+        field, sum_profiles(field, label), site=sites, unit=0 * sites, inside=label == 0
+    ).gain
     assert gain == pytest.approx([12.041855, 7.086397, 17.094363, -4.637935], abs=1e-6)
     group = weigh_groups(field, links, label)
     assert group.energy == pytest.approx([28.122614], abs=1e-6)
-    assert group.capped_energy == pytest.approx([20.986397], abs=1e-6)
+    # Gains capped at 8, price 3.5 a member, 4 an edge; by hand from the gains above.
+    # Leaving out site 2 (mean 4.5 of two, variance 1 + 1/2): its misfit is
+    # (6 - 4.5)^2/(1.5 + 0.04 * 4.5^2) = 0.974, below its one degree of freedom.
+    assert group.capped_energy == pytest.approx([23.086397 - 10.5 + 12], abs=1e-6)
+
+
+def test_members_unlike_their_unit_are_charged_in_the_tests_of_chance():
+    """The same chance cluster of two kinds, the difference worked by hand."""
+    links = make_links(4, np.array([0, 1, 2, 0]), np.array([1, 2, 3, 3]))
+    value = np.array([[9.0, 0], [9, 0], [9, 0], [9, 8]])
+    group = weigh_groups(
+        make_field(value, np.ones(4), seen=None), links, np.zeros(4, int)
+    )
+    excess = []
+    for i in range(4):
+        mean = np.delete(value, i, axis=0).mean(0)
+        covariance = (1 + 1 / 3) * np.eye(2) + 0.04 * np.outer(mean, mean)
+        off = value[i] - mean
+        excess.append(max(0, off @ np.linalg.solve(covariance, off) - 2) / 2)
+    # All gains reach the cap of 8.
+    expected = 4 * (8 - 3.5) + 4 * links.factor * 4 - 1.5 * sum(excess)
+    assert sum(excess) > 10
+    assert group.capped_energy == pytest.approx([expected], rel=1e-9)
 
 
 def test_unlikeness_of_a_pair_worked_by_hand():
@@ -58,13 +80,13 @@ def test_pair_of_profiles_with_unequal_errors_worked_by_hand():
     pairs = screen_pairs(field, make_links(3, np.array([0]), np.array([2])))
     assert pairs.cost == pytest.approx([0.1488842], abs=1e-7)
     label = np.array([-1, 0, 0])
-    gain = belonging_gain(
+    gain = weigh_belonging(
         field,
         sum_profiles(field, label),
-        np.array([0]),
-        np.array([0]),
-        np.array([False]),
-    )
+        site=np.array([0]),
+        unit=np.array([0]),
+        inside=np.array([False]),
+    ).gain
     assert gain == pytest.approx([5.419287], abs=1e-6)
 
 
@@ -89,9 +111,9 @@ def test_gain_is_a_ratio_of_normal_likelihoods():
     field = make_field(value, variance, seen=None)
     label = np.array([0, 0, 0, -1, 0])
     site = np.arange(5)
-    found = belonging_gain(
-        field, sum_profiles(field, label), site, 0 * site, label == 0
-    )
+    found = weigh_belonging(
+        field, sum_profiles(field, label), site=site, unit=0 * site, inside=label == 0
+    ).gain
     for i in range(5):
         others = np.array([j for j in (0, 1, 2, 4) if j != i])
         weight = 1 / variance[others]

@@ -5,7 +5,7 @@ side as one problem with more rows, so that each step of the search runs over al
 them in a few calls of numpy.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -37,6 +37,8 @@ class Links:
     factor : float
         What the worth of an edge is multiplied by, so that a wider cutoff, which makes
         more edges, does not make larger units.
+    n_copy : int
+        Rows of one of the copies laid side by side; no edge joins two copies.
     """
 
     n_rows: int
@@ -45,6 +47,7 @@ class Links:
     start: Integers
     neighbour: Integers
     factor: float
+    n_copy: int
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -106,6 +109,7 @@ def make_links(n_rows: int, first: Integers, second: Integers) -> Links:
         start=start,
         neighbour=other[order],
         factor=factor,
+        n_copy=n_rows,
     )
 
 
@@ -129,7 +133,7 @@ def restrict_links(links: Links, keep: Booleans) -> Links:
     new = make_links(
         int(keep.sum()), number[links.first[inside]], number[links.second[inside]]
     )
-    return _with_factor(new, links.factor)
+    return replace(new, factor=links.factor)
 
 
 def tile_links(links: Links, times: int) -> Links:
@@ -158,17 +162,7 @@ def tile_links(links: Links, times: int) -> Links:
         start=np.append(start, times * len(links.neighbour)),
         neighbour=(links.neighbour + step * links.n_rows).ravel(),
         factor=links.factor,
-    )
-
-
-def _with_factor(links: Links, factor: float) -> Links:
-    return Links(
-        n_rows=links.n_rows,
-        first=links.first,
-        second=links.second,
-        start=links.start,
-        neighbour=links.neighbour,
-        factor=factor,
+        n_copy=links.n_rows,
     )
 
 

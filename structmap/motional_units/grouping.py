@@ -107,12 +107,14 @@ def screen_pairs(field: Field, links: Links) -> PassingPairs:
 
 def _ratio(upper: Floats, lower: Floats) -> Floats:
     """Divide, with 0 for 0/0: columns that nobody has measured."""
+    if lower.shape[1] == 1:
+        return upper / lower  # one weight for all columns is never 0
     safe = np.where(lower > 0, lower, 1.0)
     return np.where(lower > 0, upper / safe, 0.0)
 
 
 def _joint_deviation(push: Floats, total: Floats) -> Floats:
-    out: Floats = _ratio(push * push, np.broadcast_to(total, push.shape)).sum(1)
+    out: Floats = _ratio(push * push, total).sum(1)
     return out
 
 
@@ -232,12 +234,8 @@ class _Clusters:
     def _cost(self, first: Integers, second: Integers) -> Floats:
         total = self.weight[first] + self.weight[second]
         precision = _ratio(self.weight[first] * self.weight[second], total)
-        difference = _ratio(
-            self.push[first],
-            np.broadcast_to(self.weight[first], self.push[first].shape),
-        ) - _ratio(
-            self.push[second],
-            np.broadcast_to(self.weight[second], self.push[second].shape),
+        difference = _ratio(self.push[first], self.weight[first]) - _ratio(
+            self.push[second], self.weight[second]
         )
         mean = _ratio(self.push[first] + self.push[second], total)
         scatter = AMPLITUDE_SCATTER**2 * (1 / self.size[first] + 1 / self.size[second])

@@ -29,9 +29,12 @@ ENERGY_GATE = 5.0
 SMALLEST_UNIT = 3
 MOST_PASSES = 10
 # For the tests of chance: gains are capped, so that one huge value cannot make a
-# cluster, and edges count more, because chance clusters are stringy.
+# cluster; edges count more, because chance clusters are stringy; and members that
+# differ from the unit's profile beyond errors are charged for it, because chance
+# clusters are made of movers of different kinds.
 GAIN_CAP = 8.0
-COMPACT_EDGE_WORTH = 2.8
+COMPACT_EDGE_WORTH = 4.0
+MISFIT_CHARGE = 1.5
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -45,7 +48,8 @@ class Grouping:
     energy : ndarray of float, shape (n_units,)
         Log-likelihood gained by each unit less its price.
     capped_energy : ndarray of float, shape (n_units,)
-        The same with capped gains and heavier edges, for the tests of chance.
+        The same with capped gains, heavier edges and a charge for misfit, for the
+        tests of chance.
     first_row : ndarray of int, shape (n_units,)
         First row of each unit.
     """
@@ -108,34 +112,74 @@ def refine_groups(field: Field, links: Links, label: Integers) -> Integers:
     ndarray of int, shape (n_rows,)
         Connected units of two or more rows, numbered by their first row.
     """
-    label = split_connected(links, label)
+    root = _split_roots(links, np.flatnonzero(label >= 0), label)
+    rows = np.flatnonzero(root >= 0)
     for _ in range(MOST_PASSES):
-        new = split_connected(links, _reassign(field, links, label))
-        if np.array_equal(new, label):
+        changed = _reassign(field, links, root, rows)
+        if not changed.any():
             break
-        label = new
-    return label
+        # Copies of the problem that have settled are left alone.
+        rows = np.flatnonzero((root >= 0) & np.repeat(changed, links.n_copy))
+    return _number_roots(root)
 
 
-def _reassign(field: Field, links: Links, label: Integers) -> Integers:
-    out = np.full_like(label, -1)
-    rows = np.flatnonzero(label >= 0)
+def _reassign(field: Field, links: Links, root: Integers, rows: Integers) -> Booleans:
+    """Move sites of some copies to where they gain most; tell which copies changed."""
+    touched = np.zeros(links.n_rows // max(links.n_copy, 1), bool)
     if not len(rows):
-        return out
+        return touched
+    roots, member_unit = np.unique(root[rows], return_inverse=True)
     position, site = spread_neighbours(links, rows)
-    key = label[rows][position] * links.n_rows + site
-    key, n_inside = np.unique(key, return_counts=True)
-    unit, site = np.divmod(key, links.n_rows)
-    gain = belonging_gain(
-        field, sum_profiles(field, label), site, unit, label[site] == unit
+    key, n_inside = np.unique(
+        member_unit[position] * links.n_rows + site, return_counts=True
     )
-    score = gain - MEMBER_PRICE + EDGE_WORTH * links.factor * n_inside
+    unit, site = np.divmod(key, links.n_rows)
+    found = weigh_belonging(
+        field,
+        _sum_members(field, rows, member_unit),
+        site=site,
+        unit=unit,
+        inside=root[site] == roots[unit],
+    )
+    score = found.gain - MEMBER_PRICE + EDGE_WORTH * links.factor * n_inside
     paying = np.flatnonzero(score > 0)
     unit, site, score = unit[paying], site[paying], score[paying]
     order = np.lexsort((unit, -score, site))
     best = order[np.unique(site[order], return_index=True)[1]]
-    out[site[best]] = unit[best]
-    return out
+    label = np.full(links.n_rows, -1)
+    label[site[best]] = unit[best]
+    new = _split_roots(links, site[best], label)
+    affected = np.union1d(rows, site[best])
+    different = affected[new[affected] != root[affected]]
+    root[affected] = new[affected]
+    touched[different // links.n_copy] = True
+    return touched
+
+
+def _split_roots(links: Links, rows: Integers, label: Integers) -> Integers:
+    """Split labelled rows into connected parts of two or more, named by first rows."""
+    root = np.full(links.n_rows, -1)
+    if not len(rows):
+        return root
+    position, other = spread_neighbours(links, rows)
+    same = label[other] == label[rows][position]
+    number = np.full(links.n_rows, -1)
+    number[rows] = np.arange(len(rows))
+    ends = (position[same], number[other[same]])
+    shape = (len(rows), len(rows))
+    graph = coo_array((np.ones(len(ends[0]), np.int8), ends), shape=shape)
+    part = connected_components(graph, directed=False)[1]
+    first = np.full(int(part.max()) + 1, links.n_rows)
+    np.minimum.at(first, part, rows)
+    root[rows] = np.where(np.bincount(part)[part] >= 2, first[part], -1)
+    return root
+
+
+def _number_roots(root: Integers) -> Integers:
+    label = np.full(len(root), -1, np.int64)
+    used = root >= 0
+    label[used] = np.unique(root[used], return_inverse=True)[1]
+    return label
 
 
 def split_connected(links: Links, label: Integers) -> Integers:
@@ -153,35 +197,7 @@ def split_connected(links: Links, label: Integers) -> Integers:
     ndarray of int, shape (n_rows,)
         The parts, numbered by their first row.
     """
-    out = np.full_like(label, -1)
-    rows = np.flatnonzero(label >= 0)
-    if not len(rows):
-        return out
-    position, other = spread_neighbours(links, rows)
-    same = label[other] == label[rows][position]
-    number = np.full(links.n_rows, -1)
-    number[rows] = np.arange(len(rows))
-    ends = (position[same], number[other[same]])
-    graph = coo_array(
-        (np.ones(len(ends[0]), np.int8), ends), shape=(len(rows), len(rows))
-    )
-    part = connected_components(graph, directed=False)[1]
-    size = np.bincount(part)
-    out[rows] = _number_by_first(np.where(size[part] >= 2, part, -1))
-    return out
-
-
-def _number_by_first(part: Integers) -> Integers:
-    """Renumber parts by where they first appear; -1 stays."""
-    used = np.flatnonzero(part >= 0)
-    if not len(used):
-        return np.asarray(part, np.int64)
-    _, first, inverse = np.unique(part[used], return_index=True, return_inverse=True)
-    rank = np.empty(len(first), np.int64)
-    rank[np.argsort(first)] = np.arange(len(first))
-    out = np.full(len(part), -1, np.int64)
-    out[used] = rank[inverse]
-    return out
+    return _number_roots(_split_roots(links, np.flatnonzero(label >= 0), label))
 
 
 def sum_profiles(field: Field, label: Integers) -> Profiles:
@@ -200,7 +216,10 @@ def sum_profiles(field: Field, label: Integers) -> Profiles:
         One row a unit.
     """
     rows = np.flatnonzero(label >= 0)
-    unit = label[rows]
+    return _sum_members(field, rows, label[rows])
+
+
+def _sum_members(field: Field, rows: Integers, unit: Integers) -> Profiles:
     n_units = int(unit.max(initial=-1)) + 1
     weight = field.weight[rows]
     return Profiles(
@@ -214,9 +233,30 @@ def _sum_by(unit: Integers, values: Floats, n_units: int) -> Floats:
     return np.stack(columns, axis=1) if columns else np.zeros((n_units, 0))
 
 
-def belonging_gain(
-    field: Field, profiles: Profiles, site: Integers, unit: Integers, inside: Booleans
-) -> Floats:
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Belonging:
+    """What speaks for sites to belong to units.
+
+    Attributes
+    ----------
+    gain : ndarray of float, shape (n_pairs,)
+        Log-likelihood gained when the site belongs to the unit.
+    misfit : ndarray of float, shape (n_pairs,)
+        How unlike the unit's profile the site is, to be held against chi-square.
+    """
+
+    gain: Floats
+    misfit: Floats
+
+
+def weigh_belonging(
+    field: Field,
+    profiles: Profiles,
+    *,
+    site: Integers,
+    unit: Integers,
+    inside: Booleans,
+) -> Belonging:
     """Return what the log-likelihood of a site gains when it belongs to a unit.
 
     The site is always left out of the profile that it is held against, and the
@@ -235,8 +275,8 @@ def belonging_gain(
 
     Returns
     -------
-    ndarray of float, shape (n_pairs,)
-        Gains.
+    Belonging
+        Gains and misfits.
     """
     value, weight = field.value[site], field.weight[site]
     own = weight * inside[:, None]
@@ -248,15 +288,21 @@ def belonging_gain(
     precision = np.where(known, weight / (1 + relative), 0.0)
     scatter = np.full(len(site), AMPLITUDE_SCATTER**2)
     misfit = unlikeness(value - mean, precision, scatter, mean)
-    spread = np.einsum("ij,ij->i", mean * mean, np.broadcast_to(precision, mean.shape))
-    rest = np.einsum(
-        "ij,ij->i", value * value, np.broadcast_to(weight * known, mean.shape)
-    )
+    spread = _sum_columns(mean * mean, precision)
+    rest = _sum_columns(value * value, weight * known)
     charge = _charge(np.log1p(relative), field.freedom[site])
-    gain: Floats = 0.5 * (
-        rest - misfit - charge - np.log1p(AMPLITUDE_SCATTER**2 * spread)
-    )
-    return gain
+    charge = charge + np.log1p(AMPLITUDE_SCATTER**2 * spread)
+    return Belonging(gain=0.5 * (rest - misfit - charge), misfit=misfit)
+
+
+def _sum_columns(squares: Floats, weight: Floats) -> Floats:
+    """Sum weighted squares over the columns; one weight may serve all columns."""
+    if weight.shape[1] == 1:
+        plain: Floats = squares.sum(1) * weight[:, 0]
+        return plain
+    each: Floats = squares * weight
+    total: Floats = each.sum(1)
+    return total
 
 
 def _charge(logs: Floats, freedom: Integers) -> Floats:
@@ -318,15 +364,24 @@ def weigh_groups(field: Field, links: Links, label: Integers) -> Grouping:
     rows = np.flatnonzero(label >= 0)
     unit = label[rows]
     n_units = int(unit.max(initial=-1)) + 1
-    gain = belonging_gain(
-        field, sum_profiles(field, label), rows, unit, np.ones(len(rows), bool)
+    found = weigh_belonging(
+        field,
+        sum_profiles(field, label),
+        site=rows,
+        unit=unit,
+        inside=np.ones(len(rows), bool),
     )
     position, other = spread_neighbours(links, rows)
     inner = label[other] == unit[position]
     edges = np.bincount(unit[position[inner]], minlength=n_units) / 2
     price = MEMBER_PRICE * np.bincount(unit, minlength=n_units)
-    plain = np.bincount(unit, gain, minlength=n_units)
-    capped = np.bincount(unit, np.minimum(gain, GAIN_CAP), minlength=n_units)
+    plain = np.bincount(unit, found.gain, minlength=n_units)
+    excess = np.maximum(0.0, found.misfit - field.freedom[rows]) / 2
+    capped: Floats = np.bincount(
+        unit,
+        np.minimum(found.gain, GAIN_CAP) - MISFIT_CHARGE * excess,
+        minlength=n_units,
+    ).astype(np.float64)
     first_row = np.full(n_units, links.n_rows)
     np.minimum.at(first_row, unit, rows)
     return Grouping(

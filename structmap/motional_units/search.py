@@ -131,7 +131,7 @@ def find_motional_units(
     """
     known = None if baseline is None else _spread_baseline(measurements, baseline)
     samples, scales = _scale_columns(measurements, known)
-    links = _link_rows(measurements.site, graph)
+    links = link_rows(measurements.site, graph)
     bases = _choose_bases(centres[measurements.site], known is not None)
     chosen = _search(samples, links, bases, SIGN[direction])
     field = flat_field(samples, chosen.background, chosen.scale, SIGN[direction])
@@ -198,8 +198,21 @@ def _scale_columns(
     return samples, scales
 
 
-def _link_rows(site: Integers, graph: SiteGraph) -> Links:
-    """Contacts between measured sites, as rows."""
+def link_rows(site: Integers, graph: SiteGraph) -> Links:
+    """Return the contacts between measured sites, as rows.
+
+    Parameters
+    ----------
+    site : ndarray of int, shape (n_rows,)
+        Site of each row, rising.
+    graph : SiteGraph
+        Contacts between sites.
+
+    Returns
+    -------
+    Links
+        Contacts between rows.
+    """
     row_of_site = np.full(max(graph.n_sites, int(site.max(initial=-1)) + 1), -1)
     row_of_site[site] = np.arange(len(site))
     first, second = row_of_site[graph.site_1], row_of_site[graph.site_2]

@@ -1,0 +1,83 @@
+"""Searches in values that were put on random sites."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from structmap.motional_units.field import (
+    Field,
+    Floats,
+    Integers,
+    Links,
+    take_rows,
+    tile_links,
+)
+from structmap.motional_units.refinement import find_groups
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Scores:
+    """Statistics of searches, one a placement.
+
+    Attributes
+    ----------
+    total, largest : ndarray of float, shape (n_orders,)
+        Sum and maximum of the capped energies of the units found, those below 0 left
+        out; 0 without any.
+    """
+
+    total: Floats
+    largest: Floats
+
+
+def score_orders(field: Field, links: Links, orders: Integers) -> Scores:
+    """Search fields in which other rows sit at the places of the graph.
+
+    Parameters
+    ----------
+    field : Field
+        Deviations.
+    links : Links
+        Who touches whom.
+    orders : ndarray of int, shape (n_orders, n_rows)
+        Row that comes to each place.
+
+    Returns
+    -------
+    Scores
+        Of each placement.
+    """
+    n_orders, n_rows = orders.shape
+    group = find_groups(take_rows(field, orders.ravel()), tile_links(links, n_orders))
+    block = group.first_row // n_rows
+    energy = np.maximum(group.capped_energy, 0.0)
+    largest = np.zeros(n_orders)
+    np.maximum.at(largest, block, energy)
+    return Scores(
+        total=np.bincount(block, energy, minlength=n_orders).astype(np.float64),
+        largest=largest,
+    )
+
+
+def random_orders(n_rows: int, rng: np.random.Generator) -> Callable[[int], Integers]:
+    """Return a source of random permutations.
+
+    Parameters
+    ----------
+    n_rows : int
+        Rows to permute.
+    rng : numpy.random.Generator
+        Where chance comes from.
+
+    Returns
+    -------
+    callable
+        Gives that many permutations, shape (n_orders, n_rows).
+    """
+
+    def draw(n_orders: int) -> Integers:
+        rows = np.broadcast_to(np.arange(n_rows), (n_orders, n_rows))
+        return rng.permuted(rows, axis=1)
+
+    return draw
