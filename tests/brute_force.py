@@ -93,22 +93,22 @@ def edges_of(
     for operator in operators:
         turn = np.array(operator.rot) / operator.DEN
         image = fractional @ turn.T + np.array(operator.tran) / operator.DEN
-        for shift in wide_shifts(cell, fractional, image, reach):
-            there = transform(cell, image + np.array(shift), "orth")
-            gap = np.maximum(
-                there.min(0) - atoms.position.max(0),
-                atoms.position.min(0) - there.max(0),
-            )
-            if gap.max() > reach:
-                continue
-            name = operator.triplet(), shift
-            _add(directed, found, (atoms, there, agree, reach), name)
+        shifts = np.array(list(wide_shifts(cell, fractional, image, reach)))
+        moves = shifts @ np.array(cell.orth.mat.tolist()).T
+        there = transform(cell, image, "orth")
+        gap = np.maximum(
+            there.min(0) + moves - atoms.position.max(0),
+            atoms.position.min(0) - there.max(0) - moves,
+        ).max(axis=1)
+        for k in np.flatnonzero(gap <= reach + 1e-6):  # boxes further apart are idle
+            name = operator.triplet(), tuple(shifts[k].tolist())
+            _add(directed, found, (atoms, there + moves[k], agree, reach), name)
     for edge, (shortest, count, n_same) in directed.items():
         mirrored = inverse(edge)
         assert mirrored in directed, "a contact must be seen from both sides"
-        if mirrored == edge:  # every pair of two atoms was seen twice
-            count = (count + n_same) // 2
-        found.edges[min(edge, mirrored, key=sorting(operators))] = shortest, count
+        # where the element undoes itself, every pair of two atoms was seen twice
+        once = (count + n_same) // 2 if mirrored == edge else count
+        found.edges[min(edge, mirrored, key=sorting(operators))] = shortest, once
     return found
 
 
@@ -121,7 +121,12 @@ def _add(directed: dict, found: Found, data: tuple, name: tuple) -> None:
         np.fill_diagonal(close, val=False)
     found.directed_pairs += int(close.sum())
     if not identity:
-        np.fill_diagonal(close, np.diagonal(close) & (np.diagonal(apart) >= 0.8))
+        on_element = np.diagonal(apart) < 0.8
+        np.fill_diagonal(close, np.diagonal(close) & ~on_element)
+        for residue in np.unique(atoms.residue[on_element]):
+            own = atoms.residue == residue
+            if on_element[own].mean() > 0.5:  # the residue is its own image
+                close[np.ix_(own, own)] = False
     first, second = np.nonzero(close)
     for i, j in zip(first, second, strict=True):
         a, b = int(atoms.residue[i]), int(atoms.residue[j])

@@ -1,4 +1,3 @@
-
 import gemmi
 import numpy as np
 import pytest
@@ -235,7 +234,7 @@ def pairs_in_assembly(structure, chosen, contacts):
 MOVED = ["5wkd.pdb", "5i55.cif", "3jqh.cif", "1pfe.cif.gz", "3wup.json.gz", "4oz7.pdb"]
 
 
-def described(structure, contacts):
+def described(contacts):
     """What does not depend on which copy of the crystal the file lists."""
     pairs = zip(
         contacts.residue_1.tolist(),
@@ -250,11 +249,11 @@ def described(structure, contacts):
 @pytest.mark.parametrize("name", MOVED)
 def test_any_other_copy_of_the_crystal_has_the_same_contacts(name):
     structure = read_structure(DATA / name)
-    expected = described(structure, contacts_of(structure))
+    expected = described(contacts_of(structure))
     n_operators = len(structure.crystal.triplets)
     for operator, shift in ((0, (3, -2, 5)), (n_operators - 1, (-1, 0, 2))):
         other = moved(structure, image_matrix(structure, operator, shift))
-        assert described(other, contacts_of(other)) == expected
+        assert described(contacts_of(other)) == expected
 
 
 @pytest.mark.parametrize("name", MOVED)
@@ -272,24 +271,29 @@ def test_another_cartesian_frame_leaves_contacts_and_labels(name):
     np.testing.assert_allclose(before.distance_angstrom, after.distance_angstrom)
 
 
+def turned_line(line):
+    """Write x, y, z of 1ORC as y, z + 10, x, and its SCALE records to match."""
+    if line.startswith(("ATOM", "HETATM")):
+        x, y, z = (float(line[i : i + 8]) for i in (30, 38, 46))
+        return f"{line[:30]}{y:8.3f}{z + 10:8.3f}{x:8.3f}{line[54:]}"
+    if not line.startswith("SCALE"):
+        return line
+    row = int(line[5]) - 1
+    a, b, c = 1 / 34.77, 1 / 39.17, 1 / 48.31
+    numbers = ([0, 0, a], [b, 0, 0], [0, c, 0])[row]
+    shift = (0, 0, -10 * c)[row]
+    return (
+        f"SCALE{row + 1}    "
+        + "".join(f"{n:10.6f}" for n in numbers)
+        + (f"     {shift:10.5f}")
+    )
+
+
 def test_scale_records_of_the_file_set_the_frame(tmp_path):
     """The axes of the atoms need not be those that cell lengths and angles imply."""
     text = (DATA / "1orc.pdb").read_text().splitlines()
-    lines = []
-    for line in text:
-        if line.startswith(("ATOM", "HETATM")):  # x, y, z become y, z + 10, x
-            x, y, z = (float(line[i : i + 8]) for i in (30, 38, 46))
-            line = f"{line[:30]}{y:8.3f}{z + 10:8.3f}{x:8.3f}{line[54:]}"
-        if line.startswith("SCALE"):
-            row = int(line[5]) - 1
-            a, b, c = 1 / 34.77, 1 / 39.17, 1 / 48.31
-            matrix = [[0, 0, a], [b, 0, 0], [0, c, 0]][row]
-            shift = [0, 0, -10 * c][row]
-            numbers = "".join(f"{number:10.6f}" for number in matrix)
-            line = f"SCALE{row + 1}    {numbers}     {shift:10.5f}"
-        lines.append(line)
     path = tmp_path / "turned.pdb"
-    path.write_text("\n".join(lines))
+    path.write_text("\n".join(turned_line(line) for line in text))
     before = contacts_of(read_structure(DATA / "1orc.pdb"))
     after = contacts_of(read_structure(path))
     for column in ("residue_1", "residue_2", "operator", "shift", "kind"):
