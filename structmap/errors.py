@@ -62,6 +62,11 @@ class UnknownUnitError(StructmapError):
         )
 
 
+def _listed(columns: tuple[str, ...]) -> str:
+    """Return the first column names, each in quotes."""
+    return ", ".join(map(repr, columns[:8])) + ", ..." * (len(columns) > 8)
+
+
 class NoSiteColumnError(StructmapError):
     """A table does not say which residue a row belongs to."""
 
@@ -70,10 +75,9 @@ class NoSiteColumnError(StructmapError):
         self.path, self.columns = path, columns
 
     def __str__(self) -> str:
-        found = ", ".join(repr(name) for name in self.columns[:8])
-        more = ", ..." if len(self.columns) > 8 else ""
+        found = _listed(self.columns)
         return (
-            f"{self.path}: no column gives the residue number (found: {found}{more}); "
+            f"{self.path}: no column gives the residue number (found: {found}); "
             "call it auth_seq_id, residue, resid or res, or name the columns in order "
             "with --columns if the table has no header"
         )
@@ -87,10 +91,9 @@ class NoQuantityError(StructmapError):
         self.path, self.columns = path, columns
 
     def __str__(self) -> str:
-        found = ", ".join(repr(name) for name in self.columns[:8])
         return (
-            f"{self.path}: no column holds a measured value (found: {found}); add one, "
-            "such as R1 with R1_error"
+            f"{self.path}: no column holds a measured value (found: "
+            f"{_listed(self.columns)}); add one, such as R1 with R1_error"
         )
 
 
@@ -105,10 +108,9 @@ class UnclearColumnsError(StructmapError):
         self.problem, self.remedy = problem, remedy
 
     def __str__(self) -> str:
-        named = ", ".join(repr(name) for name in self.columns[:8])
-        more = ", ..." if len(self.columns) > 8 else ""
         noun = "column" if len(self.columns) == 1 else "columns"
-        return f"{self.path}: {noun} {named}{more} {self.problem}; {self.remedy}"
+        named = _listed(self.columns)
+        return f"{self.path}: {noun} {named} {self.problem}; {self.remedy}"
 
 
 class UnreadableCellError(StructmapError):
@@ -141,11 +143,9 @@ class RaggedRowError(StructmapError):
             if self.found < self.expected
             else "remove the surplus cells or name their columns"
         )
-        cells = "cell" if self.found == 1 else "cells"
-        return (
-            f"{self.path}, row {self.row}: {self.found} {cells} where {self.expected} "
-            f"are due; {remedy}"
-        )
+        cells = f"{self.found} cell" + "s" * (self.found != 1)
+        row = f"{self.path}, row {self.row}"
+        return f"{row}: {cells} where {self.expected} are due; {remedy}"
 
 
 class RepeatedRowError(StructmapError):
@@ -464,3 +464,40 @@ class MissingTemplateError(StructmapError):
             "'pip install -e .' (needs npm or the network), else install structmap "
             "again"
         )
+
+
+class UnknownProcessModelError(StructmapError):
+    """A model of one process has a name that the catalogue lacks."""
+
+    def __init__(self, name: str, known: tuple[str, ...]) -> None:
+        super().__init__(name, known)
+        self.name, self.known = name, known
+
+    def __str__(self) -> str:
+        return f"model {self.name!r} is not known; take one of {', '.join(self.known)}"
+
+
+class MissingConditionError(StructmapError):
+    """A model needs a condition of the experiment that was not given."""
+
+    def __init__(self, model: str, what: str, setting: str) -> None:
+        super().__init__(model, what, setting)
+        self.model, self.what, self.setting = model, what, setting
+
+    def __str__(self) -> str:
+        option = "--" + self.setting.replace("_", "-")
+        return (
+            f"model {self.model}: {self.what} is missing; set {self.setting} in the "
+            f"settings or give {option}"
+        )
+
+
+class UnusableProfileError(StructmapError):
+    """Values that no profile of a model can be made of."""
+
+    def __init__(self, where: str, problem: str, remedy: str) -> None:
+        super().__init__(where, problem, remedy)
+        self.where, self.problem, self.remedy = where, problem, remedy
+
+    def __str__(self) -> str:
+        return f"{self.where}: {self.problem}; {self.remedy}"

@@ -1,0 +1,1 @@
+"""Does one process explain a group of sites: models, fits, the test."""

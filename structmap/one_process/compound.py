@@ -1,0 +1,470 @@
+"""Solving models with a second shared parameter or a nonlinear one at each site.
+
+All fits go through one damped least-squares iteration that runs many problems at once.
+A problem is a set of sites with common shared parameters; baselines and amplitudes are
+projected out, and the parameter of each site is eliminated from the normal equations,
+so that only a two by two system is left for the shared ones.
+"""
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from structmap.one_process.damped import (
+    Grids,
+    Problems,
+    evaluate,
+    iterate,
+    make_grids,
+    project,
+    take,
+)
+from structmap.one_process.linear import LinearPart
+from structmap.one_process.model import FloatArray, Model
+from structmap.one_process.profiles import Profiles
+from structmap.one_process.search import (
+    find_intervals,
+    from_axis,
+    parabola_minimum,
+    to_axis,
+)
+from structmap.one_process.simple import State
+
+_STARTS = 5
+_FIXED_ROUNDS, _QUICK_ROUNDS = 20, 8
+_NODES, _REPLICATES = 1e-6, 1e-4
+_CROSSING = 1e-5
+_CHUNK = 150_000
+"""Points in one batch of problems; more replicates are taken in turns."""
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class CompoundSolver:
+    """A model with companion or local parameters, on the profiles of a group.
+
+    Attributes
+    ----------
+    model : Model
+    profiles : Profiles
+    nodes : ndarray of float, shape (n_nodes,)
+        Positions of the grid on the axis of the shared parameter.
+    shared_nodes, site_nodes : Problems
+        Best fits at the nodes, of the group and of each site alone (site by site).
+    best, best_sites : Problems
+        Best fits at any position.
+    """
+
+    model: Model
+    profiles: Profiles
+    nodes: NDArray[np.float64]
+    shared_nodes: Problems
+    site_nodes: Problems
+    best: Problems
+    best_sites: Problems
+
+    @property
+    def site_profile(self) -> FloatArray:
+        """Misfit of each site alone at the nodes, shape (n_sites, n_nodes)."""
+        return self.site_nodes.chi2.reshape(len(self.profiles.name), len(self.nodes))
+
+    @property
+    def shared_profile(self) -> FloatArray:
+        """Misfit of all sites at the nodes, shape (n_nodes,)."""
+        return self.shared_nodes.chi2
+
+    def minima(self, values: FloatArray, start: State) -> tuple[FloatArray, FloatArray]:
+        """Return the lowest misfits of many sets of values, shared and free.
+
+        Parameters
+        ----------
+        values : ndarray, shape (n_sets, n_sites, n_points)
+            Sets of values; finite where missing.
+        start : State
+            Where the searches start.
+
+        Returns
+        -------
+        shared, free : ndarray, shape (n_sets,)
+            With one value for all sites, and summed over the sites alone.
+        """
+        n_sets, n_sites, n_points = values.shape
+        size = max(1, _CHUNK // (n_sites * n_points))
+        found = [
+            self._minima(values[first : first + size], start)
+            for first in range(0, n_sets, size)
+        ]
+        shared, free = zip(*found, strict=True)
+        return np.concatenate(shared), np.concatenate(free)
+
+    def _minima(
+        self, values: FloatArray, start: State
+    ) -> tuple[FloatArray, FloatArray]:
+        n_sets, n_sites, n_points = values.shape
+        root = np.broadcast_to(self.profiles.root_weight, values.shape)
+        axes, own = _axes(self.model, start), _local_axis(self.model, start.local)
+        group = Problems(
+            value=values,
+            root_weight=root,
+            shared=np.tile(axes, (n_sets, 1)),
+            local=np.tile(own, (n_sets, 1)),
+            chi2=np.full(n_sets, np.inf),
+        )
+        flat = (n_sets * n_sites, 1, n_points)
+        single = Problems(
+            value=values.reshape(flat),
+            root_weight=root.reshape(flat),
+            shared=np.tile(axes, (n_sets * n_sites, 1)),
+            local=np.tile(own, n_sets)[:, None],
+            chi2=np.full(n_sets * n_sites, np.inf),
+        )
+        x, model = self.profiles.x, self.model
+        shared = iterate(
+            model, x, group, tolerance=_REPLICATES, rounds=_QUICK_ROUNDS
+        ).chi2
+        free = iterate(
+            model, x, single, tolerance=_REPLICATES, rounds=_QUICK_ROUNDS
+        ).chi2
+        free = free.reshape(n_sets, n_sites).sum(axis=1)
+        return shared, np.minimum(free, shared)
+
+    def fit_shared(self) -> tuple[float, float]:
+        """Return position and misfit of the best shared value."""
+        return float(self.best.shared[0, 0]), float(self.best.chi2[0])
+
+    def fit_sites(self) -> tuple[FloatArray, FloatArray]:
+        """Return positions and misfits of the sites alone, shape (n_sites,) each."""
+        return self.best_sites.shared[:, 0], self.best_sites.chi2
+
+    def interval(self, best: float, limit: float) -> tuple[float, float]:
+        """Return where the shared misfit crosses a limit, NaN at an open end.
+
+        Parameters
+        ----------
+        best : float
+            Position of the lowest misfit.
+        limit : float
+            The limit.
+
+        Returns
+        -------
+        low, high : float
+            Positions.
+        """
+        found = find_intervals(
+            lambda at: self._at(at).chi2,
+            self.nodes,
+            self.shared_profile[None],
+            best=np.array([best]),
+            limit=np.array([limit]),
+            close=_CROSSING,
+        )
+        return float(found[0, 0]), float(found[0, 1])
+
+    def site_intervals(self, best: FloatArray, limit: FloatArray) -> FloatArray:
+        """Return where the misfit of each site crosses its limit.
+
+        Parameters
+        ----------
+        best, limit : ndarray, shape (n_sites,)
+            Positions of the lowest misfits, and the limits.
+
+        Returns
+        -------
+        ndarray, shape (n_sites, 2)
+            Positions, NaN at an open end; interpolated between the nodes.
+        """
+        table = self.site_profile
+        row = np.arange(len(table))
+
+        def between(positions: FloatArray) -> FloatArray:
+            lower = np.searchsorted(self.nodes, positions, side="right") - 1
+            lower = np.clip(lower, 0, len(self.nodes) - 2)
+            width = self.nodes[lower + 1] - self.nodes[lower]
+            share = (positions - self.nodes[lower]) / width
+            left, right = table[row, lower], table[row, lower + 1]
+            return np.asarray(left + share * (right - left))
+
+        return find_intervals(between, self.nodes, table, best=best, limit=limit)
+
+    def state(self, position: float) -> State:
+        """Return everything at a position of the shared value.
+
+        Parameters
+        ----------
+        position : float
+            On the axis.
+
+        Returns
+        -------
+        State
+            With companion, local parameters, baselines and amplitudes at their best.
+        """
+        at_best = position == float(self.best.shared[0, 0])
+        solved = self.best if at_best else self._at(np.array([position]))
+        kernel = evaluate(self.model, self.profiles.x, solved.shared, solved.local)
+        projected = project(self.model, solved, kernel)
+        companion = self.model.companion
+        return State(
+            position=position,
+            companion=float(from_axis(solved.shared[0, 1], companion))
+            if companion
+            else float("nan"),
+            local=_from_local_axis(self.model, solved.local[0]),
+            kernel=kernel[0],
+            part=LinearPart(
+                baseline=projected.baseline[0],
+                amplitude=projected.amplitude[0],
+                chi2=(projected.residual[0] ** 2).sum(axis=-1),
+                leverage=projected.constant[0] ** 2 + projected.along[0] ** 2,
+            ),
+        )
+
+    def kernel_at(self, state: State, x: FloatArray) -> FloatArray:
+        """Return the model's function of all sites at other x.
+
+        Parameters
+        ----------
+        state : State
+            Says the parameters.
+        x : ndarray, shape (n,)
+            In the base unit.
+
+        Returns
+        -------
+        ndarray, shape (n_sites, n)
+            Without baseline and amplitude.
+        """
+        place = _axes(self.model, state)
+        local = _local_axis(self.model, state.local)
+        return np.asarray(evaluate(self.model, x, place, local[None])[0])
+
+    def moved(self, state: State, shifts: FloatArray) -> FloatArray:
+        """Return the fitted values with the shared value moved at each site.
+
+        Parameters
+        ----------
+        state : State
+            Says the other parameters.
+        shifts : ndarray, shape (n_sets, n_sites)
+            Moves along the axis.
+
+        Returns
+        -------
+        ndarray, shape (n_sets, n_sites, n_points)
+            Values without noise.
+        """
+        place = np.tile(_axes(self.model, state), (shifts.size, 1))
+        low, high = self.nodes[0], self.nodes[-1]
+        place[:, 0] = np.clip(place[:, 0] + shifts.ravel(), low, high)
+        local = np.tile(_local_axis(self.model, state.local), len(shifts))[:, None]
+        kernel = evaluate(self.model, self.profiles.x, place, local)
+        kernel = kernel.reshape(*shifts.shape, -1)
+        part = state.part
+        return np.asarray(part.baseline[:, None] + part.amplitude[:, None] * kernel)
+
+    def fitted_at_nodes(self, node: NDArray[np.int64]) -> FloatArray:
+        """Return the fits of the sites alone, each at a node of its own.
+
+        Parameters
+        ----------
+        node : ndarray of int, shape (n_sites,)
+            Indices into `nodes`.
+
+        Returns
+        -------
+        ndarray, shape (n_sites, n_points)
+            Fitted values, also where a value is missing.
+        """
+        solved = take(self.site_nodes, np.arange(len(node)) * len(self.nodes) + node)
+        kernel = evaluate(self.model, self.profiles.x, solved.shared, solved.local)
+        part = project(self.model, solved, kernel)
+        fitted = part.baseline[..., None] + part.amplitude[..., None] * kernel
+        return np.asarray(fitted[:, 0])
+
+    def _at(self, positions: FloatArray) -> Problems:
+        """Return the best fits of the group at given positions."""
+        nearest = np.abs(self.nodes - positions[:, None]).argmin(axis=1)
+        start = take(self.shared_nodes, nearest)
+        return self._fixed(start, positions)
+
+    def _fixed(self, start: Problems, positions: FloatArray) -> Problems:
+        shared = np.column_stack([positions, start.shared[:, 1]])
+        moved = replace(start, shared=shared)
+        return iterate(
+            self.model,
+            self.profiles.x,
+            moved,
+            tolerance=_NODES,
+            rounds=_FIXED_ROUNDS,
+            fixed=True,
+        )
+
+
+def make_compound_solver(model: Model, profiles: Profiles) -> CompoundSolver:
+    """Return the solver of a model with companion or local parameters.
+
+    Parameters
+    ----------
+    model : Model
+        With a companion, a local parameter, or both.
+    profiles : Profiles
+        Of one group.
+
+    Returns
+    -------
+    CompoundSolver
+        With the best fits, and those at all nodes.
+
+    Notes
+    -----
+    A coarse grid over all parameters gives starting points; the best five of the group
+    and of each site are refined.
+    """
+    grids = make_grids(model, profiles.x)
+    coarse = _coarse_table(model, profiles, grids)
+    return CompoundSolver(
+        model=model,
+        profiles=profiles,
+        nodes=grids[0],
+        shared_nodes=_fit_group_nodes(model, profiles, coarse),
+        site_nodes=_fit_site_nodes(model, profiles, coarse),
+        best=_fit_group_best(model, profiles, coarse),
+        best_sites=_fit_site_best(model, profiles, coarse),
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class _Coarse:
+    """Misfits on the grid of shared, companion and local parameters.
+
+    ``chi2`` and ``place`` have shape (n_sites, n_nodes * n_companion): the lowest
+    misfit over the local nodes, and at which of them.
+    """
+
+    grids: Grids
+    chi2: FloatArray
+    place: NDArray[np.int64]
+
+    def start(
+        self, node: NDArray[np.int64], place: NDArray[np.int64]
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return shared and local positions of flat nodes and local nodes."""
+        axis, companion, local = self.grids
+        first, second = np.divmod(node, len(companion))
+        return np.column_stack([axis[first], companion[second]]), local[place]
+
+    @property
+    def shape(self) -> tuple[int, int, int]:
+        return len(self.chi2), len(self.grids[0]), len(self.grids[1])
+
+
+def _fit_group_best(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
+    order = np.argsort(coarse.chi2.sum(axis=0), kind="stable")[:_STARTS]
+    start = coarse.start(order, coarse.place[:, order].T)
+    found = iterate(
+        model,
+        profiles.x,
+        _group_problems(profiles, *start),
+    )
+    return take(found, np.array([int(found.chi2.argmin())]))
+
+
+def _fit_group_nodes(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
+    _, n_nodes, n_companion = coarse.shape
+    total = coarse.chi2.sum(axis=0).reshape(n_nodes, n_companion)
+    node = np.arange(n_nodes) * n_companion + total.argmin(axis=1)
+    start = coarse.start(node, coarse.place[:, node].T)
+    problems = _group_problems(profiles, *start)
+    return iterate(
+        model, profiles.x, problems, tolerance=_NODES, rounds=_FIXED_ROUNDS, fixed=True
+    )
+
+
+def _fit_site_best(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
+    order = np.argsort(coarse.chi2, axis=1, kind="stable")[:, :_STARTS]
+    problems = _site_problems(profiles, coarse, order)
+    found = iterate(model, profiles.x, problems)
+    lowest = found.chi2.reshape(order.shape).argmin(axis=1)
+    return take(found, np.arange(len(order)) * order.shape[1] + lowest)
+
+
+def _fit_site_nodes(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
+    n_sites, n_nodes, n_companion = coarse.shape
+    table = coarse.chi2.reshape(n_sites, n_nodes, n_companion)
+    node = np.arange(n_nodes) * n_companion + table.argmin(axis=2)
+    problems = _site_problems(profiles, coarse, node)
+    return iterate(
+        model, profiles.x, problems, tolerance=_NODES, rounds=_FIXED_ROUNDS, fixed=True
+    )
+
+
+def _group_problems(
+    profiles: Profiles, shared: FloatArray, local: FloatArray
+) -> Problems:
+    shape = (len(shared), *profiles.value.shape)
+    return Problems(
+        value=np.broadcast_to(profiles.filled, shape),
+        root_weight=np.broadcast_to(profiles.root_weight, shape),
+        shared=shared,
+        local=local,
+        chi2=np.full(len(shared), np.inf),
+    )
+
+
+def _site_problems(
+    profiles: Profiles, coarse: _Coarse, node: NDArray[np.int64]
+) -> Problems:
+    """Return problems of one site each, several flat nodes a site."""
+    place = np.take_along_axis(coarse.place, node, axis=1)
+    shared, local = coarse.start(node.ravel(), place.reshape(-1, 1))
+    each = node.shape[1]
+    return Problems(
+        value=np.repeat(profiles.filled, each, axis=0)[:, None],
+        root_weight=np.repeat(profiles.root_weight, each, axis=0)[:, None],
+        shared=shared,
+        local=local,
+        chi2=np.full(len(shared), np.inf),
+    )
+
+
+def _coarse_table(model: Model, profiles: Profiles, grids: Grids) -> _Coarse:
+    axis, companion, local = grids
+    n_sites = len(profiles.name)
+    chi2 = np.empty((n_sites, len(axis), len(companion)))
+    place = np.empty(chi2.shape, dtype=np.int64)
+    for row, column in np.ndindex(len(axis), len(companion)):
+        shared = np.tile([axis[row], companion[column]], (n_sites, 1))
+        each = np.tile(local, (n_sites, 1))
+        shape = (n_sites, len(local), len(profiles.x))
+        problems = Problems(
+            value=np.broadcast_to(profiles.filled[:, None], shape),
+            root_weight=np.broadcast_to(profiles.root_weight[:, None], shape),
+            shared=shared,
+            local=each,
+            chi2=np.full(n_sites, np.inf),
+        )
+        kernel = evaluate(model, profiles.x, shared[:1], each[:1])
+        kernel = np.broadcast_to(kernel, shape)
+        found = (project(model, problems, kernel).residual ** 2).sum(axis=-1)
+        place[:, row, column] = found.argmin(axis=1)
+        chi2[:, row, column] = parabola_minimum(found[..., None])[:, 0]
+    flat = (n_sites, -1)
+    return _Coarse(grids=grids, chi2=chi2.reshape(flat), place=place.reshape(flat))
+
+
+def _axes(model: Model, state: State) -> FloatArray:
+    companion = 0.0
+    if model.companion is not None:
+        companion = float(to_axis(state.companion, model.companion))
+    return np.array([[state.position, companion]])
+
+
+def _local_axis(model: Model, local: FloatArray) -> FloatArray:
+    return np.zeros(len(local)) if model.local is None else to_axis(local, model.local)
+
+
+def _from_local_axis(model: Model, local: FloatArray) -> FloatArray:
+    if model.local is None:
+        return np.full(len(local), np.nan)
+    return from_axis(local, model.local)

@@ -1,0 +1,272 @@
+"""The profiles of a group of sites, and what a fit of them found."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+from scipy.stats import chi2 as chi2_law
+
+from structmap.one_process.model import FloatArray, Model
+from structmap.records import store_read_only
+
+FLAT_QUANTILE = 0.99
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Profiles:
+    """Profiles of several sites at common points.
+
+    Attributes
+    ----------
+    name : tuple of str
+        The sites.
+    x : ndarray of float, shape (n_points,)
+        In the base unit of the model, any order.
+    value, error : ndarray of float, shape (n_sites, n_points)
+        Standard errors are above 0; a missing point has NaN as its value.
+    """
+
+    name: tuple[str, ...]
+    x: NDArray[np.float64]
+    value: NDArray[np.float64]
+    error: NDArray[np.float64]
+
+    def __post_init__(self) -> None:
+        store_read_only(self, "x", np.float64, (None,))
+        store_read_only(self, "value", np.float64, (len(self.name), len(self.x)))
+        store_read_only(self, "error", np.float64, self.value.shape)
+        if not np.all(np.isfinite(self.x)):
+            raise ValueError("x holds a value that is not finite")
+        refused = self.error[self.present & ~(self.error > 0)]
+        if refused.size:
+            raise ValueError(f"error holds {refused[0]}; it must be above 0")
+
+    @property
+    def present(self) -> NDArray[np.bool_]:
+        """Which points a site has, shape (n_sites, n_points)."""
+        return np.isfinite(self.value)
+
+    @property
+    def root_weight(self) -> FloatArray:
+        """One over the error, 0 where missing, shape (n_sites, n_points)."""
+        out = np.zeros(self.value.shape)
+        np.divide(1.0, self.error, out=out, where=self.present)
+        return out
+
+    @property
+    def filled(self) -> FloatArray:
+        """The values with 0 where missing, shape (n_sites, n_points)."""
+        return np.where(self.present, self.value, 0.0)
+
+    def take(self, sites: ArrayLike) -> "Profiles":
+        """Return the profiles of some sites.
+
+        Parameters
+        ----------
+        sites : array_like of int or bool
+            Indices, or a mask over the sites.
+
+        Returns
+        -------
+        Profiles
+            In the order given.
+        """
+        index = np.arange(len(self.name))[np.asarray(sites)]
+        return Profiles(
+            name=tuple(self.name[i] for i in index),
+            x=self.x,
+            value=self.value[index],
+            error=self.error[index],
+        )
+
+    def take_points(self, keep: NDArray[np.bool_]) -> "Profiles":
+        """Return the profiles at some of the points.
+
+        Parameters
+        ----------
+        keep : ndarray of bool, shape (n_points,)
+            Points to keep.
+
+        Returns
+        -------
+        Profiles
+            With fewer points.
+        """
+        return Profiles(
+            name=self.name,
+            x=self.x[keep],
+            value=self.value[:, keep],
+            error=self.error[:, keep],
+        )
+
+
+def make_profiles(
+    x: ArrayLike, values: ArrayLike, errors: ArrayLike, *, name: tuple[str, ...] = ()
+) -> Profiles:
+    """Return profiles from plain arrays.
+
+    Parameters
+    ----------
+    x : array_like, shape (n_points,)
+        In the base unit of the model.
+    values : array_like, shape (n_sites, n_points) or (n_points,)
+        NaN where missing.
+    errors : array_like
+        Standard errors, broadcast against the values.
+    name : tuple of str, optional
+        Names of the sites; the default numbers them from 1.
+
+    Returns
+    -------
+    Profiles
+        Checked and read-only.
+
+    Raises
+    ------
+    ValueError
+        If shapes do not fit, x is not finite or an error is not above 0.
+    """
+    value = np.atleast_2d(np.asarray(values, dtype=np.float64))
+    error = np.broadcast_to(np.asarray(errors, dtype=np.float64), value.shape)
+    names = name or tuple(str(number) for number in range(1, len(value) + 1))
+    return Profiles(
+        name=names, x=np.asarray(x, dtype=np.float64), value=value, error=error
+    )
+
+
+def find_flat_sites(profiles: Profiles) -> NDArray[np.bool_]:
+    """Say which profiles a constant explains, so that they tell nothing of a process.
+
+    Parameters
+    ----------
+    profiles : Profiles
+        Of any number of sites.
+
+    Returns
+    -------
+    ndarray of bool, shape (n_sites,)
+        True where chi-square about the weighted mean is below the 99 % point.
+    """
+    weight = profiles.root_weight**2
+    total = weight.sum(axis=1)
+    mean = np.divide(
+        (weight * profiles.filled).sum(axis=1),
+        total,
+        out=np.zeros(len(total)),
+        where=total > 0,
+    )
+    misfit = (weight * (profiles.filled - mean[:, None]) ** 2).sum(axis=1)
+    freedom = np.maximum(profiles.present.sum(axis=1) - 1, 1)
+    return np.asarray(misfit < chi2_law.ppf(FLAT_QUANTILE, freedom))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class GroupFit:
+    """One shared value, and a value for each site, fitted to a group.
+
+    Attributes
+    ----------
+    model : Model
+    profiles : Profiles
+        What was fitted.
+    shared : float
+        The shared value, in the unit of the model's parameter; NaN where the lowest
+        misfit lies on an end of the range searched.
+    best : float
+        Where the misfit is lowest, also on an end.
+    low, high : float
+        Interval of 95 % that takes the error scale from the scatter; NaN at an end
+        that the data leave open.
+    low_stated, high_stated : float
+        The same with the errors as stated.
+    companion : float
+        The second shared value; NaN for models without.
+    chi2_shared, chi2_free : float
+        Misfit with one value, and with one for each site.
+    free : ndarray of float, shape (n_sites,)
+        Values of the sites alone; NaN on an end of the range.
+    free_low, free_high : ndarray of float, shape (n_sites,)
+        Their intervals by the stated errors; NaN at an open end.
+    grid : ndarray of float, shape (n_nodes,)
+        Values of the shared parameter.
+    grid_chi2 : ndarray of float, shape (n_sites, n_nodes)
+        Misfit of each site over them, for the plot; companions are at their best.
+    baseline, amplitude, local : ndarray of float, shape (n_sites,)
+        Of the shared fit; `local` is NaN for models without.
+    fitted, residual, leverage : ndarray of float, shape (n_sites, n_points)
+        Of the shared fit; residuals are values less fitted ones, NaN where missing.
+    curve_x : ndarray of float, shape (n_curve,)
+        A fine grid of x.
+    curve, curve_error : ndarray of float, shape (n_sites, n_curve)
+        Fitted curves with standard errors from the scatter.
+    """
+
+    model: Model
+    profiles: Profiles
+    shared: float
+    best: float
+    low: float
+    high: float
+    low_stated: float
+    high_stated: float
+    companion: float
+    chi2_shared: float
+    chi2_free: float
+    free: NDArray[np.float64]
+    free_low: NDArray[np.float64]
+    free_high: NDArray[np.float64]
+    grid: NDArray[np.float64]
+    grid_chi2: NDArray[np.float64]
+    baseline: NDArray[np.float64]
+    amplitude: NDArray[np.float64]
+    local: NDArray[np.float64]
+    fitted: NDArray[np.float64]
+    residual: NDArray[np.float64]
+    leverage: NDArray[np.float64]
+    curve_x: NDArray[np.float64]
+    curve: NDArray[np.float64]
+    curve_error: NDArray[np.float64]
+
+    def __post_init__(self) -> None:
+        n_sites, n_points = self.profiles.value.shape
+        store_read_only(self, "grid", np.float64, (None,))
+        store_read_only(self, "curve_x", np.float64, (None,))
+        for name in ("free", "free_low", "free_high", "baseline", "amplitude", "local"):
+            store_read_only(self, name, np.float64, (n_sites,))
+        for name in ("fitted", "residual", "leverage"):
+            store_read_only(self, name, np.float64, (n_sites, n_points))
+        store_read_only(self, "grid_chi2", np.float64, (n_sites, len(self.grid)))
+        for name in ("curve", "curve_error"):
+            store_read_only(self, name, np.float64, (n_sites, len(self.curve_x)))
+
+    @property
+    def freedom_shared(self) -> int:
+        """Degrees of freedom of the shared fit."""
+        model, n_sites = self.model, len(self.profiles.name)
+        points = int(self.profiles.present.sum())
+        return points - model.n_own * n_sites - model.n_shared
+
+    @property
+    def freedom_free(self) -> int:
+        """Degrees of freedom of the fits of the sites alone."""
+        model, n_sites = self.model, len(self.profiles.name)
+        points = int(self.profiles.present.sum())
+        return points - (model.n_own + model.n_shared) * n_sites
+
+    @property
+    def freedom_between(self) -> int:
+        """Parameters that the sites alone have more than the shared fit."""
+        return self.model.n_shared * (len(self.profiles.name) - 1)
+
+    @property
+    def f_statistic(self) -> float:
+        """Growth of the misfit by sharing over the scatter; NaN without freedom."""
+        if self.freedom_free < 1 or self.freedom_between < 1 or self.chi2_free <= 0:
+            return float("nan")
+        growth = max(self.chi2_shared - self.chi2_free, 0.0) / self.freedom_between
+        return growth / (self.chi2_free / self.freedom_free)
+
+    @property
+    def error_scale(self) -> float:
+        """Scatter about the fits of the sites alone, in squared stated errors."""
+        return self.chi2_free / self.freedom_free if self.freedom_free > 0 else np.nan
