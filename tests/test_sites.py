@@ -11,15 +11,6 @@ from Bio import Align
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from structmap.errors import (
-    DisagreeingNamesError,
-    DisagreeingResidueError,
-    NoMatchError,
-    RepeatedSiteError,
-    UnclearMatchError,
-    UnknownChainError,
-    UnknownSiteError,
-)
 from structmap.sites import match_rows, match_sites, site_centres
 from structmap.sites.alignment import (
     GAP_EXTEND,
@@ -27,6 +18,15 @@ from structmap.sites.alignment import (
     MATCH,
     MISMATCH,
     align_sequences,
+)
+from structmap.sites.errors import (
+    DisagreeingNamesError,
+    DisagreeingResidueError,
+    NoMatchError,
+    RepeatedSiteError,
+    UnclearMatchError,
+    UnknownChainError,
+    UnknownSiteError,
 )
 from structmap.structure import read_structure
 from structmap.tables import Table, table_text

@@ -11,18 +11,16 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from structmap.errors import (
-    FileProblemError,
-    MissingExtraError,
+from structmap.errors import FileProblemError, MissingExtraError, StructmapError
+from structmap.values import read_mapping, read_values
+from structmap.values.errors import (
     NoQuantityError,
     NoSiteColumnError,
     RaggedRowError,
     RepeatedRowError,
-    StructmapError,
     UnclearColumnsError,
     UnreadableCellError,
 )
-from structmap.values import read_mapping, read_values
 from structmap.values.headers import split_name
 from structmap.values.joining import file_marks
 

@@ -6,15 +6,11 @@ import sys
 import numpy as np
 import pytest
 
-from structmap.errors import (
-    FileProblemError,
-    MissingExtraError,
-    RepeatedRowError,
-    UnreadableCellError,
-)
+from structmap.errors import FileProblemError, MissingExtraError
 from structmap.sites import match_sites
 from structmap.structure import read_structure
 from structmap.values import read_values
+from structmap.values.errors import RepeatedRowError, UnreadableCellError
 
 
 def relaxation(*rows, unit="ms", frequency="600", frame="T1_set"):

@@ -4,7 +4,7 @@ from collections.abc import Iterator, Sequence
 
 import numpy as np
 
-from structmap.errors import DisagreeingResidueError, NoMatchError
+from structmap.sites.errors import DisagreeingResidueError, NoMatchError
 from structmap.sites.families import Chain
 from structmap.sites.offsets import NOWHERE, lay_at, names_in_play
 from structmap.sites.placing import Context, Part, Placement

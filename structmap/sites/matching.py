@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
-from structmap.errors import RepeatedSiteError, UnknownSiteError
+from structmap.sites.errors import RepeatedSiteError, UnknownSiteError
 from structmap.sites.families import Chain, find_families
 from structmap.sites.mapped import place_by_mapping
 from structmap.sites.placing import (

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from structmap.errors import (
+from structmap.sites.errors import (
     DisagreeingNamesError,
     NoMatchError,
     UnclearMatchError,

@@ -9,8 +9,8 @@ from collections.abc import Collection, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 
-from structmap.errors import (
-    FileProblemError,
+from structmap.errors import FileProblemError
+from structmap.values.errors import (
     NoSiteColumnError,
     RaggedRowError,
     UnclearColumnsError,

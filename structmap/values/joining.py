@@ -9,7 +9,7 @@ from pathlib import Path
 
 import numpy as np
 
-from structmap.errors import NoQuantityError, UnclearColumnsError
+from structmap.values.errors import NoQuantityError, UnclearColumnsError
 from structmap.values.reading import Reading, Series, SiteFacts, SiteKey
 from structmap.values.records import Quantity, ValueTable
 

@@ -5,8 +5,8 @@ import re
 from collections import Counter, defaultdict
 from dataclasses import dataclass
 
-from structmap.errors import (
-    FileProblemError,
+from structmap.errors import FileProblemError
+from structmap.values.errors import (
     NoQuantityError,
     NoSiteColumnError,
     UnclearColumnsError,

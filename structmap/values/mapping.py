@@ -5,7 +5,8 @@ from pathlib import Path
 
 import numpy as np
 
-from structmap.errors import FileProblemError, RepeatedRowError, UnclearColumnsError
+from structmap.errors import FileProblemError
+from structmap.values.errors import RepeatedRowError, UnclearColumnsError
 from structmap.values.files import read_grid
 from structmap.values.grid import Grid, read_source
 from structmap.values.headers import find_column

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import NamedTuple
 
-from structmap.errors import RepeatedRowError, UnreadableCellError
+from structmap.values.errors import RepeatedRowError, UnreadableCellError
 from structmap.values.grid import Grid
 from structmap.values.headers import SiteRole
 from structmap.values.layout import Layout, MeasuredColumn

@@ -5,7 +5,7 @@ import re
 from pathlib import Path
 from typing import NamedTuple
 
-from structmap.errors import UnreadableCellError
+from structmap.values.errors import UnreadableCellError
 
 MISSING = frozenset({"", "na", "n/a", "#n/a", "nan", "null", "none"})
 _LARGEST_NUMBER = 1_000_000

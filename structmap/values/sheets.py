@@ -6,7 +6,8 @@ from collections.abc import Collection, Iterable, Sequence
 from dataclasses import replace
 from typing import Any
 
-from structmap.errors import FileProblemError, MissingExtraError, NoSiteColumnError
+from structmap.errors import FileProblemError, MissingExtraError
+from structmap.values.errors import NoSiteColumnError
 from structmap.values.grid import Grid, Source, mend_decimal_comma
 from structmap.values.headers import NUMBER_NAMES, find_column
 from structmap.values.residues import is_residue_number

@@ -9,12 +9,8 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
 from typing import Any, NamedTuple
 
-from structmap.errors import (
-    FileProblemError,
-    MissingExtraError,
-    RepeatedRowError,
-    UnreadableCellError,
-)
+from structmap.errors import FileProblemError, MissingExtraError
+from structmap.values.errors import RepeatedRowError, UnreadableCellError
 from structmap.values.grid import Source
 from structmap.values.reading import Point, Reading, Series, SiteFacts, SiteKey
 from structmap.values.residues import is_residue_number, parse_error, parse_number
