@@ -11,6 +11,7 @@ from structmap.structure.files import ParsedFile
 from structmap.structure.record import LIGAND, POLYMER, WATER
 
 LARGEST_COORDINATE_ANGSTROM = 9000.0
+LARGEST_RESIDUE_ANGSTROM = 12.0
 HYDROGENS = (1, 119)  # gemmi numbers deuterium beyond the periodic table
 
 
@@ -133,7 +134,9 @@ def collect_entries(
         np.concatenate(model_of_atom),
     )
     _check_positions(parsed, entries, table)
-    return _in_order(entries, table)
+    entries, table = _in_order(entries, table)
+    _check_merged(parsed, entries, table)
+    return entries, table
 
 
 def _walk(parsed: ParsedFile, model: gemmi.Model) -> tuple[list[Entry], list[int]]:
@@ -206,6 +209,23 @@ def _check_positions(
         number = f"{entry.auth_seq_id}{entry.ins_code}"
         atom = f"{entry.auth_asym_id}/{number}/{table.name[refused[0]]}"
         raise UnplacedAtomError(parsed.path, atom)
+
+
+def _check_merged(
+    parsed: ParsedFile, entries: list[Entry], table: AtomTable
+) -> None:
+    """Refuse two chains without names, whose residues fall into one another."""
+    start = np.flatnonzero(np.diff(table.entry, prepend=-1))
+    ends = np.append(start[1:], len(table.entry))
+    low = np.minimum.reduceat(table.position, start, axis=0)
+    high = np.maximum.reduceat(table.position, start, axis=0)
+    for index in np.flatnonzero((high - low).max(axis=1) > LARGEST_RESIDUE_ANGSTROM):
+        entry = entries[table.entry[start[index]]]
+        own = slice(start[index], ends[index])
+        atoms = list(zip(table.name[own], table.altloc[own], strict=True))
+        if entry.kind == POLYMER and len(set(atoms)) < len(atoms):
+            label = f"{entry.auth_asym_id}/{entry.auth_seq_id}{entry.ins_code}"
+            raise RepeatedResidueError(parsed.path, label)
 
 
 def _in_order(entries: list[Entry], table: AtomTable) -> tuple[list[Entry], AtomTable]:

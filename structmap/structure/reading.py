@@ -7,7 +7,7 @@ import gemmi
 import numpy as np
 from numpy.typing import NDArray
 
-from structmap.errors import NoPolymerError
+from structmap.errors import NonsenseCellError, NoPolymerError
 from structmap.structure.chains import (
     make_chain_copies,
     matrix_of,
@@ -25,6 +25,7 @@ CA_ONLY_ATOMS_PER_RESIDUE = 1.5
 # Å^3/Da. Dry protein fills 1.23 (0.74 cm^3/g); Matthews, J. Mol. Biol. 33, 491 (1968)
 # found 1.6 to 3.5 in crystals of proteins, and peptides pack more tightly.
 USUAL_VOLUME_PER_DALTON = (1.2, 6.0)
+LEAST_VOLUME_PER_DALTON = 0.3  # diamond has 0.47
 
 
 def read_structure(path: Path | str, *, model: int = 0) -> Structure:
@@ -53,7 +54,7 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     NoPolymerError
         If it holds no atoms or no polymer residues.
     NonsenseCellError
-        If no crystal can have its cell.
+        If no crystal can have its cell, or the molecule does not fit into it.
     UnknownSymmetryError
         If it has a cell but neither a known space group nor listed operators.
     UnknownModelError
@@ -111,6 +112,10 @@ def _warnings(
     weight = polymer_weight_dalton(entries, chains)
     volume = parsed.content.cell.volume / len(crystal.triplets)
     low, high = USUAL_VOLUME_PER_DALTON
+    if volume / weight < LEAST_VOLUME_PER_DALTON:
+        cell = " ".join(f"{number:g}" for number in crystal.cell)
+        problem = f"with {len(crystal.triplets)} operators is too small for the molecule"
+        raise NonsenseCellError(parsed.path, cell, problem)
     if not low <= volume / weight <= high:
         warnings.append(
             f"The cell has {volume / weight:.2f} Å³ for each Da of polymer, where "

@@ -140,6 +140,7 @@ def _make_crystal(parsed: ParsedFile) -> Crystal:
     operators = [operator.wrap() for operator in operators]
     if not _is_group(operators):
         raise UnknownSymmetryError(parsed.path, structure.spacegroup_hm)
+    group = group or gemmi.find_spacegroup_by_ops(gemmi.GroupOps(operators))
     operators.sort(key=lambda operator: operator != gemmi.Op())
     cell = structure.cell
     a, b, c, alpha, beta, gamma = cell.parameters
