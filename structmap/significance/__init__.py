@@ -1,6 +1,6 @@
 """How sure: chances of an accident, stability, membership, and the verdict."""
 
-from structmap.significance.judging import Judgement, UnitEvidence, judge_units
+from structmap.significance.judging import Effort, Judgement, UnitEvidence, judge_units
 from structmap.significance.verdict import choose_verdict
 
-__all__ = ["Judgement", "UnitEvidence", "choose_verdict", "judge_units"]
+__all__ = ["Effort", "Judgement", "UnitEvidence", "choose_verdict", "judge_units"]

@@ -28,7 +28,7 @@ from structmap.significance.chance import (
     find_chance,
 )
 from structmap.significance.placement import Scores, random_orders, score_orders
-from structmap.significance.stability import Recurrence, find_recurrence
+from structmap.significance.stability import REPEATS, Recurrence, find_recurrence
 from structmap.significance.surrogates import smooth_orders
 from structmap.significance.verdict import Verdict, choose_verdict
 
@@ -42,6 +42,25 @@ OWN_SHARE = 0.4
 LARGE = 2000
 Progress = Callable[[str, float], None]
 Outcome = TypeVar("Outcome")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Effort:
+    """How much to compute.
+
+    Attributes
+    ----------
+    most_permutations : int
+        Most permutations where a p value lies at the border.
+    repeats : int
+        Searches with redrawn errors behind stability and behind membership each.
+    workers : int
+        Threads to use; the result does not depend on it.
+    """
+
+    most_permutations: int = MOST_PERMUTATIONS
+    repeats: int = REPEATS
+    workers: int = 1
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -111,8 +130,7 @@ def judge_units(
     *,
     rng: np.random.Generator,
     progress: Progress | None = None,
-    most_permutations: int = MOST_PERMUTATIONS,
-    workers: int = 1,
+    effort: Effort | None = None,
 ) -> Judgement:
     """Test the units that a search has found.
 
@@ -126,10 +144,8 @@ def judge_units(
         Where chance comes from; each test of each unit draws from a child of its own.
     progress : callable or None
         Called with a step and the share done.
-    most_permutations : int
-        Most permutations where a p value lies at the border; at least 19.
-    workers : int
-        Threads to use; the result does not depend on it.
+    effort : Effort or None
+        How much to compute; None for the full amount on one thread.
 
     Returns
     -------
@@ -149,19 +165,27 @@ def judge_units(
         raise ValueError("graphs is empty; stability needs at least one")
     links = tuple(link_rows(search.site, graph) for graph in graphs)
     tell = progress or _say_nothing
+    effort = effort or Effort()
     tell("redrawing errors", 0.0)
     redrawn = [
-        partial(find_recurrence, search, links, noise=noise, rng=child)
+        partial(
+            find_recurrence,
+            search,
+            links,
+            noise=noise,
+            repeats=effort.repeats,
+            rng=child,
+        )
         for noise, child in zip(
             (STABILITY_NOISE, MEMBERSHIP_NOISE), children[1:3], strict=True
         )
     ]
-    stable, member = _run(redrawn, workers)
+    stable, member = _run(redrawn, effort.workers)
     tell("permuting sites", 0.4)
     if n_rows > LARGE:
         chances = _shared_chances(search, children)
     else:
-        chances = _own_chances(search, children, most_permutations, workers)
+        chances = _own_chances(search, children, effort)
     tell("tests done", 1.0)
     return _collect(search, stable, member, chances=chances)
 
@@ -198,8 +222,9 @@ class _Chances:
 
 
 def _own_chances(
-    search: UnitSearch, children: list[np.random.Generator], most: int, workers: int
+    search: UnitSearch, children: list[np.random.Generator], effort: Effort
 ) -> _Chances:
+    most = effort.most_permutations
     units = range(len(search.members))
     found = _run(
         [
@@ -213,7 +238,7 @@ def _own_chances(
                 for u in units
             ),
         ],
-        workers,
+        effort.workers,
     )
     p = [one.p for one in found]
     return _Chances(

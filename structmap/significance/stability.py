@@ -1,10 +1,9 @@
 """Whether units come back when errors are redrawn and the cutoff is varied."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from structmap.motional_units.background import Samples
 from structmap.motional_units.degree import search_samples
 from structmap.motional_units.field import Floats, Integers, Links
 from structmap.motional_units.search import UnitSearch
@@ -42,6 +41,7 @@ def find_recurrence(
     links: tuple[Links, ...],
     *,
     noise: float,
+    repeats: int,
     rng: np.random.Generator,
 ) -> Recurrence:
     """Search again with redrawn errors on each of several contact graphs.
@@ -54,6 +54,8 @@ def find_recurrence(
         Contacts at several cutoffs; the repeats are shared out evenly.
     noise : float
         Size of the noise added, in scaled errors.
+    repeats : int
+        Searches over all graphs; fewer are made of many sites.
     rng : numpy.random.Generator
         Where chance comes from.
 
@@ -63,7 +65,9 @@ def find_recurrence(
         Over all repeats.
     """
     n_rows, n_units = len(search.label), len(search.members)
-    total = int(np.clip(ROWS_TO_SPEND // max(n_rows, 1), FEWEST_REPEATS, REPEATS))
+    total = int(
+        np.clip(ROWS_TO_SPEND // max(n_rows, 1), min(FEWEST_REPEATS, repeats), repeats)
+    )
     each = -(-total // len(links))
     sums = _Sums(n_units, n_rows)
     for contacts in links:
@@ -73,11 +77,11 @@ def find_recurrence(
             found = _search_redrawn(search, contacts, (count, noise), rng)
             _match(search.label, found, sums)
             left -= count
-    repeats = each * len(links)
+    made = each * len(links)
     return Recurrence(
-        stability=sums.jaccard / repeats,
+        stability=sums.jaccard / made,
         share=sums.joined / np.maximum(sums.matches, 1)[:, None],
-        repeats=repeats,
+        repeats=made,
     )
 
 
@@ -98,14 +102,14 @@ def _search_redrawn(
     """Return the units of samples with noise added, shape (n_samples, n_rows)."""
     count, noise = count_and_noise
     known = search.samples
-    scaled = search.behaviour.error_scale * known.error[:, None]
+    scaled = search.scale * known.error[:, None]
     added = rng.standard_normal((count, *known.value.shape[1:]))
     if known.lost:
         added -= added.mean(2, keepdims=True)
     value = known.value + noise * scaled * added
     if known.seen is not None:
         value = np.where(known.seen, value, 0.0)
-    samples = Samples(value=value, error=known.error, seen=known.seen, lost=known.lost)
+    samples = replace(known, value=value)
     bases = search.bases
     if len(search.label) > LARGE:
         bases = (search.bases[search.behaviour.degree],)
