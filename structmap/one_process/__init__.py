@@ -1,1 +1,47 @@
 """Does one process explain a group of sites: models, fits, the test."""
+
+from structmap.one_process.catalogue import MODELS, Conditions, make_model
+from structmap.one_process.engine import fit_each, fit_group
+from structmap.one_process.mixture import Mixture, find_mixture
+from structmap.one_process.model import Model, Parameter
+from structmap.one_process.phrases import plain_words, show_interval
+from structmap.one_process.profiles import GroupFit, Profiles, make_profiles
+from structmap.one_process.reference import Reference
+from structmap.one_process.sharing import OneProcess, TestOptions, judge_group
+from structmap.one_process.tabular import (
+    ONE_PROCESS_COLUMNS,
+    Prepared,
+    analyse_table,
+    judge_groups,
+    prepare_profiles,
+    spinning_conditions,
+    table_rows,
+)
+
+__all__ = [
+    "MODELS",
+    "ONE_PROCESS_COLUMNS",
+    "Conditions",
+    "GroupFit",
+    "Mixture",
+    "Model",
+    "OneProcess",
+    "Parameter",
+    "Prepared",
+    "Profiles",
+    "Reference",
+    "TestOptions",
+    "analyse_table",
+    "find_mixture",
+    "fit_each",
+    "fit_group",
+    "judge_group",
+    "judge_groups",
+    "make_model",
+    "make_profiles",
+    "plain_words",
+    "prepare_profiles",
+    "show_interval",
+    "spinning_conditions",
+    "table_rows",
+]

@@ -1,0 +1,128 @@
+"""What a verdict means, in sentences."""
+
+import numpy as np
+
+from structmap.one_process.sharing import OneProcess
+
+_LIKELY = 0.2
+_PREFIXES = ((1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
+_SCALED_UNITS = ("s", "M")
+
+
+def show_number(value: float, unit: str) -> str:
+    """Return a number with its unit, three digits and a fitting prefix.
+
+    Parameters
+    ----------
+    value : float
+        In the base unit.
+    unit : str
+        Base unit; only s and M take prefixes.
+
+    Returns
+    -------
+    str
+        For example ``18.5 µs``.
+    """
+    if unit not in _SCALED_UNITS or value == 0 or not np.isfinite(value):
+        return f"{value:.3g} {unit}".strip()
+    scale, prefix = next(
+        (pair for pair in _PREFIXES if abs(value) >= pair[0]), _PREFIXES[-1]
+    )
+    return f"{value / scale:.3g} {prefix}{unit}"
+
+
+def show_interval(result: OneProcess) -> str:
+    """Return the shared value with its interval, open ends in words.
+
+    Parameters
+    ----------
+    result : OneProcess
+        Of a group.
+
+    Returns
+    -------
+    str
+        For example ``tau 18.5 µs (16.9 µs to 20.4 µs)`` or ``tau below 800 ns``.
+    """
+    name, unit = result.parameter, result.unit
+    low, high = (show_number(end, unit) for end in (result.low, result.high))
+    low_known, high_known = np.isfinite(result.low), np.isfinite(result.high)
+    if not low_known and not high_known:
+        return f"{name} not bounded by these data"
+    if not low_known:
+        return f"{name} below {high}"
+    if not high_known:
+        return f"{name} above {low}"
+    if not np.isfinite(result.value):
+        return f"{name} between {low} and {high}"
+    return f"{name} {show_number(result.value, unit)} ({low} to {high})"
+
+
+def plain_words(result: OneProcess) -> tuple[str, ...]:
+    """Return what the verdict says and what it does not, in sentences.
+
+    Parameters
+    ----------
+    result : OneProcess
+        Of a group.
+
+    Returns
+    -------
+    tuple of str
+        The verdict first, then its limits.
+    """
+    sentences = [_verdict(result)]
+    if result.verdict in ("shared", "shared by a subset"):
+        sentences.append(_resolution(result))
+    if result.verdict == "shared" and result.reference_p > _LIKELY:
+        sentences.append("But so would most sets of this size.")
+    if result.flat:
+        sentences.append(
+            f"{len(result.flat)} of {len(result.sites)} profiles are flat and carry no "
+            "information: outside the window of this experiment, which is not rest."
+        )
+    if result.error_note:
+        sentences.append(f"{result.error_note[0].upper()}{result.error_note[1:]}.")
+    if result.worst:
+        sentences.append(f"Far off the fit: {'; '.join(result.worst)}.")
+    if result.descriptive:
+        sentences.append(
+            "The group was formed on the same profiles, so this describes it and "
+            "confirms nothing; form it on the structure or on another observable."
+        )
+    return tuple(sentences)
+
+
+def _verdict(result: OneProcess) -> str:
+    n_used = len(result.fit.profiles.name) if result.fit else 0
+    if result.verdict == "shared":
+        return f"One value explains all {n_used} sites: {show_interval(result)}."
+    if result.verdict == "distinct":
+        return (
+            f"One value does not explain these {n_used} sites "
+            f"(chance {result.p_distinct:.2g})."
+        )
+    if result.verdict == "shared by a subset":
+        apart = ", ".join(result.apart)
+        return f"One value explains all but {apart}: {show_interval(result)}."
+    return f"These data cannot tell ({result.reason}); {show_interval(result)}."
+
+
+def _resolution(result: OneProcess) -> str:
+    found = result.detectable
+    if found is None or not np.isfinite(found.split):
+        return "How different sites could be and still pass is not known."
+    linear = result.fit is not None and result.fit.model.shared.scale == "linear"
+    if linear:
+        size = show_number(found.split, result.unit)
+        return f"Sites differing by less than {size} could not be told apart."
+    text = f"Sites differing by less than a factor {found.split:.2f}"
+    sides = (("above", found.one_up), ("below", found.one_down))
+    shown = [
+        f"a single site {side} the others is seen beyond a factor {ratio:.2f}"
+        if np.isfinite(ratio)
+        else f"a single site {side} the others would not be seen"
+        for side, ratio in sides
+    ]
+    return f"{text} could not be told apart; {', '.join(shown)}."
