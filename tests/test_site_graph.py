@@ -113,7 +113,7 @@ def test_no_sites_and_no_contacts_make_an_empty_graph():
 
 @pytest.mark.parametrize(("name", "cutoff"), [("1a28.pdb.gz", 4.5), ("4oz7.pdb", 4.0)])
 def test_equals_a_loop_over_contacts_and_copies(name, cutoff):
-    """Both chains of a homodimer carry the same sites; every third is measured twice."""
+    """Both chains of a homodimer carry the same sites; some are measured twice."""
     structure = read_structure(DATA / name)
     contacts = find_contacts(
         structure, reach_angstrom=6.0, assemblies=choose_assemblies(structure, "auto")
@@ -131,7 +131,9 @@ def test_equals_a_loop_over_contacts_and_copies(name, cutoff):
     for site, residue in copies:
         on_residue.setdefault(residue, []).append(site)
     expected = {
-        (here[0], here[1]): (CHAIN, 0.0) for here in on_residue.values() if len(here) == 2
+        (here[0], here[1]): (CHAIN, 0.0)
+        for here in on_residue.values()
+        if len(here) == 2
     }
     for a, b, kind, distance in zip(
         contacts.residue_1.tolist(),

@@ -20,6 +20,8 @@ SAME_PLACE_ANGSTROM = 1.0
 
 Element = tuple[int, int, int, int]
 IDENTITY: Element = (0, 0, 0, 0)
+Waiting = tuple[int, tuple[int, ...]]
+"""Number of an operator and the copies of one chain that it moves."""
 
 
 def choose_assemblies(structure: Structure, choice: str) -> tuple[Assembly, ...]:
@@ -106,32 +108,35 @@ def assembly_frames(
     frames: list[Frame] = []
     matcher = _Matcher(structure)
     for assembly in assemblies:
-        own = [Frame(assembly=assembly.name, base=np.eye(4))]
-        for number, matrix in enumerate(assembly.matrices):
-            copies = matcher.copies_of(assembly.chains[number])
-            _enter(matcher, own, copies, number, matrix)
-        frames.extend(own)
+        waiting = [
+            (number, copies)
+            for number, chains in enumerate(assembly.chains)
+            for copies in matcher.copies_of(chains)
+        ]
+        base = np.eye(4)
+        while True:
+            frame = Frame(assembly=assembly.name, base=base)
+            frames.append(frame)
+            waiting = [
+                item for item in waiting if not _enter(matcher, frame, item, assembly)
+            ]
+            if not waiting:
+                break
+            base = assembly.matrices[waiting[0][0]]
     return tuple(frames)
 
 
 def _enter(
-    matcher: "_Matcher",
-    frames: list[Frame],
-    copies: Sequence[tuple[int, ...]],
-    number: int,
-    matrix: NDArray[np.float64],
-) -> None:
-    for same_chain in copies:
-        for frame in frames:
-            found = matcher.find(np.linalg.inv(frame.base) @ matrix, same_chain)
-            if found is not None:
-                copy, element = found
-                frame.members.setdefault(copy, {}).setdefault(element, number)
-                break
-        else:
-            frame = Frame(assembly=frames[0].assembly, base=matrix)
-            frame.members[same_chain[0]] = {IDENTITY: number}
-            frames.append(frame)
+    matcher: "_Matcher", frame: Frame, member: Waiting, assembly: Assembly
+) -> bool:
+    """Make an operator a member of a frame if it can be one."""
+    number, copies = member
+    relative = np.linalg.inv(frame.base) @ assembly.matrices[number]
+    found = matcher.find(relative, copies)
+    if found is not None:
+        copy, element = found
+        frame.members.setdefault(copy, {}).setdefault(element, number)
+    return found is not None
 
 
 def corners_of(structure: Structure) -> NDArray[np.float64]:

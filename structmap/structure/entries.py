@@ -211,9 +211,7 @@ def _check_positions(
         raise UnplacedAtomError(parsed.path, atom)
 
 
-def _check_merged(
-    parsed: ParsedFile, entries: list[Entry], table: AtomTable
-) -> None:
+def _check_merged(parsed: ParsedFile, entries: list[Entry], table: AtomTable) -> None:
     """Refuse two chains without names, whose residues fall into one another."""
     start = np.flatnonzero(np.diff(table.entry, prepend=-1))
     ends = np.append(start[1:], len(table.entry))

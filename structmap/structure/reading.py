@@ -43,7 +43,8 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     -------
     Structure
         All alternate conformations, no hydrogens, no atoms of zero occupancy; copies
-        that strict NCS operators of the file make are residues of their own.
+        that strict NCS operators of the file make are residues of their own. Without a
+        crystal the assemblies of the file, if it lists any, make these copies instead.
 
     Raises
     ------
@@ -71,7 +72,8 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     entries, atoms = collect_entries(parsed, models)
     if not any(entry.kind == POLYMER for entry in entries):
         raise NoPolymerError(parsed.path, "polymer residues")
-    ncs = _ncs_matrices(parsed.content)
+    in_assembly = crystal is None and len(parsed.content.assemblies) > 0
+    ncs = [np.eye(4)] if in_assembly else _ncs_matrices(parsed.content)
     chains = make_chain_copies(parsed, entries, ncs)
     warnings = _warnings(parsed, crystal, entries, chains)
     if crystal is not None and not model and len(parsed.content) > 1:
@@ -114,7 +116,9 @@ def _warnings(
     low, high = USUAL_VOLUME_PER_DALTON
     if volume / weight < LEAST_VOLUME_PER_DALTON:
         cell = " ".join(f"{number:g}" for number in crystal.cell)
-        problem = f"with {len(crystal.triplets)} operators is too small for the molecule"
+        problem = (
+            f"with {len(crystal.triplets)} operators is too small for the molecule"
+        )
         raise NonsenseCellError(parsed.path, cell, problem)
     if not low <= volume / weight <= high:
         warnings.append(
