@@ -161,7 +161,7 @@ def find_chemistry(
 
 
 def _bonded_by_chain(structure: Structure, contacts: Contacts) -> NDArray[np.bool_]:
-    """Return the contacts whose closest atoms are bonded as a polymer's residues are."""
+    """Return the contacts whose closest atoms are bonded as in a polymer."""
     link = _link_polymers(structure, contacts.atom_1, contacts.atom_2)
     return np.asarray(link & (contacts.distance_angstrom < LONGEST_BOND_ANGSTROM))
 
