@@ -229,6 +229,8 @@ def test_readme_begins_with_the_job_and_two_commands(repository):
 def test_ci_runs_the_test_command_of_readme(repository):
     lines = (repository / ".ci" / "run").read_text(encoding="utf-8").splitlines()
     assert commands_of_readme(repository)[1] in [line.strip() for line in lines]
+    # The other command's program, from the wheel and outside the checkout.
+    assert "venv/bin/structmap example -o example" in [line.strip() for line in lines]
 
 
 def test_commands_of_readme_are_calls_that_the_program_knows(repository, monkeypatch):
