@@ -144,7 +144,7 @@ function listing(names) {
   return names.length > 14 ? `${names.slice(0, 12).join(" ")} and ${names.length - 12} more` : names.join(" ");
 }
 
-/** @param {Touch} touch */
+/** @param {Meeting} touch */
 function residueName(touch) {
   return touch.entry >= 0 ? data.entries.name[touch.entry] : data.residues.name[touch.residue];
 }

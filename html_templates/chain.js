@@ -291,18 +291,30 @@ function drawChainHead() {
 
 /** Show what is chosen, what the pointer is over, and where the keys stand. */
 function markColumns() {
-  for (const [e, { pick, letter, option }] of columns) {
-    const chosen = state.chosen.has(e);
-    const fill = chosen ? "var(--pick)" : e === state.hovered ? "var(--wash)" : "transparent";
-    if (pick.style.fill !== fill) pick.style.fill = fill;
-    const line = chosen ? "underline" : "";
-    if (letter.style.textDecoration !== line) {
-      letter.style.textDecoration = line;
-      option.setAttribute("aria-selected", String(chosen));
-    }
-  }
+  for (const e of new Set([...markedColumns, ...state.chosen])) markColumn(e);
+  markedColumns = new Set(state.chosen);
   const box = byId("chain");
   if (columns.has(state.cursor)) box.setAttribute("aria-activedescendant", `column-${state.cursor}`);
+}
+
+/** @type {Set<number>} */
+let markedColumns = new Set();
+let hoveredColumn = -1;
+
+/** @param {number} e */
+function markColumn(e) {
+  const column = columns.get(e);
+  if (!column) return;
+  const chosen = state.chosen.has(e);
+  column.pick.style.fill = chosen ? "var(--pick)" : e === state.hovered ? "var(--wash)" : "transparent";
+  column.letter.style.textDecoration = chosen ? "underline" : "";
+  column.option.setAttribute("aria-selected", String(chosen));
+}
+
+function hoverColumn() {
+  markColumn(hoveredColumn);
+  hoveredColumn = state.hovered;
+  markColumn(hoveredColumn);
 }
 
 /** @param {Event} event @returns {number} */

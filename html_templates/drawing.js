@@ -198,7 +198,9 @@ function setScale() {
   scale.high = high > 0 ? roundUp(high) : 0;
   scale.low = scale.signed && low < 0 ? -roundUp(-low) : low;
   if (scale.high === scale.low) scale.high = 1;
-  scale.extent = largest || 1;
+  // Noise alone must not make large beads.
+  const band = data.quantity.band;
+  scale.extent = Math.max(largest, band ? 2 * (band[1] - band[0]) : 0) || 1;
 }
 
 /** @param {number} value */

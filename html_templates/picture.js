@@ -46,6 +46,8 @@ let beads = [];
 /** @type {Dash[]} */
 let dashes = [];
 let pictureWaits = false;
+let sceneChanged = false;
+let lastView = "";
 
 /** Make the picture, flat where the browser offers no WebGL. */
 function startPicture() {
@@ -64,9 +66,8 @@ function startPicture() {
   }
   state.flat = !viewer;
   if (viewer) {
-    drawThreads();
     setSurroundings();
-    restyle();
+    drawThreads();
   }
 }
 
@@ -83,6 +84,10 @@ function makeViewer() {
     cartoonQuality: data.residues.name.length > 1500 ? 4 : 9,
   });
   if (!viewer) return;
+  // We lay the picture out ourselves; the library's watchers would only draw it again.
+  viewer.divwatcher?.disconnect();
+  viewer.intwatcher?.disconnect();
+  applyView();
   for (const [name, ...values] of data.calls) {
     if (ALLOWED_CALLS.has(name)) viewer[name](...values);
   }
@@ -244,7 +249,7 @@ function restyle() {
   if (atoms.length) beadModel.setStyle({ serial: 0 }, atoms[0].style);
   drawSideChains();
   drawDashes();
-  viewer.render();
+  sceneChanged = true;
 }
 
 function styleBeads() {
@@ -413,14 +418,26 @@ function showPicture() {
   });
 }
 
+function viewText() {
+  return [...view.centre, ...view.quaternion, view.half, view.width, view.height].join(" ");
+}
+
+/** Hand the view to the library, which draws at once. */
+function applyView() {
+  lastView = viewText();
+  const distance = view.half / Math.tan(HALF_ANGLE);
+  const [cx, cy, cz] = view.centre;
+  viewer.setView([-cx, -cy, -cz, CAMERA - distance, ...view.quaternion]);
+}
+
 let framesSinceWriting = 0;
 
 /** @param {boolean} withWriting */
 function drawFrame(withWriting) {
   if (viewer) {
-    const distance = view.half / Math.tan(HALF_ANGLE);
-    const [cx, cy, cz] = view.centre;
-    viewer.setView([-cx, -cy, -cz, CAMERA - distance, ...view.quaternion]);
+    if (viewText() !== lastView) applyView();
+    if (sceneChanged) viewer.render();
+    sceneChanged = false;
   }
   framesSinceWriting++;
   const moving = byId("picture").classList.contains("dragging");

@@ -173,6 +173,7 @@ function drawPoints(axes, e, how) {
   const { kept, x } = /** @type {Profile} */ (data.profile);
   const colour = entryColour(e, "unit");
   const unit = data.entries.unit[e];
+  /** @type {SVGElement[]} */
   const nodes = [];
   const dashed = data.quantity.errorsGiven ? undefined : "2 2";
   (how.values[e] || []).forEach((v, p) => {
@@ -346,7 +347,7 @@ function nearestMeasured(e) {
     seen.add(t.entry);
     return true;
   });
-  const across = (/** @type {Touch} */ t) => (t.kind === data.contacts.lattice ? 0 : 1);
+  const across = (/** @type {Meeting} */ t) => (t.kind === data.contacts.lattice ? 0 : 1);
   return list.sort((s, t) => across(s) - across(t) || s.distance - t.distance);
 }
 
@@ -355,7 +356,7 @@ function nearestMeasured(e) {
  * @param {number} height
  * @param {number} top
  * @param {number} total
- * @param {Touch[]} shown
+ * @param {Meeting[]} shown
  * @param {number[]} range
  */
 function drawNear(width, height, top, total, shown, range) {
@@ -406,14 +407,14 @@ function drawRanked(box, width, height) {
   }
   const { name, unit } = data.quantity;
   picture.append(svgText(unit ? `${name} (${unit})` : name, (left + right) / 2, bottom + 36, "faint", "middle"));
-  const room = still.length ? Math.max(40, Math.min(60, bottom * 0.16)) : 0;
+  const room = !still.length ? 0 : moving.length ? Math.max(40, Math.min(60, bottom * 0.16)) : bottom - 24;
   const row = Math.min(14, (bottom - room - 8) / Math.max(1, moving.length));
   const upper = moving.filter((e) => !band || Number(value[e]) >= (band[0] + band[1]) / 2);
   const lower = moving.filter((e) => !upper.includes(e));
   let y = 4;
   for (const e of upper) picture.append(rankedRow(e, x, (y += row) - row / 2, row, width));
   const start = y + (still.length ? 7 : 0);
-  const step = still.length ? Math.min(2.4, room / still.length) : 0;
+  const step = still.length ? Math.min(moving.length ? 2.4 : 14, room / still.length) : 0;
   still.forEach((e, i) => picture.append(rankedRow(e, x, start + (i + 1) * step, step, width)));
   if (still.length) {
     const middle = start + (still.length * step) / 2;
@@ -449,7 +450,7 @@ function rankedRange(measured, band) {
     high = Math.max(high, Number(value[e]) + spread);
   }
   if (!(low < high)) return [0, 1];
-  const name = 0.09 * (high - low);
+  const name = 0.12 * (high - low);
   return [low - name, high + 0.03 * (high - low)];
 }
 

@@ -525,12 +525,12 @@ async function start() {
   markControls();
   parts.push(
     { name: "caption", choose: drawCaption },
-    { name: "chain", choose: markColumns, hover: markColumns },
+    { name: "chain", choose: markColumns, hover: hoverColumn },
     { name: "picture", choose: restylePicture, hover: showPicture },
     { name: "profiles", choose: drawProfiles, hover: () => data.profile || drawProfiles() },
     { name: "units", choose: markUnits },
     { name: "sites", choose: markSites },
-    { name: "map", choose: drawMap, hover: drawMap },
+    { name: "map", choose: drawMap, hover: hoverMap },
   );
   listenToChain();
   listenToUnits();
@@ -546,7 +546,6 @@ async function start() {
   addEventListener("beforeprint", startPrinting);
   addEventListener("afterprint", endPrinting);
   requestAnimationFrame(() => {
-    drawFrame(false);
     document.documentElement.dataset.ready = "1";
   });
 }

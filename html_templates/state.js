@@ -85,7 +85,7 @@
 
 /**
  * One residue that an entry touches.
- * @typedef {object} Touch
+ * @typedef {object} Meeting
  * @property {number} contact
  * @property {number} own residue of this molecule that touches
  * @property {number} residue
@@ -131,7 +131,7 @@ const parts = [];
 const entriesOfResidue = new Map();
 /** @type {Map<string, number>} */
 const entryOfKey = new Map();
-/** @type {Touch[][]} */
+/** @type {Meeting[][]} */
 let touches = [];
 
 /**

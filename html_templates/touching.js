@@ -38,7 +38,7 @@ function drawMap() {
   mapPlan.cell = mapPlan.size / count;
   const height = mapPlan.top + mapPlan.size + 2;
   const picture = svg("svg", { width: across, height, role: "img", "aria-label": mapSentence() });
-  picture.append(...mapFrame(count));
+  picture.append(...mapFrame());
   if (count > CANVAS_ABOVE) {
     box.replaceChildren(cellsOnCanvas(across, height), picture);
     box.style.position = "relative";
@@ -47,8 +47,17 @@ function drawMap() {
     picture.append(...cells.map(cellMark));
     box.replaceChildren(picture);
   }
-  picture.append(...crossHair(count));
+  crossHairNode = svg("g", {}, ...crossHair());
+  picture.append(crossHairNode);
   drawMapKey();
+}
+
+let crossHairNode = svg("g");
+
+/** Follow the pointer; large maps only move the cross-hair. */
+function hoverMap() {
+  if (data.entries.name.length <= CANVAS_ABOVE) return drawMap();
+  crossHairNode.replaceChildren(...crossHair());
 }
 
 function mapSentence() {
@@ -56,8 +65,7 @@ function mapSentence() {
   return `Map of contacts: ${cells.length - across} inside the molecule or assembly above the diagonal, ${across} only in the crystal below it. The numbers stand in the table of sites.`;
 }
 
-/** @param {number} count */
-function mapFrame(count) {
+function mapFrame() {
   const { size, left, top, cell } = mapPlan;
   const nodes = [];
   const step = [10, 20, 50, 100, 200, 500].find((s) => s * cell >= 32) || 1000;
@@ -72,10 +80,9 @@ function mapFrame(count) {
     const at = chain.first * cell;
     nodes.push(svg("path", { d: `M${short(left + at)} ${top}v${size}M${left} ${short(top + at)}h${size}`, class: "axis" }));
   }
-  const lower = hasLattice() ? `M${left} ${top}L${left + size} ${top + size}` : `M${left} ${top}L${left + size} ${top + size}`;
+  const lower = `M${left} ${top}L${left + size} ${top + size}`;
   const edge = hasLattice() ? `M${left} ${top}h${size}v${size}h${-size}Z` : `M${left} ${top}h${size}v${size}Z`;
   nodes.push(svg("path", { d: edge + lower, class: "axis", fill: "none" }));
-  void count;
   return nodes;
 }
 
@@ -85,7 +92,8 @@ function hasLattice() {
 
 /** @param {{row: number, column: number}} cell */
 function isFaint(cell) {
-  const focus = state.hovered >= 0 ? new Set([state.hovered]) : state.chosen;
+  const small = data.entries.name.length <= CANVAS_ABOVE;
+  const focus = small && state.hovered >= 0 ? new Set([state.hovered]) : state.chosen;
   if (!focus.size) return false;
   if (state.unit >= 0 && state.hovered < 0) return !(focus.has(cell.row) && focus.has(cell.column));
   return !(focus.has(cell.row) || focus.has(cell.column));
@@ -125,11 +133,9 @@ function cellsOnCanvas(width, height) {
   return canvas;
 }
 
-/** @param {number} count */
-function crossHair(count) {
+function crossHair() {
   const { size, left, top, cell } = mapPlan;
   const at = state.hovered >= 0 ? state.hovered : state.unit < 0 && state.chosen.size === 1 ? [...state.chosen][0] : -1;
-  void count;
   if (at < 0) return [];
   const place = short((at + 0.5) * cell);
   return [svg("path", { d: `M${left + place} ${top}v${size}M${left} ${top + place}h${size}`, stroke: tokens.ink, "stroke-width": 0.8, fill: "none", "pointer-events": "none" })];

@@ -49,8 +49,21 @@ function samples(ends, count) {
   });
 }
 
-/** @param {number} image */
+/** @type {Map<number, number[][]>} */
+const threadPointsNow = new Map();
+let threadPointsView = "";
+
+/** Where the thread runs on the screen, found once for each view. @param {number} image */
 function threadPoints(image) {
+  if (threadPointsView !== viewText()) threadPointsNow.clear();
+  threadPointsView = viewText();
+  let found = threadPointsNow.get(image);
+  if (!found) threadPointsNow.set(image, (found = findThreadPoints(image)));
+  return found;
+}
+
+/** @param {number} image */
+function findThreadPoints(image) {
   const ranges = image < 0 ? [[0, data.residues.name.length]] : data.images[image].drawn;
   const points = [];
   for (const [from, to] of ranges) {
