@@ -4,8 +4,10 @@ from dataclasses import dataclass
 
 import numpy as np
 from scipy.linalg import qr
+from scipy.sparse import csr_array
 from scipy.stats import chi2
 
+from structmap.motional_units.apart import predict_apart
 from structmap.motional_units.field import Booleans, Floats, Integers
 
 # 1 over the third quartile of the normal distribution: makes a median of absolute
@@ -31,12 +33,15 @@ class Samples:
         False where missing; None when nothing is missing.
     lost : int
         Degrees of freedom taken by baselines of the rows.
+    is_profile : bool
+        Whether the columns are points of one profile.
     """
 
     value: Floats
     error: Floats
     seen: Booleans | None
     lost: int
+    is_profile: bool = True
 
     def freedom(self) -> Integers:
         """Return the degrees of freedom of each row."""
@@ -56,10 +61,13 @@ class Background:
         The baseline at each row.
     scale : ndarray of float, shape (n_samples,)
         Factor by which errors must be multiplied to fit the scatter.
+    error : ndarray of float, shape (n_samples, n_rows)
+        Error of each row with that of its baseline, not yet multiplied.
     """
 
     value: Floats
     scale: Floats
+    error: Floats
 
 
 def trend_bases(centres: Floats) -> list[Floats]:
@@ -114,11 +122,18 @@ def _orthonormal(terms: Floats) -> Floats:
     return out
 
 
-def fit_background(samples: Samples, resting: Booleans, basis: Floats) -> Background:
+def fit_background(
+    samples: Samples,
+    resting: Booleans,
+    basis: Floats,
+    *,
+    near: csr_array | None = None,
+) -> Background:
     """Fit the baseline robustly to the rows at rest and estimate the error scale.
 
     Without a trend the median of each column, else iterated weighted least squares
-    with weights that first bend (Huber) and then end (Tukey).
+    with weights that first bend (Huber) and then end (Tukey); the trend at each row is
+    then told from the rows apart from it.
 
     Parameters
     ----------
@@ -129,6 +144,8 @@ def fit_background(samples: Samples, resting: Booleans, basis: Floats) -> Backgr
     basis : ndarray of float, shape (n_rows, n_terms)
         Terms of the trend; one constant term for none, no term when the baseline is
         known and already taken off.
+    near : csr_array, shape (n_rows, n_rows), optional
+        Which rows are near each other; needed for a trend alone.
 
     Returns
     -------
@@ -140,18 +157,27 @@ def fit_background(samples: Samples, resting: Booleans, basis: Floats) -> Backgr
     .. [1] Huber, Ann. Math. Stat. 35, 73-101 (1964).
     .. [2] Beaton and Tukey, Technometrics 16, 147-185 (1974).
     """
+    error = np.broadcast_to(samples.error, resting.shape)
     if not basis.shape[1]:
         nothing = np.zeros_like(samples.value)
-        return Background(value=nothing, scale=_scale(samples, resting, nothing))
+        scale = _scale(samples, resting, nothing)
+        return Background(value=nothing, scale=scale, error=error)
     centre = masked_median(samples.value, _use(samples, resting))
     value = np.broadcast_to(centre[:, None, :], samples.value.shape)
-    if basis.shape[1] > 1:
-        value = _iterate(samples, resting, basis, value)
-    scale = _scale(samples, resting, value)
-    if basis.shape[1] > 1:
-        m = resting.sum(1)
-        scale = scale * np.sqrt(m / np.maximum(m - basis.shape[1], 1))
-    return Background(value=value, scale=scale)
+    if basis.shape[1] == 1:
+        scale = _scale(samples, resting, value)
+        return Background(value=value, scale=scale, error=error)
+    if near is None:
+        raise ValueError("near is None; a trend needs it")
+    weight, value = _iterate(samples, resting, basis, value)
+    m = resting.sum(1)
+    shrink = np.sqrt(m / np.maximum(m - basis.shape[1], 1))
+    told = predict_apart(samples.value, weight, basis, near=near, seen=samples.seen)
+    return Background(
+        value=told.value,
+        scale=_scale(samples, resting, value) * shrink,
+        error=np.sqrt(error**2 + told.variance),
+    )
 
 
 def _use(samples: Samples, resting: Booleans) -> Booleans:
@@ -187,7 +213,8 @@ def masked_median(values: Floats, use: Booleans) -> Floats:
 
 def _iterate(
     samples: Samples, resting: Booleans, basis: Floats, value: Floats
-) -> Floats:
+) -> tuple[Floats, Floats]:
+    """Return the weights of the last step and the trend that they gave."""
     freedom = samples.freedom()
     middle = np.sqrt(chi2.ppf(0.5, freedom))
     far = np.sqrt(chi2.ppf(0.99, freedom))
@@ -199,8 +226,9 @@ def _iterate(
             damp = np.minimum(1.0, HUBER_BEND / np.maximum(ratio, 1e-12))
         else:
             damp = np.maximum(0.0, 1 - (ratio / TUKEY_END) ** 2) ** 2
-        value = basis @ _solve(samples, damp * resting / samples.error**2, basis)
-    return value
+        weight = damp * resting / samples.error**2
+        value = basis @ _solve(samples, weight, basis)
+    return weight, value
 
 
 def _lengths(samples: Samples, value: Floats) -> Floats:

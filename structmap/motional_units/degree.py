@@ -1,9 +1,11 @@
 """The search for one degree of the trend, and the choice between degrees."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
+from scipy.sparse import csr_array
 
+from structmap.motional_units.apart import find_near
 from structmap.motional_units.background import Background, Samples, fit_background
 from structmap.motional_units.field import (
     Booleans,
@@ -22,6 +24,9 @@ FEWEST_RESTING, RESTING_SHARE = 20, 0.4
 # A site outside all units cannot cost more than this chance, so that single movers
 # do not drive the choice of the trend.
 STRAY_CHANCE = 1e-4
+# Contacts within which sites do not tell each other's trend. Separate numbers, which
+# pay a smaller price for each term than the points of a profile, keep further apart.
+STEPS_PROFILE, STEPS_NUMBERS = 1, 2
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -57,12 +62,15 @@ class ChosenFits:
         Error scales.
     label : ndarray of int, shape (n_samples, n_rows)
         Units; -1 for none; numbers differ between samples.
+    error : ndarray of float, shape (n_samples, n_rows)
+        Errors of the rows with those of their baselines, not yet scaled.
     """
 
     degree: Integers
     background: Floats
     scale: Floats
     label: Integers
+    error: Floats
 
 
 def search_samples(
@@ -94,8 +102,10 @@ def search_samples(
         One a sample.
     """
     tiled = tile_links(links, len(samples.value))
+    near = find_near(links, STEPS_PROFILE if samples.is_profile else STEPS_NUMBERS)
     fits = [
-        _search_degree(samples, tiled, basis, (rounds, direction)) for basis in bases
+        _search_degree(samples, tiled, basis, near=near, how=(rounds, direction))
+        for basis in bases
     ]
     common = np.min([fit.background.scale for fit in fits], axis=0)
     worth = np.stack([_judge_degree(samples, tiled, fit, common) for fit in fits])
@@ -106,18 +116,24 @@ def search_samples(
         background=np.stack([fit.background.value for fit in fits])[best, pick],
         scale=np.stack([fit.background.scale for fit in fits])[best, pick],
         label=np.stack([fit.label for fit in fits])[best, pick],
+        error=np.stack([fit.background.error for fit in fits])[best, pick],
     )
 
 
 def _search_degree(
-    samples: Samples, tiled: Links, basis: Floats, how: tuple[int, int]
+    samples: Samples,
+    tiled: Links,
+    basis: Floats,
+    *,
+    near: csr_array,
+    how: tuple[int, int],
 ) -> DegreeFit:
     rounds, direction = how
     shape = samples.value.shape[:2]
     label = np.full(shape, -1, np.int64)
     for number in range(rounds):
-        background = fit_background(samples, choose_resting(label), basis)
-        field = flat_field(samples, background.value, background.scale, direction)
+        background = fit_background(samples, choose_resting(label), basis, near=near)
+        field = flat_field(samples, background, direction=direction)
         new = find_groups(field, tiled).label.reshape(shape)
         done = number > 0 and np.array_equal(new, label)
         label = new
@@ -146,19 +162,15 @@ def choose_resting(label: Integers) -> Booleans:
     return out
 
 
-def flat_field(
-    samples: Samples, background: Floats, scale: Floats, direction: int
-) -> Field:
+def flat_field(samples: Samples, background: Background, *, direction: int) -> Field:
     """Return the deviations of all samples laid side by side.
 
     Parameters
     ----------
     samples : Samples
         Values.
-    background : ndarray of float, shape (n_samples, n_rows, n_columns)
-        Baselines.
-    scale : ndarray of float, shape (n_samples,)
-        Error scales.
+    background : Background
+        Baselines, error scales and errors.
     direction : int
         Which way units may deviate.
 
@@ -169,11 +181,11 @@ def flat_field(
     """
     n_samples, n_rows, n_columns = samples.value.shape
     # A scale of 0 (all values equal) would divide by 0; such a field has no deviations.
-    safe = np.where(scale > 0, scale, 1.0)
+    safe = np.where(background.scale > 0, background.scale, 1.0)
     seen = None if samples.seen is None else np.tile(samples.seen, (n_samples, 1))
     return make_field(
-        (samples.value - background).reshape(n_samples * n_rows, n_columns),
-        ((safe[:, None] * samples.error) ** 2).ravel(),
+        (samples.value - background.value).reshape(n_samples * n_rows, n_columns),
+        ((safe[:, None] * background.error) ** 2).ravel(),
         seen=seen,
         lost=samples.lost,
         direction=direction,
@@ -185,12 +197,26 @@ def _judge_degree(
 ) -> Floats:
     """Return the log-likelihood on a common error scale less the price of terms."""
     n_samples, n_rows = fit.label.shape
-    field = flat_field(samples, fit.background.value, common, 0)
+    field = flat_field(samples, replace(fit.background, scale=common), direction=0)
     label = fit.label.ravel()
     limits = chi2_limits(1 - STRAY_CHANCE, field.value.shape[1])[field.freedom]
     stray = np.where(label < 0, np.minimum(field.power, limits), field.power)
     group = weigh_groups(field, tiled, label)
     energy = np.bincount(group.first_row // n_rows, group.energy, minlength=n_samples)
     price = max(fit.n_terms - 1, 0) * int(field.freedom.max(initial=1))
-    out: Floats = energy - 0.5 * stray.reshape(n_samples, n_rows).sum(1) - price
+    unsure = _price_of_prediction(samples, fit.background)
+    out: Floats = (
+        energy - 0.5 * stray.reshape(n_samples, n_rows).sum(1) - price - unsure
+    )
+    return out
+
+
+def _price_of_prediction(samples: Samples, background: Background) -> Floats:
+    """Return what wider errors of predicted baselines cost in log-likelihood.
+
+    The points of a profile share one field over the fold, so it is charged once.
+    """
+    wider = np.log(background.error / samples.error)
+    freedom = 1 if samples.is_profile else samples.freedom()
+    out: Floats = (freedom * wider).sum(1)
     return out

@@ -16,6 +16,7 @@ from structmap.behaviour import (
 from structmap.contacts import SiteGraph
 from structmap.motional_units.background import (
     MEDIAN_TO_DEVIATION,
+    Background,
     Samples,
     trend_bases,
 )
@@ -72,6 +73,8 @@ class UnitSearch:
         Terms of the trends tried.
     direction : int
         1 or -1 when only units that deviate up or down count, else 0.
+    scale : float
+        Error scale of `samples`.
     """
 
     behaviour: Behaviour
@@ -87,6 +90,7 @@ class UnitSearch:
     samples: Samples
     bases: tuple[Floats, ...]
     direction: int
+    scale: float
 
 
 def find_motional_units(
@@ -134,7 +138,8 @@ def find_motional_units(
     links = link_rows(measurements.site, graph)
     bases = _choose_bases(centres[measurements.site], known is not None)
     chosen = _search(samples, links, bases, SIGN[direction])
-    field = flat_field(samples, chosen.background, chosen.scale, SIGN[direction])
+    told = Background(value=chosen.background, scale=chosen.scale, error=chosen.error)
+    field = flat_field(samples, told, direction=SIGN[direction])
     label, energy = _sort_units(field, links, chosen.label[0])
     background = chosen.background[0] * scales + (0.0 if known is None else known)
     rows = tuple(np.flatnonzero(label == unit) for unit in range(len(energy)))
@@ -144,7 +149,7 @@ def find_motional_units(
             background=background,
             degree=int(chosen.degree[0]),
             field=field,
-            error_scale=float(chosen.scale[0]),
+            error_scale=float(chosen.scale[0] * np.median(own_scatter(measurements))),
             edge_filter_unit=find_edge_filter_units(samples, links, bases[0]),
         ),
         site=measurements.site,
@@ -159,6 +164,7 @@ def find_motional_units(
         samples=samples,
         bases=bases,
         direction=SIGN[direction],
+        scale=float(chosen.scale[0]),
     )
 
 
@@ -184,16 +190,17 @@ def _scale_columns(
     """Divide each column by its median error, so that columns can be compared."""
     value, error = measurements.value, measurements.error
     seen = np.isfinite(value)
-    scales = measurements_scale(measurements)
+    scales = measurements_scale(measurements) * own_scatter(measurements)
     if known is not None:
         value = value - known
-    relative = np.where(seen, error / scales, 0.0)
+    relative = np.where(seen, error / measurements_scale(measurements), 0.0)
     mean_square = (relative**2).sum(1) / np.maximum(seen.sum(1), 1)
     samples = Samples(
         value=np.where(seen, value / scales, 0.0)[None],
         error=np.sqrt(mean_square),
         seen=None if seen.all() else seen,
         lost=measurements.n_baselines,
+        is_profile=measurements.is_profile,
     )
     return samples, scales
 
@@ -239,6 +246,7 @@ def _search(
         background=samples.value,
         scale=np.zeros(1),
         label=np.full((1, links.n_rows), -1, np.int64),
+        error=samples.error[None],
     )
 
 
@@ -298,7 +306,9 @@ def _trend_share(measurements: Measurements, background: Floats, degree: int) ->
         return 0.0
     rest = measurements.value - background
     spread = np.nanmedian(np.abs(rest), axis=0) * MEDIAN_TO_DEVIATION
-    trend = float(np.mean(background.var(0) / measurements_scale(measurements) ** 2))
+    about = np.abs(background - np.median(background, axis=0))
+    bent = np.median(about, axis=0) * MEDIAN_TO_DEVIATION
+    trend = float(np.mean((bent / measurements_scale(measurements)) ** 2))
     noise = float(np.mean((spread / measurements_scale(measurements)) ** 2))
     return trend / (trend + noise)
 
@@ -319,6 +329,34 @@ def measurements_scale(measurements: Measurements) -> Floats:
     if not len(measurements.site):
         return np.ones(len(measurements.column))
     return np.nanmedian(measurements.error, axis=0)
+
+
+def own_scatter(measurements: Measurements) -> Floats:
+    """Return how many of its errors each separate quantity scatters over the sites.
+
+    Quantities of one table (relaxation rates, NOE) differ in how well their errors
+    describe the quiet sites; each gets a scale of its own, so that one with errors
+    stated too small does not make every site move.
+
+    Parameters
+    ----------
+    measurements : Measurements
+        What is compared.
+
+    Returns
+    -------
+    ndarray of float, shape (n_columns,)
+        Median distance from the median in median errors, as a standard deviation; 1 for
+        the points of a profile, for a single quantity, and where over half of the
+        values are equal.
+    """
+    value = measurements.value
+    if measurements.is_profile or value.shape[1] < 2 or not len(value):
+        return np.ones(value.shape[1])
+    off = np.abs(value - np.nanmedian(value, axis=0))
+    size = MEDIAN_TO_DEVIATION * np.nanmedian(off, axis=0)
+    out: Floats = np.where(size > 0, size / measurements_scale(measurements), 1.0)
+    return out
 
 
 def find_contrast(field: Field, links: Links, label: Integers) -> Floats:
