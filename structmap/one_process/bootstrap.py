@@ -107,17 +107,35 @@ class Replicates:
 
     @property
     def p_parametric(self) -> float:
-        """Chance under the stated errors."""
+        """Return chance under the stated errors.
+
+        Returns
+        -------
+        float
+            Chance under the stated errors.
+        """
         return _chance(self.statistic, self.parametric)
 
     @property
     def p_wild(self) -> float:
-        """Chance under errors like the residuals; NaN where there are none."""
+        """Return chance under errors like the residuals; NaN where there are none.
+
+        Returns
+        -------
+        float
+            Chance under errors like the residuals; NaN where there are none.
+        """
         return _chance(self.statistic, self.wild)
 
     @property
     def critical(self) -> float:
-        """The larger of the two 95 % points."""
+        """Return the larger of the two 95 % points.
+
+        Returns
+        -------
+        float
+            The larger of the two 95 % points.
+        """
         points = [
             float(np.quantile(part, 0.95))
             for part in (self.parametric, self.wild)

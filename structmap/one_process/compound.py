@@ -65,12 +65,24 @@ class CompoundSolver:
 
     @property
     def site_profile(self) -> FloatArray:
-        """Misfit of each site alone at the nodes, shape (n_sites, n_nodes)."""
+        """Return misfit of each site alone at the nodes, shape (n_sites, n_nodes).
+
+        Returns
+        -------
+        ndarray of float
+            Misfit of each site alone at the nodes, shape (n_sites, n_nodes).
+        """
         return self.site_nodes.chi2.reshape(len(self.profiles.name), len(self.nodes))
 
     @property
     def shared_profile(self) -> FloatArray:
-        """Misfit of all sites at the nodes, shape (n_nodes,)."""
+        """Return misfit of all sites at the nodes, shape (n_nodes,).
+
+        Returns
+        -------
+        ndarray of float
+            Misfit of all sites at the nodes, shape (n_nodes,).
+        """
         return self.shared_nodes.chi2
 
     def minima(self, values: FloatArray, start: State) -> tuple[FloatArray, FloatArray]:
@@ -85,8 +97,10 @@ class CompoundSolver:
 
         Returns
         -------
-        shared, free : ndarray, shape (n_sets,)
-            With one value for all sites, and summed over the sites alone.
+        shared : ndarray, shape (n_sets,)
+            With one value for all sites.
+        free : ndarray, shape (n_sets,)
+            Summed over the sites alone.
         """
         n_sets, n_sites, n_points = values.shape
         size = max(1, _CHUNK // (n_sites * n_points))
@@ -129,11 +143,23 @@ class CompoundSolver:
         return shared, np.minimum(free, shared)
 
     def fit_shared(self) -> tuple[float, float]:
-        """Return position and misfit of the best shared value."""
+        """Return position and misfit of the best shared value.
+
+        Returns
+        -------
+        tuple[float, float]
+            Position and misfit of the best shared value.
+        """
         return float(self.best.shared[0, 0]), float(self.best.chi2[0])
 
     def fit_sites(self) -> tuple[FloatArray, FloatArray]:
-        """Return positions and misfits of the sites alone, shape (n_sites,) each."""
+        """Return positions and misfits of the sites alone, shape (n_sites,) each.
+
+        Returns
+        -------
+        tuple[FloatArray, FloatArray]
+            Positions and misfits of the sites alone, shape (n_sites,) each.
+        """
         return self.best_sites.shared[:, 0], self.best_sites.chi2
 
     def interval(self, best: float, limit: float) -> tuple[float, float]:
@@ -148,8 +174,10 @@ class CompoundSolver:
 
         Returns
         -------
-        low, high : float
-            Positions.
+        low : float
+            Position below the minimum.
+        high : float
+            Position above it.
         """
         found = find_intervals(
             lambda at: self._at(at).chi2,

@@ -33,13 +33,30 @@ class Couplings:
     shift_anisotropy_ppm: float = -172.0
 
     def dipole_radian_per_second(self) -> float:
-        """Return the dipolar coupling constant d, negative for 15N-1H."""
+        """Return the dipolar coupling constant d, negative for 15N-1H.
+
+        Returns
+        -------
+        float
+            The dipolar coupling constant d, negative for 15N-1H.
+        """
         distance = self.distance_angstrom * 1e-10
         gammas = PROTON_GYROMAGNETIC * NITROGEN_GYROMAGNETIC
         return MAGNETIC_CONSTANT * PLANCK_REDUCED * gammas / distance**3
 
     def shift_radian_per_second(self, proton_frequency_megahertz: float) -> float:
-        """Return c, the anisotropy of the 15N shift as a frequency over root 3."""
+        """Return c, the anisotropy of the 15N shift as a frequency over root 3.
+
+        Parameters
+        ----------
+        proton_frequency_megahertz : float
+            Larmor frequency of the protons in MHz.
+
+        Returns
+        -------
+        float
+            C, the anisotropy of the 15N shift as a frequency over root 3.
+        """
         nitrogen = larmor_radian_per_second(proton_frequency_megahertz)[1]
         return float(nitrogen * self.shift_anisotropy_ppm * 1e-6 / np.sqrt(3))
 
@@ -54,7 +71,9 @@ def larmor_radian_per_second(proton_frequency_megahertz: float) -> tuple[float, 
 
     Returns
     -------
-    proton, nitrogen : float
+    proton : float
+        In rad/s.
+    nitrogen : float
         In rad/s.
     """
     proton = 2 * np.pi * proton_frequency_megahertz * 1e6

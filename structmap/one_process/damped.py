@@ -47,7 +47,18 @@ class Projected:
     along: NDArray[np.float64]
 
     def keep(self, which: NDArray[np.bool_]) -> "Projected":
-        """Return the same for some of the problems."""
+        """Return the same for some of the problems.
+
+        Parameters
+        ----------
+        which : ndarray of bool
+            The problems to keep.
+
+        Returns
+        -------
+        Projected
+            The same for some of the problems.
+        """
         return Projected(
             residual=self.residual[which],
             amplitude=self.amplitude[which],
@@ -259,7 +270,22 @@ def _choose_projected(
 
 
 def project(model: Model, problems: Problems, kernel: FloatArray) -> Projected:
-    """Solve baselines and amplitudes of all sites of all problems."""
+    """Return solve baselines and amplitudes of all sites of all problems.
+
+    Parameters
+    ----------
+    model : Model
+        Says which linear parameters there are.
+    problems : Problems
+        Values and weights.
+    kernel : ndarray, shape (n_problems, n_sites, n_points)
+        The model's function.
+
+    Returns
+    -------
+    Projected
+        Solve baselines and amplitudes of all sites of all problems.
+    """
     root, value = problems.root_weight, problems.value
     weighted, data = kernel * root, value * root
     constant = np.zeros_like(data)
@@ -303,7 +329,24 @@ def _along(vectors: FloatArray, unit: FloatArray) -> FloatArray:
 def evaluate(
     model: Model, x: FloatArray, shared: FloatArray, local: FloatArray
 ) -> FloatArray:
-    """Return the function, shape (n_problems, n_sites, n_points)."""
+    """Return the function, shape (n_problems, n_sites, n_points).
+
+    Parameters
+    ----------
+    model : Model
+        Its function is taken.
+    x : ndarray, shape (n_points,)
+        In the base unit.
+    shared : ndarray, shape (n_problems, 2)
+        Positions of shared parameter and companion.
+    local : ndarray, shape (n_problems, n_sites)
+        Positions of the parameters of the sites.
+
+    Returns
+    -------
+    ndarray of float
+        The function, shape (n_problems, n_sites, n_points).
+    """
     arguments = [from_axis(shared[:, 0], model.shared)[:, None, None]]
     if model.companion is not None:
         arguments.append(from_axis(shared[:, 1], model.companion)[:, None, None])

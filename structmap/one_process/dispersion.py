@@ -255,7 +255,7 @@ def motion_kernel(
     Returns
     -------
     ndarray of float
-        g in rate = baseline + amplitude * g, in s^-1.
+        The function g in rate = baseline + amplitude * g, in s^-1.
 
     Notes
     -----
@@ -284,8 +284,10 @@ def interaction_strengths(
 
     Returns
     -------
-    dipole, shift : float
-        d^2 / 2 and 2 c^2 / 3 in rad^2 s^-2; their ratio is the ratio of the shares.
+    dipole : float
+        The weight d^2 / 2 in rad^2 s^-2.
+    shift : float
+        The weight 2 c^2 / 3; the ratio of the weights is that of the shares.
     """
     pair = couplings or Couplings()
     shift = pair.shift_radian_per_second(experiment.proton_frequency_megahertz)

@@ -41,7 +41,13 @@ class TwoSites:
 
     @property
     def r2_of_b(self) -> float:
-        """Transverse rate of state B."""
+        """Return transverse rate of state B.
+
+        Returns
+        -------
+        float
+            Transverse rate of state B.
+        """
         return self.r2 if self.r2_minor is None else self.r2_minor
 
 
@@ -245,7 +251,7 @@ def exchange_part_r1rho(
     spin_lock_hertz : array_like
         Spin-lock fields in Hz.
     exchange_rate, major_population, shift_difference : array_like
-        k_ex in s^-1, p_A, and the shift difference in rad/s; all broadcast.
+        In s^-1, as the population p_A, and in rad/s; all broadcast.
     offset_hertz : float, optional
         Distance of the population-averaged resonance from the carrier in Hz.
 

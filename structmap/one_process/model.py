@@ -126,15 +126,33 @@ class Model:
 
     @property
     def n_linear(self) -> int:
-        """Number of linear parameters of a site."""
+        """Return number of linear parameters of a site.
+
+        Returns
+        -------
+        int
+            Number of linear parameters of a site.
+        """
         return (self.amplitude != "unit") + (self.baseline != "none")
 
     @property
     def n_own(self) -> int:
-        """Number of parameters that each site has of its own."""
+        """Return number of parameters that each site has of its own.
+
+        Returns
+        -------
+        int
+            Number of parameters that each site has of its own.
+        """
         return self.n_linear + (self.local is not None)
 
     @property
     def n_shared(self) -> int:
-        """Number of parameters that a group may share."""
+        """Return number of parameters that a group may share.
+
+        Returns
+        -------
+        int
+            Number of parameters that a group may share.
+        """
         return 1 + (self.companion is not None)

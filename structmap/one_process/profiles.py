@@ -43,19 +43,37 @@ class Profiles:
 
     @property
     def present(self) -> NDArray[np.bool_]:
-        """Which points a site has, shape (n_sites, n_points)."""
+        """Return which points a site has, shape (n_sites, n_points).
+
+        Returns
+        -------
+        ndarray of bool
+            Which points a site has, shape (n_sites, n_points).
+        """
         return np.isfinite(self.value)
 
     @property
     def root_weight(self) -> FloatArray:
-        """One over the error, 0 where missing, shape (n_sites, n_points)."""
+        """Return one over the error, 0 where missing, shape (n_sites, n_points).
+
+        Returns
+        -------
+        ndarray of float
+            One over the error, 0 where missing, shape (n_sites, n_points).
+        """
         out = np.zeros(self.value.shape)
         np.divide(1.0, self.error, out=out, where=self.present)
         return out
 
     @property
     def filled(self) -> FloatArray:
-        """The values with 0 where missing, shape (n_sites, n_points)."""
+        """Return the values with 0 where missing, shape (n_sites, n_points).
+
+        Returns
+        -------
+        ndarray of float
+            The values with 0 where missing, shape (n_sites, n_points).
+        """
         return np.where(self.present, self.value, 0.0)
 
     def take(self, sites: ArrayLike) -> "Profiles":
@@ -241,26 +259,50 @@ class GroupFit:
 
     @property
     def freedom_shared(self) -> int:
-        """Degrees of freedom of the shared fit."""
+        """Return degrees of freedom of the shared fit.
+
+        Returns
+        -------
+        int
+            Degrees of freedom of the shared fit.
+        """
         model, n_sites = self.model, len(self.profiles.name)
         points = int(self.profiles.present.sum())
         return points - model.n_own * n_sites - model.n_shared
 
     @property
     def freedom_free(self) -> int:
-        """Degrees of freedom of the fits of the sites alone."""
+        """Return degrees of freedom of the fits of the sites alone.
+
+        Returns
+        -------
+        int
+            Degrees of freedom of the fits of the sites alone.
+        """
         model, n_sites = self.model, len(self.profiles.name)
         points = int(self.profiles.present.sum())
         return points - (model.n_own + model.n_shared) * n_sites
 
     @property
     def freedom_between(self) -> int:
-        """Parameters that the sites alone have more than the shared fit."""
+        """Return parameters that the sites alone have more than the shared fit.
+
+        Returns
+        -------
+        int
+            Parameters that the sites alone have more than the shared fit.
+        """
         return self.model.n_shared * (len(self.profiles.name) - 1)
 
     @property
     def f_statistic(self) -> float:
-        """Growth of the misfit by sharing over the scatter; NaN without freedom."""
+        """Return growth of the misfit by sharing over the scatter; NaN without freedom.
+
+        Returns
+        -------
+        float
+            Growth of the misfit by sharing over the scatter; NaN without freedom.
+        """
         if self.freedom_free < 1 or self.freedom_between < 1 or self.chi2_free <= 0:
             return float("nan")
         growth = max(self.chi2_shared - self.chi2_free, 0.0) / self.freedom_between
@@ -268,5 +310,11 @@ class GroupFit:
 
     @property
     def error_scale(self) -> float:
-        """Scatter about the fits of the sites alone, in squared stated errors."""
+        """Return scatter about the fits of the sites alone, in squared stated errors.
+
+        Returns
+        -------
+        float
+            Scatter about the fits of the sites alone, in squared stated errors.
+        """
         return self.chi2_free / self.freedom_free if self.freedom_free > 0 else np.nan

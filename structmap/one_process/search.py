@@ -97,8 +97,10 @@ def refine_minima(
 
     Returns
     -------
-    position, value : ndarray, shape (k,)
+    position : ndarray, shape (k,)
         On the first and last node that node itself.
+    value : ndarray, shape (k,)
+        The functions there.
     """
     row = np.arange(len(table))
     lowest = table.argmin(axis=1)

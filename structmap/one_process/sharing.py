@@ -141,13 +141,25 @@ class OneProcess:
 
     @property
     def p_distinct(self) -> float:
-        """The larger of the two chances: both must be small for `distinct`."""
+        """Return the larger of the two chances: both must be small for `distinct`.
+
+        Returns
+        -------
+        float
+            The larger of the two chances: both must be small for `distinct`.
+        """
         chances = [p for p in (self.p_parametric, self.p_wild) if np.isfinite(p)]
         return max(chances, default=float("nan"))
 
     @property
     def detectable_ratio(self) -> float:
-        """Smallest ratio between two halves that the test sees; NaN unknown."""
+        """Return smallest ratio between two halves that the test sees; NaN unknown.
+
+        Returns
+        -------
+        float
+            Smallest ratio between two halves that the test sees; NaN unknown.
+        """
         return self.detectable.split if self.detectable else float("nan")
 
 

@@ -75,7 +75,13 @@ class SimpleSolver:
 
     @property
     def shared_profile(self) -> FloatArray:
-        """Misfit of all sites at the nodes, shape (n_nodes,)."""
+        """Return misfit of all sites at the nodes, shape (n_nodes,).
+
+        Returns
+        -------
+        ndarray of float
+            Misfit of all sites at the nodes, shape (n_nodes,).
+        """
         return np.asarray(self.site_profile.sum(axis=0))
 
     def minima(self, values: FloatArray, start: State) -> tuple[FloatArray, FloatArray]:
@@ -90,8 +96,10 @@ class SimpleSolver:
 
         Returns
         -------
-        shared, free : ndarray, shape (n_sets,)
-            With one value for all sites, and summed over the sites alone.
+        shared : ndarray, shape (n_sets,)
+            With one value for all sites.
+        free : ndarray, shape (n_sets,)
+            Summed over the sites alone.
         """
         del start
         n_sites, n_nodes = self.site_profile.shape
@@ -104,13 +112,25 @@ class SimpleSolver:
         return np.concatenate(shared), np.concatenate(free)
 
     def fit_shared(self) -> tuple[float, float]:
-        """Return position and misfit of the best shared value."""
+        """Return position and misfit of the best shared value.
+
+        Returns
+        -------
+        tuple[float, float]
+            Position and misfit of the best shared value.
+        """
         table = self.shared_profile[None]
         position, chi2 = refine_minima(self.shared_misfits, self.nodes, table)
         return float(position[0]), float(chi2[0])
 
     def fit_sites(self) -> tuple[FloatArray, FloatArray]:
-        """Return positions and misfits of the sites alone, shape (n_sites,) each."""
+        """Return positions and misfits of the sites alone, shape (n_sites,) each.
+
+        Returns
+        -------
+        tuple[FloatArray, FloatArray]
+            Positions and misfits of the sites alone, shape (n_sites,) each.
+        """
         return refine_minima(self.site_misfits, self.nodes, self.site_profile)
 
     def interval(self, best: float, limit: float) -> tuple[float, float]:
@@ -125,8 +145,10 @@ class SimpleSolver:
 
         Returns
         -------
-        low, high : float
-            Positions.
+        low : float
+            Position below the minimum.
+        high : float
+            Position above it.
         """
         found = find_intervals(
             self.shared_misfits,
