@@ -276,3 +276,14 @@ def test_an_ensemble_is_told_from_its_first_model(chemistry_of):
     assert structure.n_models > 1
     assert (structure.model_of_atom[found.atom_1] == 0).all()
     assert len(found.contacts_of("disulfide")) > 0
+
+
+def test_a_disulfide_is_found_across_the_lattice(chemistry_of):
+    # The fragment of 4HHH has SG atoms of an image 2.37 Å away.
+    structure, contacts, found = chemistry_of("4hhh_frag.pdb")
+    index = found.contacts_of("disulfide")
+    assert contacts.kind[index].tolist() == [KINDS.index("lattice")]
+    tag = (found.kind == CHEMISTRY_KINDS.index("disulfide")).argmax()
+    assert found.distance_angstrom[tag] == pytest.approx(2.37, abs=0.01)
+    assert structure.atom_name[found.atom_1[tag]] == "SG"
+    assert len(found.contacts_of("clash")) == 0
