@@ -89,10 +89,13 @@ def test_hexagonal_and_rhombohedral_axes_are_one_lattice():
 
 
 def test_two_cells_of_centred_monoclinic():
-    """C-centred and I-centred cells of one lattice: a' = -a - c, c' = a (C to I)."""
+    """C- and I-centred cells of one lattice, a' = a + c and c' = -c.
+
+    (a + b) / 2 = (a' + b + c') / 2, so the point that centres the face centres the body.
+    """
     a, b, c, beta = 50.35, 24.78, 34.75, 101.7
     axes = np.array(gemmi.UnitCell(a, b, c, 90, beta, 90).orth.mat.tolist())
-    new = np.column_stack([-axes[:, 0] - axes[:, 2], axes[:, 1], axes[:, 0]])
+    new = np.column_stack([axes[:, 0] + axes[:, 2], axes[:, 1], -axes[:, 2]])
     length = np.linalg.norm(new, axis=0)
     angle = np.degrees(np.arccos(new[:, 0] @ new[:, 2] / length[0] / length[2]))
     cell = (*length, 90.0, angle, 90.0)
