@@ -6,7 +6,13 @@ from scipy.stats import binom
 
 from structmap.motional_units import find_motional_units
 from structmap.motional_units.field import make_links
-from structmap.significance import Effort, choose_verdict, judge_units
+from structmap.significance import (
+    Effort,
+    choose_verdict,
+    cutoffs_to_vary,
+    judge_units,
+    list_cautions,
+)
 from structmap.significance.autocorrelation import (
     adjacency,
     getis_ord_star,
@@ -301,3 +307,47 @@ def test_verdict_follows_its_rule(changed, verdict):
         "contrast": 0.92,
     }
     assert choose_verdict(**numbers | changed) == verdict
+
+
+# --- cautions -------------------------------------------------------------------------
+
+
+def cautions(value, n=120, **given):
+    graph, centres = ring_of_sites(n)
+    data = measurements(value, **given)
+    found = find_motional_units(data, graph, centres)
+    evidence = judge_units(
+        found,
+        (graph,),
+        rng=np.random.default_rng(1),
+        effort=Effort(most_permutations=99, repeats=4),
+    )
+    return " ".join(list_cautions(found, data, evidence))
+
+
+def test_errors_far_from_the_scatter_are_told():
+    value = quiet_with_unit()
+    assert "stated too small" in cautions(value, error=np.full_like(value, 0.3))
+    assert "stated too large" in cautions(value, error=np.full_like(value, 3.0))
+    assert cautions(value, error=np.ones_like(value)) == ""
+    assert "No errors were given" in cautions(value)
+
+
+def test_many_movers_and_few_sites_are_told():
+    value = np.random.default_rng(2).normal(size=(120, 1))
+    value[::3] += 15
+    value[1::9] += 15
+    assert "move or are in units" in cautions(value, error=np.ones_like(value))
+    few = quiet_with_unit(40)
+    assert "Only 40 sites" in cautions(few, 40, error=np.ones_like(few))
+
+
+def test_data_that_tell_nothing_give_their_reason_alone():
+    value = np.full((120, 1), 3.0)
+    text = cautions(value, error=np.ones_like(value))
+    assert text == "No unit can be told: all values are equal."
+
+
+def test_cutoffs_vary_round_the_chosen_one():
+    assert cutoffs_to_vary(4.5) == (4.0, 4.5, 5.0, 6.0)
+    assert cutoffs_to_vary(7.5, ca_only=True) == (6.5, 7.5, 8.0, 9.0)
