@@ -20,11 +20,11 @@ SETTINGS = [
 REACH = 4.5
 CELLS = {
     gemmi.CrystalSystem.Triclinic: (9.3, 11.2, 13.1, 82.0, 75.0, 68.0),
-    gemmi.CrystalSystem.Orthorhombic: (9.3, 11.2, 13.1, 90.0, 90.0, 90.0),
-    gemmi.CrystalSystem.Tetragonal: (10.3, 10.3, 13.1, 90.0, 90.0, 90.0),
-    gemmi.CrystalSystem.Trigonal: (11.2, 11.2, 14.3, 90.0, 90.0, 120.0),
-    gemmi.CrystalSystem.Hexagonal: (11.2, 11.2, 14.3, 90.0, 90.0, 120.0),
-    gemmi.CrystalSystem.Cubic: (14.3, 14.3, 14.3, 90.0, 90.0, 90.0),
+    gemmi.CrystalSystem.Orthorhombic: (11.3, 13.2, 15.1, 90.0, 90.0, 90.0),
+    gemmi.CrystalSystem.Tetragonal: (12.3, 12.3, 15.1, 90.0, 90.0, 90.0),
+    gemmi.CrystalSystem.Trigonal: (13.2, 13.2, 16.3, 90.0, 90.0, 120.0),
+    gemmi.CrystalSystem.Hexagonal: (13.2, 13.2, 16.3, 90.0, 90.0, 120.0),
+    gemmi.CrystalSystem.Cubic: (22.3, 22.3, 22.3, 90.0, 90.0, 90.0),
 }
 
 

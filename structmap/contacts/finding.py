@@ -165,63 +165,55 @@ def _search(
     images: Sequence[_Image],
     progress: Progress | None,
 ) -> _Found:
-    """Search the molecule itself and one image after the other."""
-    names = sorted(
-        {IDENTITY}.union(*({image.name, image.inverse_name} for image in images))
-    )
-    rank = {name: index for index, name in enumerate(names)}
-    molecules = _molecules(structure, taken, reach_angstrom)
-    own = [molecule.own_pairs() if molecule else no_pairs() for molecule in molecules]
-    pairs, share = _over_models(own)
-    parts, shares = [pairs], [share]
-    places = [np.full(len(share), rank[IDENTITY])]
-    for done, image in enumerate(images, start=1):
-        pairs, share, flipped = _search_image(structure, molecules, image)
-        parts.append(pairs)
-        shares.append(share)
-        places.append(np.where(flipped, rank[image.inverse_name], rank[image.name]))
+    """Search the molecule itself and its images, model by model."""
+    per_model = []
+    for model in range(structure.n_models):
+        per_model.append(_search_model(structure, model, taken, reach_angstrom, images))
         if progress is not None:
-            progress(done / len(images))
+            progress((model + 1) / structure.n_models)
+    pairs, share = _over_models(per_model)
+    here = [IDENTITY, *(image.name for image in images)]
+    there = [IDENTITY, *(image.inverse_name for image in images)]
+    names = sorted({*here, *there})
+    rank = {name: index for index, name in enumerate(names)}
+    forward = np.array([rank[name] for name in here])[pairs.image]
+    backward = np.array([rank[name] for name in there])[pairs.image]
+    same = pairs.first == pairs.second
+    flipped = (pairs.first > pairs.second) | (same & (backward < forward))
     return _Found(
-        pairs=join_pairs(parts),
-        share=np.concatenate(shares),
-        place=np.concatenate(places),
+        pairs=pairs.seen_from_second(flipped),
+        share=share,
+        place=np.where(flipped, backward, forward),
         names=tuple(names),
     )
 
 
-def _molecules(
-    structure: Structure, taken: NDArray[np.bool_], reach_angstrom: float
-) -> list[Molecule | None]:
-    """Return what to search of each model, None where nothing takes part."""
-    return [
-        Molecule(structure, model=model, reach_angstrom=reach_angstrom, residues=taken)
-        if polymer_atoms(structure, model, residues=taken).size
-        else None
-        for model in range(structure.n_models)
-    ]
-
-
-def _search_image(
-    structure: Structure, molecules: Sequence[Molecule | None], image: _Image
-) -> tuple[ResiduePairs, NDArray[np.float64], NDArray[np.bool_]]:
-    """Return the pairs, their share of models and which are seen from the image."""
-    per_model = []
-    for molecule in molecules:
-        if molecule is None:
-            per_model.append(no_pairs())
-            continue
-        pairs = molecule.image_pairs(image.matrix, self_inverse=image.self_inverse)
+def _search_model(
+    structure: Structure,
+    model: int,
+    taken: NDArray[np.bool_],
+    reach_angstrom: float,
+    images: Sequence[_Image],
+) -> ResiduePairs:
+    if not polymer_atoms(structure, model, residues=taken).size:
+        return no_pairs()
+    molecule = Molecule(
+        structure, model=model, reach_angstrom=reach_angstrom, residues=taken
+    )
+    own = molecule.own_pairs()
+    if not images:
+        return own
+    found = molecule.image_pairs(
+        np.array([image.matrix for image in images]),
+        self_inverse=np.array([image.self_inverse for image in images]),
+    )
+    keep = np.ones(len(found.image), dtype=np.bool_)
+    for index, image in enumerate(images, start=1):
         if image.allowed is not None:
-            copy_1 = structure.copy_of_residue[pairs.first]
-            copy_2 = structure.copy_of_residue[pairs.second]
-            pairs = pairs.at(np.flatnonzero(image.allowed[copy_1, copy_2]))
-        per_model.append(pairs)
-    pairs, share = _over_models(per_model)
-    flipped = pairs.first > pairs.second
-    if image.inverse_name < image.name:
-        flipped |= pairs.first == pairs.second
-    return pairs.seen_from_second(flipped), share, flipped
+            copy_1 = structure.copy_of_residue[found.first]
+            copy_2 = structure.copy_of_residue[found.second]
+            keep &= (found.image != index) | image.allowed[copy_1, copy_2]
+    return join_pairs([own, found.at(np.flatnonzero(keep))])
 
 
 def _over_models(
@@ -235,9 +227,9 @@ def _over_models(
     model = np.repeat(
         np.arange(len(per_model)), [len(part.first) for part in per_model]
     )
-    order = np.lexsort((pairs.distance_angstrom, pairs.second, pairs.first))
-    first, second = pairs.first[order], pairs.second[order]
-    new = (np.diff(first, prepend=-1) != 0) | (np.diff(second, prepend=-1) != 0)
+    which = np.column_stack([pairs.image, pairs.first, pairs.second])
+    order = np.lexsort((pairs.distance_angstrom, *which.T[::-1]))
+    new = np.diff(which[order], axis=0, prepend=-1).any(axis=1)
     start = np.flatnonzero(new)
     count = np.diff(start, append=len(order))
     in_first_model = np.where(model[order] == 0, pairs.n_atom_pairs[order], 0)

@@ -17,12 +17,14 @@ LONGEST_CA_STEP_ANGSTROM = 4.2  # 3.8 from CA to CA
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class ResiduePairs:
-    """Residue pairs within reach for one image, each once.
+    """Residue pairs within reach, each once an image.
 
     Attributes
     ----------
+    image : ndarray of int, shape (n,)
+        Which image the second stands in; 0 for the molecule itself.
     first, second : ndarray of int, shape (n,)
-        Residues; the second stands in the image.
+        Residues.
     distance_angstrom : ndarray of float, shape (n,)
         Shortest over allowed atom pairs.
     atom_1, atom_2 : ndarray of int, shape (n,)
@@ -30,6 +32,7 @@ class ResiduePairs:
     n_atom_pairs : ndarray of int, shape (n,)
     """
 
+    image: NDArray[np.int64]
     first: NDArray[np.int64]
     second: NDArray[np.int64]
     distance_angstrom: NDArray[np.float64]
@@ -110,6 +113,7 @@ def no_pairs() -> ResiduePairs:
     """
     nothing = np.zeros(0, dtype=np.int64)
     return ResiduePairs(
+        image=nothing,
         first=nothing,
         second=nothing,
         distance_angstrom=np.zeros(0),
@@ -125,11 +129,14 @@ class AtomPairs:
 
     Attributes
     ----------
+    image : ndarray of int, shape (n,)
+        Which image; 0 for the molecule itself.
     first, second : ndarray of int, shape (n,)
         Indices into the atoms of the molecule searched.
     distance_angstrom : ndarray of float, shape (n,)
     """
 
+    image: NDArray[np.int64]
     first: NDArray[np.int64]
     second: NDArray[np.int64]
     distance_angstrom: NDArray[np.float64]
@@ -148,6 +155,7 @@ class AtomPairs:
             The pairs.
         """
         return AtomPairs(
+            image=self.image[keep],
             first=self.first[keep],
             second=self.second[keep],
             distance_angstrom=self.distance_angstrom[keep],
@@ -232,6 +240,7 @@ class Molecule:
         spread = self.position - np.repeat(self.centre, self._count, axis=0)
         distance = np.sqrt(np.einsum("ij,ij->i", spread, spread))
         self.radius = np.maximum.reduceat(distance, self._start)
+        self._pad = (reach_angstrom + self.radius)[:, None]
         self.low, self.high = self.position.min(axis=0), self.position.max(axis=0)
 
     def own_pairs(self) -> ResiduePairs:
@@ -242,19 +251,26 @@ class Molecule:
         ResiduePairs
             With ``first < second``.
         """
-        pairs = self._tree.query_pairs(self.reach, output_type="ndarray")
-        first, second = pairs[:, 0], pairs[:, 1]
-        between = self.residue[first] != self.residue[second]
-        first, second = first[between], second[between]
-        apart = self.position[first] - self.position[second]
-        found = AtomPairs(
-            first=first,
-            second=second,
-            distance_angstrom=np.sqrt(np.einsum("ij,ij->i", apart, apart)),
-        )
+        found = self._own_atom_pairs()
+        if not self.altloc.any():
+            return self._residue_pairs(found)
         agree = self._altlocs_agree(found)
         return self._with_bonded(
             self._residue_pairs(found.where(agree)), found.where(~agree)
+        )
+
+    def _own_atom_pairs(self) -> AtomPairs:
+        pairs = self._tree.query_pairs(self.reach, output_type="ndarray")
+        pairs = pairs[self.residue[pairs[:, 0]] != self.residue[pairs[:, 1]]]
+        first, second = pairs.T
+        squared = np.zeros(len(pairs))
+        for axis in self.position.T:  # one axis at a time saves memory
+            squared += (axis[first] - axis[second]) ** 2
+        return AtomPairs(
+            image=np.zeros(len(pairs), dtype=np.int64),
+            first=first,
+            second=second,
+            distance_angstrom=np.sqrt(squared),
         )
 
     def _with_bonded(self, found: ResiduePairs, left_out: AtomPairs) -> ResiduePairs:
@@ -274,86 +290,108 @@ class Molecule:
         return join_pairs([found, extra.at(np.flatnonzero(new))])
 
     def image_pairs(
-        self, matrix: NDArray[np.float64], *, self_inverse: bool
+        self, matrices: NDArray[np.float64], *, self_inverse: NDArray[np.bool_]
     ) -> ResiduePairs:
-        """Return the pairs of the molecule with an image of it.
+        """Return the pairs of the molecule with images of it.
 
         Parameters
         ----------
-        matrix : ndarray of float, shape (4, 4)
-            Cartesian transform that makes the image.
-        self_inverse : bool
+        matrices : ndarray of float, shape (n_images, 4, 4)
+            Cartesian transforms that make the images.
+        self_inverse : ndarray of bool, shape (n_images,)
             Whether the transform is its own inverse; then each pair is found from
             both sides and kept once, with ``first <= second``.
 
         Returns
         -------
         ResiduePairs
-            Atoms that lie on a symmetry element are not in contact with themselves,
-            nor is a residue that lies on it as a whole.
+            Images are counted from 1. Atoms that lie on a symmetry element are not in
+            contact with themselves, nor is a residue that lies on it as a whole.
         """
-        found = self._atom_pairs(matrix)
-        if self_inverse:
-            found = found.where(found.first <= found.second)
-        found = found.where(self._altlocs_agree(found))
+        found = self._image_atom_pairs(matrices)
+        once = found.first <= found.second
+        found = found.where(once | ~self_inverse[found.image - 1])
+        if self.altloc.any():
+            found = found.where(self._altlocs_agree(found))
+        return self._residue_pairs(found.where(~self._on_elements(found)))
+
+    def _on_elements(self, found: AtomPairs) -> NDArray[np.bool_]:
+        """Return which pairs are of an atom or a residue that is its own image."""
         same = (found.first == found.second) & (
             found.distance_angstrom < SPECIAL_ANGSTROM
         )
         if not same.any():
-            return self._residue_pairs(found)
-        on_element = self._mostly(self.residue[found.first[same]])
-        first, second = self.residue[found.first], self.residue[found.second]
-        spurious = same | (on_element[first] & (first == second))
-        return self._residue_pairs(found.where(~spurious))
-
-    def _mostly(self, residue: NDArray[np.int64]) -> NDArray[np.bool_]:
-        hits = np.bincount(residue, minlength=self.n_residues)
+            return np.asarray(same)
+        key = found.image * self.n_residues + self.residue[found.first]
+        places, hits = np.unique(key[same], return_counts=True)
         size = np.bincount(self.residue, minlength=self.n_residues)
-        return np.asarray((2 * hits > size) & (size > 0))
+        whole = places[2 * hits > size[places % self.n_residues]]
+        own = self.residue[found.first] == self.residue[found.second]
+        return np.asarray(same | (own & np.isin(key, whole)))
 
     def _altlocs_agree(self, pairs: AtomPairs) -> NDArray[np.bool_]:
-        if not self.altloc.any():
-            return np.ones(len(pairs.first), dtype=np.bool_)
         first, second = self.altloc[pairs.first], self.altloc[pairs.second]
         return np.asarray((first == second) | (first == 0) | (second == 0))
 
-    def _atom_pairs(self, matrix: NDArray[np.float64]) -> AtomPairs:
-        turn, move = matrix[:3, :3].T, matrix[:3, 3]
-        centre = self.centre @ turn + move
-        near = _inside(centre, self.low, self.high, (self.reach + self.radius)[:, None])
-        atoms = np.flatnonzero(np.repeat(near, self._count))
-        position = self.position[atoms] @ turn + move
-        close = np.flatnonzero(self._grid.is_near(position))
-        atoms, position = atoms[close], position[close]
-        if not atoms.size:
+    def _image_atom_pairs(self, matrices: NDArray[np.float64]) -> AtomPairs:
+        parts = [self._atoms_near(matrix) for matrix in matrices]
+        counts = [len(atoms) for atoms, _ in parts]
+        if not sum(counts):
             nothing = np.zeros(0, dtype=np.int64)
             return AtomPairs(
-                first=nothing, second=nothing, distance_angstrom=np.zeros(0)
+                image=nothing,
+                first=nothing,
+                second=nothing,
+                distance_angstrom=np.zeros(0),
             )
-        image = cKDTree(position, balanced_tree=False, compact_nodes=False)
+        image = np.repeat(np.arange(1, len(parts) + 1), counts)
+        atoms = np.concatenate([atoms for atoms, _ in parts])
+        positions = np.concatenate([position for _, position in parts])
+        tree = cKDTree(positions, balanced_tree=False, compact_nodes=False)
         found = self._tree.sparse_distance_matrix(
-            image, self.reach, output_type="ndarray"
+            tree, self.reach, output_type="ndarray"
         )
         return AtomPairs(
-            first=found["i"], second=atoms[found["j"]], distance_angstrom=found["v"]
+            image=image[found["j"]],
+            first=found["i"],
+            second=atoms[found["j"]],
+            distance_angstrom=found["v"],
         )
 
+    def _atoms_near(
+        self, matrix: NDArray[np.float64]
+    ) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
+        """Return the atoms whose image may touch the molecule, and that image."""
+        turn, move = matrix[:3, :3].T, matrix[:3, 3]
+        centre = self.centre @ turn + move
+        near = _inside(centre, self.low, self.high, self._pad)
+        if not near.any():
+            return np.zeros(0, dtype=np.int64), np.zeros((0, 3))
+        atoms = np.flatnonzero(np.repeat(near, self._count))
+        position = self.position[atoms] @ turn + move
+        close = self._grid.is_near(position)
+        return atoms[close], position[close]
+
     def _residue_pairs(self, pairs: AtomPairs) -> ResiduePairs:
-        key = self.residue[pairs.first] * self.n_residues + self.residue[pairs.second]
+        n = self.n_residues
+        key = (pairs.image * n + self.residue[pairs.first]) * n
+        key += self.residue[pairs.second]
         order = np.argsort(key)
         key, distance = key[order], pairs.distance_angstrom[order]
         start = np.flatnonzero(np.diff(key, prepend=-1))
         count = np.diff(start, append=len(key))
         shortest = np.minimum.reduceat(distance, start) if start.size else distance
         at_shortest = np.flatnonzero(distance == np.repeat(shortest, count))
-        closest = at_shortest[np.searchsorted(at_shortest, start)]
-        first, second = np.divmod(key[start], self.n_residues)
+        closest = order[at_shortest[np.searchsorted(at_shortest, start)]]
+        rest, second = np.divmod(key[start], n)
+        image, first = np.divmod(rest, n)
         return ResiduePairs(
+            image=image,
             first=first,
             second=second,
             distance_angstrom=shortest,
-            atom_1=self.atom[pairs.first[order[closest]]],
-            atom_2=self.atom[pairs.second[order[closest]]],
+            atom_1=self.atom[pairs.first[closest]],
+            atom_2=self.atom[pairs.second[closest]],
             n_atom_pairs=count,
         )
 

@@ -25,7 +25,7 @@ CA_ONLY_ATOMS_PER_RESIDUE = 1.5
 # Å^3/Da. Dry protein fills 1.23 (0.74 cm^3/g); Matthews, J. Mol. Biol. 33, 491 (1968)
 # found 1.6 to 3.5 in crystals of proteins, and peptides pack more tightly.
 USUAL_VOLUME_PER_DALTON = (1.2, 6.0)
-LEAST_VOLUME_PER_DALTON = 0.3  # diamond has 0.47
+LEAST_VOLUME_PER_ATOM = 3.0  # Å^3; diamond has 5.7
 
 
 def read_structure(path: Path | str, *, model: int = 0) -> Structure:
@@ -75,6 +75,8 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     in_assembly = crystal is None and len(parsed.content.assemblies) > 0
     ncs = [np.eye(4)] if in_assembly else _ncs_matrices(parsed.content)
     chains = make_chain_copies(parsed, entries, ncs)
+    if crystal is not None:
+        _refuse_crowded_cell(parsed, crystal, len(ncs) * len(atoms.entry))
     warnings = _warnings(parsed, crystal, entries, chains)
     if crystal is not None and not model and len(parsed.content) > 1:
         count = len(parsed.content)
@@ -102,6 +104,14 @@ def _ncs_matrices(content: gemmi.Structure) -> list[NDArray[np.float64]]:
     return matrices
 
 
+def _refuse_crowded_cell(parsed: ParsedFile, crystal: Crystal, n_atoms: int) -> None:
+    n_operators = len(crystal.triplets)
+    if parsed.content.cell.volume < LEAST_VOLUME_PER_ATOM * n_operators * n_atoms:
+        cell = " ".join(f"{number:g}" for number in crystal.cell)
+        problem = f"with {n_operators} operators is too small for the molecule"
+        raise NonsenseCellError(parsed.path, cell, problem)
+
+
 def _warnings(
     parsed: ParsedFile,
     crystal: Crystal | None,
@@ -114,12 +124,6 @@ def _warnings(
     weight = polymer_weight_dalton(entries, chains)
     volume = parsed.content.cell.volume / len(crystal.triplets)
     low, high = USUAL_VOLUME_PER_DALTON
-    if volume / weight < LEAST_VOLUME_PER_DALTON:
-        cell = " ".join(f"{number:g}" for number in crystal.cell)
-        problem = (
-            f"with {len(crystal.triplets)} operators is too small for the molecule"
-        )
-        raise NonsenseCellError(parsed.path, cell, problem)
     if not low <= volume / weight <= high:
         warnings.append(
             f"The cell has {volume / weight:.2f} Å³ for each Da of polymer, where "
