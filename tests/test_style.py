@@ -15,7 +15,7 @@ ORDER = (
     *("version", "errors", "records", "files", "settings", "structure", "values"),
     *("sites", "contacts", "atom_pairs", "secondary", "chemistry", "quotient"),
     *("weakest", "experiment", "behaviour", "motional_units", "significance"),
-    *("lattice", "one_process", "network", "exposure", "result", "words"),
+    *("lattice", "one_process", "shifts", "network", "exposure", "result", "words"),
     *("tables", "page", "figures", "analysis", "batch", "cli"),
 )
 FUNCTIONS = (ast.FunctionDef, ast.AsyncFunctionDef)
