@@ -188,12 +188,9 @@ def _add_settings(command: Any, names: Sequence[str]) -> None:
     )
     for name in names:
         option, kind = f"--{name.replace('_', '-')}", types[name]
-        say = {
-            "help": f"{meanings[name]} [{_shown(getattr(defaults, name))}]".replace(
-                "%", "%%"
-            )
-        }
-        say |= {"dest": f"setting_{name}", "default": None}
+        shown = f"{meanings[name]} [{_shown(getattr(defaults, name))}]"
+        say: dict[str, Any] = {"default": None, "help": shown.replace("%", "%%")}
+        say["dest"] = f"setting_{name}"
         if kind is bool:
             group.add_argument(option, action=argparse.BooleanOptionalAction, **say)
         elif get_origin(kind) is tuple:
@@ -224,8 +221,9 @@ def _shown(value: Any) -> str:
 class _ShowSettings(argparse.Action):
     """Print all settings and end, as ``--version`` does."""
 
-    def __init__(self, *arguments: Any, **more: Any) -> None:
-        super().__init__(*arguments, nargs=0, **more)
+    def __init__(self, option_strings: Sequence[str], **more: Any) -> None:
+        more["nargs"] = 0
+        super().__init__(option_strings, **more)
 
     def __call__(self, parser: argparse.ArgumentParser, *rest: Any) -> None:
         del rest

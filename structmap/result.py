@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from structmap.behaviour import Behaviour, Measurements
 from structmap.contacts import Contacts, SiteGraph
+from structmap.exposure import Exposure
 from structmap.lattice import LatticeVerdict
 from structmap.records import store_read_only
 from structmap.settings import Settings
@@ -74,6 +75,10 @@ class AnalysisRecord:
     units : tuple of MotionalUnit
     membership_probability : ndarray of float, shape (n_sites,)
         Largest over units; NaN where not computed or none overlaps.
+    chemistry : ndarray of str, shape (n_contacts,)
+        What each contact is made of, ``hydrogen bond 2.9; salt bridge 3.1``.
+    exposure : Exposure
+        Accessible areas of the residues.
     warnings : tuple of str
         What the reader must know, the most important first, one sentence each.
     """
@@ -88,9 +93,12 @@ class AnalysisRecord:
     behaviour: Behaviour
     units: tuple[MotionalUnit, ...]
     membership_probability: NDArray[np.float64]
+    chemistry: NDArray[np.str_]
+    exposure: Exposure
     warnings: tuple[str, ...]
 
     def __post_init__(self) -> None:
+        store_read_only(self, "chemistry", np.str_, (len(self.contacts.kind),))
         store_read_only(
             self, "membership_probability", np.float64, (len(self.sites.name),)
         )

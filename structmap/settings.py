@@ -46,6 +46,12 @@ class Settings:
         relaxation, else ``whole``.
     model : str
         Name of the process model that the profiles follow; blank for none.
+    direction : {'both', 'up', 'down'}
+        Which way units may deviate from the baseline.
+    baseline : str
+        The baseline when it is known: a number in the unit of the values, or the name
+        of a quantity in the table that holds it for each site (a reference state);
+        blank finds it from the sites at rest.
     exclude : tuple of str
         Sites to leave out, written ``A/56A`` or ``56A``.
     columns : tuple of str
@@ -56,6 +62,11 @@ class Settings:
         Rate of magic-angle spinning; 0 is not given.
     sample : {'protonated', 'deuterated'}
         Decides below which spin-lock field points are left out.
+    most_permutations : int
+        Most permutations of a test whose p lies at the border of 0.05; 0 leaves the
+        tests of chance and stability out.
+    repeats : int
+        Searches with redrawn errors behind stability and behind membership.
     title : str
         What was measured, for the head of the page; blank makes one.
     data_note : str
@@ -74,11 +85,15 @@ class Settings:
     quantity: tuple[str, ...] = ()
     profile_part: ProfilePart = "auto"
     model: str = ""
+    direction: Direction = "both"
+    baseline: str = ""
     exclude: tuple[str, ...] = ()
     columns: tuple[str, ...] = ()
     proton_frequency_megahertz: float = 0.0
     mas_rate_hertz: float = 0.0
     sample: Literal["protonated", "deuterated"] = "protonated"
+    most_permutations: int = 9999
+    repeats: int = 100
     title: str = ""
     data_note: str = ""
     seed: int = 20260

@@ -144,7 +144,7 @@ def _quantity(record: AnalysisRecord) -> dict[str, Any]:
         "errorsGiven": record.measurements.errors_given,
         "threshold": MEMBERSHIP_THRESHOLD,
         "membershipKnown": bool(np.isfinite(record.membership_probability).any()),
-        "secondaryKnown": bool(record.structure.has_secondary_structure),
+        "secondaryKnown": bool((record.structure.secondary_structure != "").any()),
     }
 
 

@@ -3,13 +3,16 @@
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from structmap.contacts import KINDS, Contacts
 from structmap.structure import Structure
 from structmap.tables.text import Cell, Table
 
 
-def contacts_table(structure: Structure, contacts: Contacts) -> Table:
+def contacts_table(
+    structure: Structure, contacts: Contacts, *, chemistry: NDArray[np.str_]
+) -> Table:
     """Return a row for each residue contact of the crystal.
 
     Parameters
@@ -17,6 +20,8 @@ def contacts_table(structure: Structure, contacts: Contacts) -> Table:
     structure : Structure
     contacts : Contacts
         Of that structure.
+    chemistry : ndarray of str, shape (n_contacts,)
+        What each contact is made of.
 
     Returns
     -------
@@ -46,7 +51,7 @@ def contacts_table(structure: Structure, contacts: Contacts) -> Table:
         [f"{distance:.3f}" for distance in contacts.distance_angstrom],
         structure.atom_name[contacts.atom_1].tolist(),
         structure.atom_name[contacts.atom_2].tolist(),
-        [None] * len(contacts.kind),
+        chemistry.tolist(),
         strict=True,
     )
     return Table(columns=columns, rows=tuple(rows))

@@ -40,7 +40,7 @@ def mapped_coordinates(record: AnalysisRecord, coordinates: Path) -> str:
     for model in structure:
         for chain in model:
             for residue in chain:
-                key = (chain.name, residue.seqid.num, residue.seqid.icode.strip())
+                key = (chain.name, residue.seqid.num or 0, residue.seqid.icode.strip())
                 for atom in residue:
                     atom.b_iso = value.get(key, 0.0)
     document = structure.make_mmcif_document()
@@ -55,7 +55,9 @@ def _read_again(record: AnalysisRecord, coordinates: Path) -> gemmi.Structure:
     try:
         content = coordinates.read_bytes()
     except OSError as error:
-        raise FileProblemError(coordinates, "cannot be read any more", remedy) from error
+        raise FileProblemError(
+            coordinates, "cannot be read any more", remedy
+        ) from error
     if hashlib.sha256(content).hexdigest() != record.structure.sha256:
         raise FileProblemError(coordinates, "changed since it was analysed", remedy)
     structure = gemmi.read_structure(str(coordinates))
@@ -68,7 +70,7 @@ def _read_again(record: AnalysisRecord, coordinates: Path) -> gemmi.Structure:
 def _value_of_residue(record: AnalysisRecord) -> dict[tuple[str, int, str], float]:
     structure, sites = record.structure, record.sites
     summary = spread_over_sites(record, record.behaviour.summary)
-    out = {}
+    out: dict[tuple[str, int, str], float] = {}
     for site, residue in zip(sites.copy_site, sites.copy_residue, strict=True):
         value = summary[int(site)]
         if isinstance(value, float) and not np.isnan(value):

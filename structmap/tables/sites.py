@@ -57,7 +57,7 @@ def sites_table(record: AnalysisRecord) -> Table:
             *(column[site] for column in found),
             bool(partners[site]),
             " ".join(partners[site]),
-            None,
+            _exposure(record, site),
             _note(record, site),
         )
         for site in range(len(record.sites.name))
@@ -111,6 +111,12 @@ def _lattice_partners(record: AnalysisRecord) -> list[list[str]]:
             for site in sites_of_residue.get(own, ()):
                 partners[site].append(residue_text(structure, other))
     return [list(dict.fromkeys(found)) for found in partners]
+
+
+def _exposure(record: AnalysisRecord, site: int) -> float | None:
+    """Return the accessible share of a residue in its assembly."""
+    residue = int(record.sites.residue[site])
+    return None if residue < 0 else float(record.exposure.relative_in_assembly[residue])
 
 
 def _note(record: AnalysisRecord, site: int) -> str:

@@ -10,8 +10,6 @@ from structmap.words.names import (
     residues_in_view,
 )
 
-SCALE_LOW, SCALE_HIGH = 0.5, 2.0
-
 
 def care_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     """Return what the reader must know, the most important first.
@@ -28,7 +26,6 @@ def care_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     found = [
         *_care_errors(record),
         *record.sites.notes,
-        *_care_scale(record),
         *record.warnings,
         *_care_crystal(record),
         *_care_points(record),
@@ -46,35 +43,10 @@ def _care_errors(record: AnalysisRecord) -> list[str]:
     if record.measurements.errors_given:
         return []
     error = float(np.median(record.behaviour.summary_error))
+    size = f"{error:.3g}\u00a0{record.behaviour.summary_unit}".rstrip()
     return [
-        f"The values came without errors; one common error of {error:.3g} "
-        f"{record.behaviour.summary_unit} was estimated from their scatter".rstrip()
-        + ", and every statement below rests on it."
-    ]
-
-
-def _care_scale(record: AnalysisRecord) -> list[str]:
-    scale = record.behaviour.error_scale
-    if not record.measurements.errors_given or SCALE_LOW <= scale <= SCALE_HIGH:
-        return []
-    if scale < SCALE_LOW:
-        return [
-            f"The stated errors are larger than the scatter (scale {scale:.2f}); "
-            "they were "
-            "scaled to it, check how they were made."
-        ]
-    cause = "the errors are too small or the sites have baselines of their own"
-    remedy = (
-        ""
-        if record.measurements.part != "whole"
-        else "; compare shape and level apart to tell"
-    )
-    if not record.measurements.is_profile:
-        remedy = "; check how the errors were made"
-    return [
-        f"The values scatter {scale:.1f} times as much as their errors, which were "
-        "scaled "
-        f"up: {cause}{remedy}."
+        f"The values came without errors; one common error of {size} was estimated "
+        "from their scatter, and every statement below rests on it."
     ]
 
 

@@ -7,7 +7,7 @@ from structmap.words.names import (
     number_in_words,
     residues_in_view,
 )
-from structmap.words.phrases import came_back, lattice_phrase, members_phrase
+from structmap.words.phrases import hint_phrase, lattice_phrase, members_phrase
 
 SUPPORTED = ("supported", "beyond-gradient")
 UNITS_BY_NAME = 3
@@ -27,9 +27,13 @@ def title(record: AnalysisRecord) -> str:
     """
     if record.settings.title:
         return record.settings.title
-    names = listing(grouped_quantities(record))
+    names = grouped_quantities(record)
+    many = f"{number_in_words(len(names)).capitalize()} quantities"
+    named = listing(names) if len(names) <= UNITS_BY_NAME else many
     kind = "profiles" if record.measurements.is_profile else "values"
-    return f"{names} {kind} on {_structure_phrase(record)}"
+    if named == many:
+        return f"{many} on {_structure_phrase(record)}"
+    return f"{named} {kind} on {_structure_phrase(record)}"
 
 
 def grouped_quantities(record: AnalysisRecord) -> tuple[str, ...]:
@@ -150,5 +154,5 @@ def _weak_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
             f"{head} grows step by step and is better read as a gradient than as a unit"
         )
     if unit.verdict == "tentative":
-        return f"{head} is a hint: it {came_back(unit)}"
+        return f"{head} {hint_phrase(unit)}"
     return f"{head} {lattice_phrase(record, unit)}; how sure it is was not tested"

@@ -2,15 +2,18 @@
 
 import numpy as np
 
-from structmap.lattice import number_crystal_contacts
+from structmap.lattice import SMALLEST_PIECE, number_crystal_contacts
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.words.names import listing, number_in_words, site_name
 
 NAMED_AT_MOST = 5
 
 
-def came_back(unit: MotionalUnit) -> str:
-    """Return how well a unit came back when its errors were drawn again.
+LEVEL = 0.05
+
+
+def hint_phrase(unit: MotionalUnit) -> str:
+    """Return why a tentative unit is no more than a hint.
 
     Parameters
     ----------
@@ -19,12 +22,15 @@ def came_back(unit: MotionalUnit) -> str:
     Returns
     -------
     str
-        A phrase that follows "it".
+        A phrase that follows the name of the unit.
     """
-    if np.isnan(unit.stability):
-        return "was not tried again with other errors"
-    share = f"{100 * unit.stability:.0f}\u00a0%"
-    return f"overlaps by {share} with what repeats with other errors find"
+    chance = max(unit.p_any, unit.p_place)
+    if not chance <= LEVEL:
+        text = f"is a hint: chance alone makes groups as good (p\u00a0{chance:.2g})"
+    else:
+        share = f"{100 * unit.stability:.0f}\u00a0%"
+        text = f"is a hint: with errors drawn anew {share} of it comes back"
+    return text
 
 
 def members_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
@@ -86,6 +92,12 @@ def lattice_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
         return (
             f"is held together by {where}; {number_in_words(kept)} of its "
             f"{number_in_words(len(unit.members))} residues {stay} together without it"
+        )
+    kept = len(unit.lattice.pieces_without_lattice[0])
+    if kept >= SMALLEST_PIECE:
+        return (
+            f"needs {where}; {number_in_words(kept)} of its "
+            f"{number_in_words(len(unit.members))} residues stay together without it"
         )
     return (
         f"exists only across {where}, and no unit is left of it when the neighbours "

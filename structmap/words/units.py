@@ -33,7 +33,7 @@ def unit_sure(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     if not np.isnan(unit.p_smooth):
         lines.append(f"p\u00a0{p_text(unit.p_smooth)} against a gradient")
     if not np.isnan(unit.stability):
-        lines.append(f"{100 * unit.stability:.0f}\u00a0% overlap in repeats")
+        lines.append(f"{100 * unit.stability:.0f}\u00a0% of it back in repeats")
     return tuple(lines)
 
 
@@ -145,8 +145,8 @@ def _sure_phrase(unit: MotionalUnit) -> str:
     chance = f"p {p_text(unit.p_place)} against chance placement".replace("\u00a0", " ")
     said = {
         "supported": f"supported by the data ({chance})",
-        "beyond-gradient": "supported, and more sharply bounded than a gradient "
-        "({chance})",
+        "beyond-gradient": "supported, and more sharply bounded than a gradient is "
+        f"({chance})",
         "graded": f"better read as a gradient than as a unit ({chance})",
         "tentative": "a hint that these data do not show beyond doubt, nor exclude",
     }

@@ -1,0 +1,133 @@
+"""The whole way from coordinates and values to a record."""
+
+from dataclasses import replace
+from pathlib import Path
+
+import numpy as np
+
+from structmap.analysis.evidence import (
+    Surroundings,
+    describe_units,
+    graphs_at_cutoffs,
+    known_baseline,
+    spread_membership,
+)
+from structmap.analysis.steps import (
+    Progress,
+    cutoff_of,
+    match_by_settings,
+    point_reasons,
+    say_nothing,
+)
+from structmap.behaviour import take_measurements
+from structmap.chemistry import find_chemistry
+from structmap.contacts import choose_assemblies, find_contacts, make_site_graph
+from structmap.exposure import find_exposure
+from structmap.motional_units import find_motional_units
+from structmap.result import AnalysisRecord
+from structmap.secondary import assign_secondary_structure
+from structmap.settings import Settings
+from structmap.significance import Effort, judge_units, list_cautions
+from structmap.sites import site_centres
+from structmap.structure import Structure, read_structure
+from structmap.values import ValueTable
+
+
+def analyse_table(
+    coordinates: Path,
+    table: ValueTable,
+    settings: Settings,
+    *,
+    progress: Progress | None = None,
+) -> AnalysisRecord:
+    """Analyse values that are in memory already.
+
+    Parameters
+    ----------
+    coordinates : Path
+        mmCIF or PDB file.
+    table : ValueTable
+    settings : Settings
+    progress : callable, optional
+        Called with the name of a step and the share done.
+
+    Returns
+    -------
+    AnalysisRecord
+        Everything that was found.
+
+    Raises
+    ------
+    StructmapError
+        If the file cannot be used or the numbering cannot be reconciled.
+    """
+    tell = progress or say_nothing
+    tell("reading coordinates", 0.0)
+    structure = _with_secondary(
+        read_structure(coordinates, model=settings.coordinate_model)
+    )
+    tell("matching the numbering", 0.1)
+    sites = match_by_settings(structure, table, settings)
+    tell("finding contacts over the crystal", 0.2)
+    cutoff = cutoff_of(structure, settings)
+    assemblies = choose_assemblies(structure, settings.assembly)
+    contacts = find_contacts(structure, reach_angstrom=cutoff, assemblies=assemblies)
+    graph = make_site_graph(contacts, sites, cutoff_angstrom=cutoff)
+    tell("finding motional units", 0.4)
+    measurements = take_measurements(
+        table,
+        sites,
+        quantity=settings.quantity,
+        profile_part=settings.profile_part,
+        model_name=settings.model,
+        point_reason=point_reasons(table, settings),
+    )
+    search = find_motional_units(
+        measurements,
+        graph,
+        site_centres(structure, sites),
+        direction=settings.direction,
+        baseline=known_baseline(table, sites, measurements, settings),
+    )
+    crystal = Surroundings(
+        structure=structure,
+        sites=sites,
+        contacts=contacts,
+        graph=graph,
+        assemblies=assemblies,
+    )
+    random_of_judging = np.random.default_rng(settings.seed).spawn(1)[0]
+    judgement = None
+    if settings.most_permutations:
+        judgement = judge_units(
+            search,
+            graphs_at_cutoffs(crystal, cutoff) if search.members else (),
+            rng=random_of_judging,
+            progress=lambda step, share: tell(step, 0.5 + 0.4 * share),
+            effort=Effort(
+                most_permutations=settings.most_permutations, repeats=settings.repeats
+            ),
+        )
+    tell("asking what holds the units together", 0.95)
+    return AnalysisRecord(
+        settings=settings,
+        structure=structure,
+        table=table,
+        sites=sites,
+        contacts=contacts,
+        graph=graph,
+        measurements=measurements,
+        behaviour=search.behaviour,
+        units=describe_units(search, judgement, crystal),
+        membership_probability=spread_membership(search, judgement, len(sites.name)),
+        chemistry=find_chemistry(structure, contacts, assemblies=assemblies).text,
+        exposure=find_exposure(structure, assemblies=assemblies),
+        warnings=list_cautions(search, measurements, judgement) if judgement else (),
+    )
+
+
+def _with_secondary(structure: Structure) -> Structure:
+    """Assign the secondary structure where the file records none."""
+    if structure.has_secondary_structure:
+        return structure
+    return replace(structure, secondary_structure=assign_secondary_structure(structure))

@@ -1,0 +1,110 @@
+"""Steps that take their choices from the settings."""
+
+from collections.abc import Callable
+from pathlib import Path
+
+from structmap.contacts import contact_cutoff
+from structmap.experiment import SPINNING_MODEL, convert_to_base, points_left_out
+from structmap.settings import Settings
+from structmap.sites import Sites, match_sites
+from structmap.structure import Structure
+from structmap.values import ValueTable, read_mapping
+
+Progress = Callable[[str, float], None]
+
+
+def say_nothing(step: str, share: float) -> None:
+    """Show no progress.
+
+    Parameters
+    ----------
+    step : str
+    share : float
+    """
+    del step, share
+
+
+def match_by_settings(
+    structure: Structure, table: ValueTable, settings: Settings
+) -> Sites:
+    """Match the numbering as the settings say.
+
+    Parameters
+    ----------
+    structure : Structure
+    table : ValueTable
+    settings : Settings
+
+    Returns
+    -------
+    Sites
+        Measured sites with their copies.
+
+    Raises
+    ------
+    StructmapError
+        If the numbering is ambiguous or does not fit.
+    """
+    return match_sites(
+        structure,
+        table,
+        offset=settings.offset,
+        mapping=read_mapping(Path(settings.mapping)) if settings.mapping else None,
+        named_chains_only=settings.named_chains_only,
+        exclude=settings.exclude,
+    )
+
+
+def cutoff_of(structure: Structure, settings: Settings) -> float:
+    """Return the cutoff for a file: between heavy atoms, or between CA atoms.
+
+    Parameters
+    ----------
+    structure : Structure
+    settings : Settings
+
+    Returns
+    -------
+    float
+        In Å.
+    """
+    return contact_cutoff(
+        structure,
+        cutoff_angstrom=settings.cutoff_angstrom,
+        ca_cutoff_angstrom=settings.ca_cutoff_angstrom,
+    )
+
+
+def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
+    """Return why points of the profile cannot be carried.
+
+    Parameters
+    ----------
+    table : ValueTable
+    settings : Settings
+
+    Returns
+    -------
+    tuple of str
+        One a point, blank where it is kept; empty without a profile.
+
+    Raises
+    ------
+    UnknownUnitError
+        If the spin-lock field has no unit that is known.
+    """
+    profiles = [q for q in table.quantities if len(q.x)]
+    if settings.quantity:
+        profiles = [q for q in profiles if q.name in settings.quantity]
+    if not profiles:
+        return ()
+    profile = profiles[0]
+    if settings.model != SPINNING_MODEL:
+        return ("",) * len(profile.x)
+    return points_left_out(
+        convert_to_base(profile.x, profile.x_unit, quantity=profile.x_name, base="Hz"),
+        model_name=settings.model,
+        mas_rate_hertz=settings.mas_rate_hertz,
+        proton_frequency_megahertz=settings.proton_frequency_megahertz,
+        sample=settings.sample,
+    )
