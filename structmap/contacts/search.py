@@ -221,7 +221,8 @@ class Molecule:
         self.position = structure.position[self.atom]
         self.residue = structure.residue_of_atom[self.atom]
         letters = structure.altloc[self.atom]
-        self.altloc = np.unique(letters, return_inverse=True)[1] * (letters != "")
+        code = np.unique(letters, return_inverse=True)[1] + 1
+        self.altloc = np.where(letters == "", 0, code)
         self.n_residues = len(structure.kind_of_residue)
         names = structure.atom_name[self.atom]
         leaves = ("CA",) if structure.ca_only else ("C", "O3'")
