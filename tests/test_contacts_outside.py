@@ -180,6 +180,30 @@ def test_contacts_name_their_image_as_the_international_tables_do():
     assert len(texts) == 6  # of an image and its inverse one is written
 
 
+@pytest.mark.parametrize(
+    ("name", "expected"),
+    [
+        # residue pairs at 4.0 Å inside the asymmetric unit, by another program
+        ("3o21.cif.gz", {"AB": (49, 1), "CD": (32, 1), "BC": (6, 2), "BD": (19, 2)}),
+        ("3kpr.cif.gz", {"DF": (6, 2), "DI": (1, 2), "DJ": (19, 2), "EF": (5, 2)}),
+        ("1a28.pdb.gz", {"AB": (23, 2)}),
+    ],
+)
+def test_chains_of_one_assembly_are_complex_and_others_lattice(name, expected, request):
+    structure = first_alternatives(read_structure(located(name, request)))
+    contacts = find_contacts(
+        structure,
+        reach_angstrom=4.0,
+        assemblies=choose_assemblies(structure, "auto"),
+    )
+    here = (contacts.operator == 0) & ~contacts.shift.any(axis=1)
+    chain = structure.auth_asym_id
+    pairs = np.char.add(chain[contacts.residue_1], chain[contacts.residue_2])
+    for pair, (number, kind) in expected.items():
+        kinds = contacts.kind[here & (pairs == pair)]
+        assert kinds.tolist() == [kind] * number
+
+
 def test_every_shared_file_gives_contacts_or_one_line(data_folder):
     """No file may end in a traceback, whatever it is."""
     n_read = 0

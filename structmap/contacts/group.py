@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from structmap.records import store_read_only
 from structmap.structure import Crystal
 
 TWENTY_FOURTHS = 24
@@ -33,6 +34,14 @@ class GroupTable:
     product_offset: NDArray[np.int64]
     inverse_operator: NDArray[np.int64]
     inverse_offset: NDArray[np.int64]
+
+    def __post_init__(self) -> None:
+        n = len(self.rotations)
+        store_read_only(self, "rotations", np.int64, (n, 3, 3))
+        store_read_only(self, "product_operator", np.int64, (n, n))
+        store_read_only(self, "product_offset", np.int64, (n, n, 3))
+        store_read_only(self, "inverse_operator", np.int64, (n,))
+        store_read_only(self, "inverse_offset", np.int64, (n, 3))
 
     def product(
         self,
