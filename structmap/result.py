@@ -9,6 +9,7 @@ from structmap.behaviour import Behaviour, Measurements
 from structmap.contacts import Contacts, SiteGraph
 from structmap.exposure import Exposure
 from structmap.lattice import LatticeVerdict
+from structmap.one_process import OneProcess
 from structmap.records import store_read_only
 from structmap.settings import Settings
 from structmap.sites import Sites
@@ -79,6 +80,8 @@ class AnalysisRecord:
         What each contact is made of, ``hydrogen bond 2.9; salt bridge 3.1``.
     exposure : Exposure
         Accessible areas of the residues.
+    processes : tuple of OneProcess
+        For each unit whether one process explains it; empty when no model was named.
     warnings : tuple of str
         What the reader must know, the most important first, one sentence each.
     """
@@ -95,6 +98,7 @@ class AnalysisRecord:
     membership_probability: NDArray[np.float64]
     chemistry: NDArray[np.str_]
     exposure: Exposure
+    processes: tuple[OneProcess, ...]
     warnings: tuple[str, ...]
 
     def __post_init__(self) -> None:
@@ -102,6 +106,10 @@ class AnalysisRecord:
         store_read_only(
             self, "membership_probability", np.float64, (len(self.sites.name),)
         )
+
+    def process_of(self, unit: MotionalUnit) -> OneProcess | None:
+        """Return whether one process explains a unit; None when it was not asked."""
+        return next((p for p in self.processes if p.group == unit.name), None)
 
     def unit_of_site(self) -> NDArray[np.int64]:
         """Return for each site the index of its unit, -1 for none."""

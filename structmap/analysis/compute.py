@@ -9,6 +9,7 @@ from structmap.analysis.evidence import (
     Surroundings,
     describe_units,
     graphs_at_cutoffs,
+    judge_processes,
     known_baseline,
     spread_membership,
 )
@@ -96,7 +97,8 @@ def analyse_table(
         graph=graph,
         assemblies=assemblies,
     )
-    random_of_judging = np.random.default_rng(settings.seed).spawn(1)[0]
+    # One child a step, in this order; a new step joins at the end.
+    random_of_judging, random_of_process = np.random.default_rng(settings.seed).spawn(2)
     judgement = None
     if settings.most_permutations:
         judgement = judge_units(
@@ -108,7 +110,10 @@ def analyse_table(
                 most_permutations=settings.most_permutations, repeats=settings.repeats
             ),
         )
-    tell("asking what holds the units together", 0.95)
+    tell("asking what holds the units together", 0.9)
+    units = describe_units(search, judgement, crystal)
+    tell("asking whether one process explains them", 0.95)
+    processes = judge_processes(table, sites, units, settings, rng=random_of_process)
     return AnalysisRecord(
         settings=settings,
         structure=structure,
@@ -118,10 +123,11 @@ def analyse_table(
         graph=graph,
         measurements=measurements,
         behaviour=search.behaviour,
-        units=describe_units(search, judgement, crystal),
+        units=units,
         membership_probability=spread_membership(search, judgement, len(sites.name)),
         chemistry=find_chemistry(structure, contacts, assemblies=assemblies).text,
         exposure=find_exposure(structure, assemblies=assemblies),
+        processes=processes,
         warnings=list_cautions(search, measurements, judgement) if judgement else (),
     )
 

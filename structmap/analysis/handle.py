@@ -17,6 +17,7 @@ from structmap.tables import (
     Table,
     contacts_table,
     mapped_coordinates,
+    processes_table,
     run_text,
     sites_table,
     table_text,
@@ -104,9 +105,15 @@ class Analysis:
             If the folder cannot be written or the coordinates changed since.
         """
         record = self.record
+        files: dict[str, str | bytes] = {
+            name: table_text(processes_table(record))
+            for name in ("one_process.csv",)
+            if record.settings.model
+        }
         write_folder(
             Path(folder),
-            {
+            files
+            | {
                 "sites.csv": table_text(sites_table(record)),
                 "motional_units.csv": table_text(units_table(record)),
                 "contacts.csv": table_text(_contacts_of(record)),

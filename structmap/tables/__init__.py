@@ -5,7 +5,7 @@ from structmap.tables.mapped import mapped_coordinates
 from structmap.tables.run import library_versions, run_text
 from structmap.tables.sites import sites_table
 from structmap.tables.text import Cell, Table, cell_text, plain, table_text
-from structmap.tables.units import units_table
+from structmap.tables.units import processes_table, units_table
 
 __all__ = [
     "Cell",
@@ -15,6 +15,7 @@ __all__ = [
     "library_versions",
     "mapped_coordinates",
     "plain",
+    "processes_table",
     "run_text",
     "sites_table",
     "table_text",

@@ -1,5 +1,6 @@
 """``motional_units.csv``: a row for each motional unit."""
 
+from structmap.one_process import ONE_PROCESS_COLUMNS, table_rows
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.tables.text import Cell, Table, plain
 from structmap.words import unit_sentence
@@ -53,6 +54,33 @@ def _unit_row(record: AnalysisRecord, unit: MotionalUnit) -> tuple[Cell, ...]:
             pieces,
             *lattice.joining_distance_angstrom,
         ),
-        *(None, None, None, None),
+        *_process_cells(record, unit),
         plain(unit_sentence(record, unit)),
+    )
+
+
+def _process_cells(record: AnalysisRecord, unit: MotionalUnit) -> tuple[Cell, ...]:
+    process = record.process_of(unit)
+    if process is None:
+        return (None, None, None, None)
+    if process.verdict == "distinct":
+        return (process.verdict, None, None, None)
+    return (process.verdict, process.value, process.low, process.high)
+
+
+def processes_table(record: AnalysisRecord) -> Table:
+    """Return a row for each unit that was held against a model.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+
+    Returns
+    -------
+    Table
+        ``one_process.csv``.
+    """
+    rows = table_rows(record.processes)
+    return Table(
+        columns=ONE_PROCESS_COLUMNS, rows=tuple(tuple(row.values()) for row in rows)
     )

@@ -2,6 +2,7 @@
 
 import numpy as np
 
+from structmap.one_process import OneProcess, show_interval
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.words.phrases import (
     across_phrase,
@@ -114,10 +115,28 @@ def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     Returns
     -------
     tuple of str
-        ``not tested`` when no model was fitted.
+        The verdict, the value with its interval, the chance; ``not tested`` when no
+        model was named.
     """
-    del record, unit
-    return ("not tested",)
+    process = record.process_of(unit)
+    if process is None:
+        return ("not tested",)
+    lines = [_process_word(process)]
+    if process.verdict in ("shared", "shared by a subset"):
+        lines.append(show_interval(process))
+    if process.verdict != "undetermined":
+        lines.append(f"p\u00a0{p_text(process.p_distinct)}")
+    return tuple(lines)
+
+
+def _process_word(process: OneProcess) -> str:
+    if process.verdict == "shared":
+        return "one value is enough"
+    if process.verdict == "shared by a subset":
+        return f"one value is enough without {' '.join(process.apart)}"
+    if process.verdict == "distinct":
+        return "several values are needed"
+    return "these data cannot tell"
 
 
 def unit_sentence(record: AnalysisRecord, unit: MotionalUnit) -> str:
@@ -136,7 +155,17 @@ def unit_sentence(record: AnalysisRecord, unit: MotionalUnit) -> str:
     head = (
         f"{unit.name}, {members_phrase(record, unit)}, {lattice_phrase(record, unit)}"
     )
-    return f"{head}; {_sure_phrase(unit)}."
+    return f"{head}; {_sure_phrase(unit)}{_process_clause(record, unit)}."
+
+
+def _process_clause(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    process = record.process_of(unit)
+    if process is None:
+        return ""
+    text = f"; {_process_word(process)}"
+    if process.verdict in ("shared", "shared by a subset"):
+        text += f", {show_interval(process)}"
+    return text
 
 
 def _sure_phrase(unit: MotionalUnit) -> str:
