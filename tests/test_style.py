@@ -12,11 +12,12 @@ import pytest
 PACKAGE = Path(__file__).resolve().parent.parent / "structmap"
 MODULES = sorted(PACKAGE.rglob("*.py"))
 ORDER = (
-    *("version", "errors", "records", "files", "settings", "structure", "values"),
-    *("sites", "contacts", "atom_pairs", "secondary", "chemistry", "quotient"),
-    *("weakest", "experiment", "behaviour", "motional_units", "significance"),
-    *("lattice", "one_process", "shifts", "network", "exposure", "result", "words"),
-    *("tables", "page", "figures", "analysis", "batch", "cli"),
+    *("version", "errors", "records", "files", "settings", "structure", "cell"),
+    *("values", "sites", "contacts", "atom_pairs", "secondary", "chemistry"),
+    *("quotient", "weakest", "experiment", "behaviour", "motional_units"),
+    *("significance", "lattice", "one_process", "shifts", "network", "exposure"),
+    *("result", "words", "tables", "forms", "page", "figures", "analysis", "batch"),
+    "cli",
 )
 FUNCTIONS = (ast.FunctionDef, ast.AsyncFunctionDef)
 

@@ -218,6 +218,10 @@ def _front(
         above = blocks.rows[int(blocks.parent[block])]
         chosen = np.searchsorted(above, rows[width:])
         known = parent_front[chosen[:, None], chosen]
+    if width == 1:
+        first = lower.indptr[start]
+        below = lower.data[first + 1 : first + len(rows)]
+        return _bordered(known, below, pivot=float(pivots[start]))
     columns = np.zeros((len(rows), width))
     for offset in range(width):
         first = lower.indptr[start + offset]
@@ -235,4 +239,16 @@ def _front(
     front[:width, width:] = across.T
     own = inverse / pivots[start : start + width, None]
     front[:width, :width] = inverse.T @ own - reach.T @ across
+    return front
+
+
+def _bordered(
+    known: NDArray[np.float64], below: NDArray[np.float64], *, pivot: float
+) -> NDArray[np.float64]:
+    """Return the inverse on the rows of a single column."""
+    across = -(known @ below)
+    front = np.empty((len(below) + 1, len(below) + 1))
+    front[1:, 1:] = known
+    front[1:, 0] = front[0, 1:] = across
+    front[0, 0] = 1 / pivot - below @ across
     return front
