@@ -219,7 +219,7 @@ function drawOverview(box, width, height) {
   const whole = row * groups.length + 22;
   if (whole > height + 1) box.style.overflowY = "auto";
   const range = rangeOf(groups.flatMap((g) => g.members), profile.above, null);
-  const side = Math.min(150, Math.max(134, width * 0.27));
+  const side = state.printing ? 122 : Math.min(150, Math.max(134, width * 0.27));
   const nodes = groups.map((group, i) => {
     const axes = axesIn(34, 14, width - 34 - side - 16, row - 46, range);
     const last = i === groups.length - 1;

@@ -103,7 +103,7 @@ function profileCell(e) {
 function unitCell(e) {
   const unit = data.entries.unit[e];
   const td = element("td");
-  if (unit >= 0) td.append(inlineMark(unit), `\u00a0${data.units[unit].name}`);
+  if (unit >= 0) td.append(inlineMark(unit), `${data.units[unit].name}`);
   return td;
 }
 

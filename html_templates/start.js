@@ -26,7 +26,7 @@ function entryTip(e) {
     const first = element("span");
     if (unit[e] >= 0) {
       const share = membership[e] === null ? "" : `\u00a0${fixed(membership[e], 2)}`;
-      first.append(inlineMark(unit[e]), ` ${data.units[unit[e]].name}${share}`);
+      first.append(inlineMark(unit[e]), `${data.units[unit[e]].name}${share}`);
       lines.push(first);
     }
     lines.push(element("span", {}, ...rich(valueText(e))), element("span", { class: "soft" }, baselineText(e)));

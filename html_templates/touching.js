@@ -32,7 +32,7 @@ function drawMap() {
   const box = byId("map");
   const count = data.entries.name.length;
   const across = Math.min(330, box.clientWidth || 330);
-  const left = 26;
+  const left = Math.ceil(8 + Math.max(...[data.entries.number[0], data.entries.number[count - 1]].map((n) => textWidth(minus(n), "400 11px sans-serif"))));
   const room = across - left - 2;
   mapPlan = { size: room, left, top: 18, cell: 0 };
   mapPlan.cell = mapPlan.size / count;

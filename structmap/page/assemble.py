@@ -106,7 +106,9 @@ def _source(text: str) -> str:
 
 
 def _data_block(payload: dict[str, object]) -> str:
-    text = json.dumps(payload, ensure_ascii=False, separators=(",", ":"), allow_nan=False)
+    text = json.dumps(
+        payload, ensure_ascii=False, separators=(",", ":"), allow_nan=False
+    )
     if len(text.encode("utf-8")) > COMPRESS_ABOVE_BYTES:
         packed = gzip.compress(text.encode("utf-8"), compresslevel=6, mtime=0)
         return json.dumps({"gzip": base64.b64encode(packed).decode()})
@@ -150,7 +152,9 @@ def _care(record: AnalysisRecord) -> str:
 def _facts(record: AnalysisRecord) -> str:
     rows = []
     for label, lines in words.facts(record):
-        inner = "".join(f"<span>{markup.space_group_html(line)}</span>" for line in lines)
+        inner = "".join(
+            f"<span>{markup.space_group_html(line)}</span>" for line in lines
+        )
         rows.append(f"<dt>{escape(label)}</dt><dd>{inner}</dd>")
     return "".join(rows)
 
@@ -220,7 +224,8 @@ def _foot(record: AnalysisRecord) -> dict[str, str]:
         ),
         "licence": escape(_template("built/3Dmol-LICENSE.txt")),
         "hashes": "".join(
-            f"<span>{escape(n)}<br>sha256 <code>{escape(h)}</code></span>" for n, h in pairs
+            f"<span>{escape(n)}<br>sha256 <code>{escape(h)}</code></span>"
+            for n, h in pairs
         ),
         "colophon": markup.rich_html(words.colophon(record)),
     }

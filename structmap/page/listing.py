@@ -1,4 +1,4 @@
-"""The residues that the page lists, one a column of the chain and a row of the table."""
+"""The residues that the page lists: columns of the chain, rows of the table."""
 
 from dataclasses import dataclass
 
@@ -55,14 +55,15 @@ def list_entries(record: AnalysisRecord) -> Listing:
     listed = np.isin(structure.auth_asym_id[polymer], measured_chains(record))
     listed &= structure.original_residue[polymer] == polymer
     sites_at: dict[int, list[int]] = {}
-    for site, residue in enumerate(record.sites.residue.tolist()):
-        sites_at.setdefault(residue, []).append(site)
+    for index, residue in enumerate(record.sites.residue.tolist()):
+        sites_at.setdefault(residue, []).append(index)
     pairs = [(r, s) for r in polymer[listed].tolist() for s in sites_at.get(r, [-1])]
-    residue, site = np.array(pairs, dtype=np.int64).reshape(-1, 2).T
+    paired = np.array(pairs, dtype=np.int64).reshape(-1, 2)
+    residues, site = paired[:, 0], paired[:, 1]
     row_of_site = np.full(len(record.sites.name) + 1, -1)
     row_of_site[record.measurements.site] = np.arange(len(record.measurements.site))
     return Listing(
-        residue=residue,
+        residue=residues,
         site=site,
         measured=row_of_site[site],
         first=_first_copies(record, len(polymer), polymer[listed]),
@@ -72,7 +73,7 @@ def list_entries(record: AnalysisRecord) -> Listing:
 def _first_copies(
     record: AnalysisRecord, n_drawn: int, listed: NDArray[np.int64]
 ) -> NDArray[np.int64]:
-    """Lead each residue back to a listed one: measured copies, then all between them."""
+    """Lead each residue back to a listed one: measured copies, then those between."""
     structure, sites = record.structure, record.sites
     first = np.full(n_drawn, -1)
     originals = structure.original_residue[:n_drawn]
@@ -104,7 +105,10 @@ def _fill_between(
         for r in np.flatnonzero(structure.copy_of_residue == chain)
     }
     for residue in members[first[members] < 0].tolist():
-        key = (int(structure.auth_seq_id[residue]) + shift, str(structure.ins_code[residue]))
+        key = (
+            int(structure.auth_seq_id[residue]) + shift,
+            str(structure.ins_code[residue]),
+        )
         first[residue] = places.get(key, -1)
 
 
@@ -150,7 +154,10 @@ def entry_names(record: AnalysisRecord, listing: Listing) -> list[str]:
     if len(set(residues)) == len(residues):
         return [names[r] for r in residues]
     atoms = [str(record.sites.atom[s]) if s >= 0 else "" for s in listing.site.tolist()]
-    return [f"{names[r]}\u00a0{a}" if a else names[r] for r, a in zip(residues, atoms, strict=True)]
+    return [
+        f"{names[r]}\u00a0{a}" if a else names[r]
+        for r, a in zip(residues, atoms, strict=True)
+    ]
 
 
 def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:
@@ -177,5 +184,7 @@ def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:
         elif row < 0:
             notes.append("in the table, but with too few values to compare or left out")
         else:
-            notes.append("; ".join(f"at the edge of {name}" for name in fringe.get(site, [])))
+            notes.append(
+                "; ".join(f"at the edge of {name}" for name in fringe.get(site, []))
+            )
     return notes

@@ -11,7 +11,10 @@ from structmap.result import AnalysisRecord, MotionalUnit
 
 SHAPES = ("circle", "square", "triangle", "diamond", "circle", "square")
 _SUBSCRIPTS = (
-    (re.compile(r"(?<![\w-])(Δ?)R_?1[ _]?(?:rho|ρ)(?!\w|\.\w)", re.IGNORECASE), r"\1R_{1ρ}"),
+    (
+        re.compile(r"(?<![\w-])(Δ?)R_?1[ _]?(?:rho|ρ)(?!\w|\.\w)", re.IGNORECASE),
+        r"\1R_{1ρ}",
+    ),
     (re.compile(r"(?<![\w-])(Δ?)R_?([12])(?!\w|\.\w)"), r"\1R_{\2}"),
     (re.compile(r"\bk_?ex\b"), "k_{ex}"),
     (re.compile(r"\bK_?[dD]\b"), "K_{d}"),
@@ -94,7 +97,9 @@ def space_group_html(text: str) -> str:
     found = re.match(r"^([PABCFIRH](?: -?[0-9][0-9]?(?:/[a-z])?| [a-z])+)(?=,|$)", text)
     if not found:
         return rich_html(text)
-    parts = re.sub(r" (-?[2346])([1-5])(?![0-9])", r" \1<sub>\2</sub>", escape(found.group(1)))
+    parts = re.sub(
+        r" (-?[2346])([1-5])(?![0-9])", r" \1<sub>\2</sub>", escape(found.group(1))
+    )
     letter, rest = parts[0], parts[1:].replace(" ", "")
     return f"{letter}\u00a0{rest}{rich_html(text[found.end() :])}"
 
@@ -138,7 +143,7 @@ def unit_button(name: str, index: int) -> str:
     """
     return (
         f'<button type="button" class="unit" data-unit="{index}" aria-pressed="false">'
-        f"{mark_svg(index)}\u00a0{escape(name)}</button>"
+        f"{mark_svg(index)}{escape(name)}</button>"
     )
 
 
@@ -164,7 +169,8 @@ def mark_svg(index: int) -> str:
     }[shape]
     hollow = " hollow" if index >= len(SHAPES) else ""
     return (
-        f'<svg class="mark u{colour}{hollow}" viewBox="0 0 12 12" aria-hidden="true">{drawn}</svg>'
+        f'<svg class="mark u{colour}{hollow}" viewBox="0 0 12 12" aria-hidden="true">'
+        f"{drawn}</svg>"
     )
 
 
@@ -183,13 +189,17 @@ def units_rows(record: AnalysisRecord, listing: Listing) -> str:
     """
     if not record.units:
         return (
-            '<tr class="none"><th scope="row" colspan="5">No motional unit. Residues that move '
-            "stand in c and f.</th></tr>"
+            '<tr class="none"><th scope="row" colspan="5">No motional unit. Residues '
+            "that move stand in c and f.</th></tr>"
         )
-    return "".join(_unit_row(record, listing, i, unit) for i, unit in enumerate(record.units))
+    return "".join(
+        _unit_row(record, listing, i, unit) for i, unit in enumerate(record.units)
+    )
 
 
-def _unit_row(record: AnalysisRecord, listing: Listing, index: int, unit: MotionalUnit) -> str:
+def _unit_row(
+    record: AnalysisRecord, listing: Listing, index: int, unit: MotionalUnit
+) -> str:
     sure, holds = words.unit_sure(record, unit), words.unit_holds(record, unit)
     process = words.unit_process(record, unit)
     return (
@@ -212,7 +222,15 @@ def _operator_html(line: str) -> str:
     return rich_html(line)
 
 
-_FRACTIONS = {"1/2": "½", "1/3": "⅓", "2/3": "⅔", "1/4": "¼", "3/4": "¾", "1/6": "⅙", "5/6": "⅚"}
+_FRACTIONS = {
+    "1/2": "½",
+    "1/3": "⅓",
+    "2/3": "⅔",
+    "1/4": "¼",
+    "3/4": "¾",
+    "1/6": "⅙",
+    "5/6": "⅚",
+}
 
 
 def pretty_operator(triplet: str) -> str:
@@ -242,7 +260,8 @@ def _members(record: AnalysisRecord, listing: Listing, unit: MotionalUnit) -> st
     buttons = [
         " ".join(
             f'<button type="button" class="name" data-entry="{entry[int(site)]}" '
-            f'aria-pressed="false">{escape(words.site_name(record, int(site)))}</button>'
+            'aria-pressed="false">'
+            f"{escape(words.site_name(record, int(site)))}</button>"
             for site in sorted(piece)
         )
         for piece in pieces

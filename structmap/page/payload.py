@@ -43,7 +43,9 @@ def page_payload(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
         image["printed"] = pretty_operator(image["operator"])
     return {
         "version": __version__,
-        "id": (record.structure.entry_id or record.structure.name.split(".")[0]).lower(),
+        "id": (
+            record.structure.entry_id or record.structure.name.split(".")[0]
+        ).lower(),
         "crystal": record.structure.crystal is not None,
         "residues": _residues(record, listing, atoms),
         "entries": _entries(record, listing),
@@ -76,7 +78,9 @@ def plain(values: NDArray[Any], digits: int = 4) -> list[Any]:
     """
     if values.ndim > 1:
         return [plain(row, digits) for row in values]
-    return [float(f"{v:.{digits}g}") if np.isfinite(v) else None for v in values.tolist()]
+    return [
+        float(f"{v:.{digits}g}") if np.isfinite(v) else None for v in values.tolist()
+    ]
 
 
 def _spread(listing: Listing, values: NDArray[Any]) -> list[Any]:
@@ -85,7 +89,9 @@ def _spread(listing: Listing, values: NDArray[Any]) -> list[Any]:
     return [columns[row] if row >= 0 else None for row in listing.measured.tolist()]
 
 
-def _residues(record: AnalysisRecord, listing: Listing, atoms: scene.DrawnAtoms) -> dict[str, Any]:
+def _residues(
+    record: AnalysisRecord, listing: Listing, atoms: scene.DrawnAtoms
+) -> dict[str, Any]:
     structure, n_drawn = record.structure, len(listing.first)
     of_atom = structure.residue_of_atom[atoms.atom]
     return {
@@ -113,7 +119,9 @@ def _entries(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
         "insertion": structure.ins_code[residue].tolist(),
         "chain": structure.auth_asym_id[residue].tolist(),
         "atom": [str(record.sites.atom[s]) if s >= 0 else "" for s in site.tolist()],
-        "secondary": "".join(s or "-" for s in structure.secondary_structure[residue].tolist()),
+        "secondary": "".join(
+            s or "-" for s in structure.secondary_structure[residue].tolist()
+        ),
         "unit": units[site].tolist(),
         "membership": plain(membership[site], 3),
         "value": _spread(listing, behaviour.summary),
@@ -175,7 +183,9 @@ def _baseline_band(record: AnalysisRecord) -> list[float] | None:
         return None
     middle = np.median(quiet)
     error = np.median(behaviour.summary_error[~behaviour.moves])
-    spread = max(1.4826 * float(np.median(np.abs(quiet - middle))), float(np.nan_to_num(error)))
+    spread = max(
+        1.4826 * float(np.median(np.abs(quiet - middle))), float(np.nan_to_num(error))
+    )
     return [float(f"{middle - 2 * spread:.4g}"), float(f"{middle + 2 * spread:.4g}")]
 
 
@@ -196,22 +206,31 @@ def _other_columns(record: AnalysisRecord, listing: Listing) -> list[dict[str, A
         {
             "name": mark_text(q.name),
             "unit": mark_unit(q.unit),
-            "value": [v if r >= 0 else None for v, r in zip(plain(q.value[row, 0]), row, strict=True)],
+            "value": [
+                v if r >= 0 else None
+                for v, r in zip(plain(q.value[row, 0]), row, strict=True)
+            ],
         }
         for q in single[:4]
     ]
 
 
-def _unit(record: AnalysisRecord, listing: Listing, unit: MotionalUnit) -> dict[str, Any]:
+def _unit(
+    record: AnalysisRecord, listing: Listing, unit: MotionalUnit
+) -> dict[str, Any]:
     entry = {int(site): index for index, site in enumerate(listing.site) if site >= 0}
     lattice = unit.lattice
     return {
         "name": unit.name,
         "members": [entry[int(site)] for site in unit.members],
-        "pieces": [[entry[int(s)] for s in piece] for piece in lattice.pieces_without_lattice],
+        "pieces": [
+            [entry[int(s)] for s in piece] for piece in lattice.pieces_without_lattice
+        ],
         "verdict": unit.verdict,
         "lattice": lattice.verdict,
-        "contacts": lattice.contacts.tolist() if lattice.verdict.startswith("lattice") else [],
+        "contacts": lattice.contacts.tolist()
+        if lattice.verdict.startswith("lattice")
+        else [],
         "numerals": list(words.joining_numerals(record, unit)),
         "sure": list(words.unit_sure(record, unit)),
         "holds": [mark_text(line) for line in words.unit_holds(record, unit)],
@@ -221,14 +240,18 @@ def _unit(record: AnalysisRecord, listing: Listing, unit: MotionalUnit) -> dict[
     }
 
 
-def _copies(record: AnalysisRecord, listing: Listing, atoms: scene.DrawnAtoms) -> dict[str, Any]:
+def _copies(
+    record: AnalysisRecord, listing: Listing, atoms: scene.DrawnAtoms
+) -> dict[str, Any]:
     """Return a bead for each copy of each measured entry: entry, residue, atom."""
     entry = {int(site): i for i, site in enumerate(listing.site) if site >= 0}
     sites, structure = record.sites, record.structure
     place = {int(a): i for i, a in enumerate(atoms.atom)}
     beads: dict[str, list[int]] = {"entry": [], "residue": [], "atom": []}
     measured = set(record.measurements.site.tolist())
-    for site, residue in zip(sites.copy_site.tolist(), sites.copy_residue.tolist(), strict=True):
+    for site, residue in zip(
+        sites.copy_site.tolist(), sites.copy_residue.tolist(), strict=True
+    ):
         if site in measured and site in entry:
             beads["entry"].append(entry[site])
             beads["residue"].append(residue)
@@ -240,7 +263,9 @@ def _copies(record: AnalysisRecord, listing: Listing, atoms: scene.DrawnAtoms) -
 def _named_atom(structure: Any, residue: int, name: str) -> int:
     if not name:
         return -1
-    found = np.flatnonzero((structure.residue_of_atom == residue) & (structure.atom_name == name))
+    found = np.flatnonzero(
+        (structure.residue_of_atom == residue) & (structure.atom_name == name)
+    )
     return int(found[0]) if len(found) else -1
 
 
@@ -262,7 +287,12 @@ def _profile(record: AnalysisRecord, listing: Listing) -> dict[str, Any] | None:
         "x": plain(x, 6),
         "xName": mark_text(_x_name(record, quantity)),
         "xUnit": mark_unit(x_unit),
-        "log": bool(len(x) and x[0] > 0 and x[-1] / x[0] > LOG_WHEN_WIDER_THAN and factor_is_field(quantity)),
+        "log": bool(
+            len(x)
+            and x[0] > 0
+            and x[-1] / x[0] > LOG_WHEN_WIDER_THAN
+            and factor_is_field(quantity)
+        ),
         "kept": [bool(k) for k in kept],
         "reason": list(reasons),
         "value": _spread(listing, quantity.value[row]),
@@ -311,7 +341,10 @@ def factor_is_field(quantity: Quantity) -> bool:
 
 
 def _x_scale(quantity: Quantity) -> tuple[float, str]:
-    if quantity.x_unit.strip().lower() == "hz" and quantity.x.max(initial=0) > KILO_ABOVE_HERTZ:
+    if (
+        quantity.x_unit.strip().lower() == "hz"
+        and quantity.x.max(initial=0) > KILO_ABOVE_HERTZ
+    ):
         return 1e-3, "kHz"
     return 1.0, quantity.x_unit
 
@@ -329,7 +362,9 @@ def _above_baseline(record: AnalysisRecord, quantity: Quantity) -> NDArray[np.fl
     above[:, kept] = measurements.value - behaviour.background
     lead = np.nanmean(raw[:, kept] - measurements.value, axis=1, keepdims=True)
     aligned = raw[:, ~kept] - lead
-    quiet = ~behaviour.moves if (~behaviour.moves).any() else np.ones(len(raw), dtype=bool)
+    quiet = (
+        ~behaviour.moves if (~behaviour.moves).any() else np.ones(len(raw), dtype=bool)
+    )
     if aligned.size:
         above[:, ~kept] = aligned - np.nanmedian(aligned[quiet], axis=0)
     above[np.isnan(raw)] = np.nan

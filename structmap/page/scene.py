@@ -59,11 +59,15 @@ def choose_atoms(record: AnalysisRecord, listing: Listing) -> DrawnAtoms:
     """
     structure, n_drawn = record.structure, len(listing.first)
     polymer = structure.kind_of_residue == POLYMER
-    wanted = polymer[structure.residue_of_atom] & (structure.model_of_atom == _model(structure))
+    wanted = polymer[structure.residue_of_atom] & (
+        structure.model_of_atom == _model(structure)
+    )
     wanted &= _first_conformation(structure)
     if wanted.sum() > WHOLE_UP_TO_ATOMS:
         whole = np.isin(structure.residue_of_atom, _close_up_residues(record))
-        whole |= np.isin(structure.atom_name, sorted({str(a) for a in record.sites.atom} - {""}))
+        whole |= np.isin(
+            structure.atom_name, sorted({str(a) for a in record.sites.atom} - {""})
+        )
         wanted &= np.isin(structure.atom_name, BACKBONE) | whole
     atom = np.flatnonzero(wanted)
     return DrawnAtoms(atom=atom, anchor=_anchors(structure, atom, n_drawn))
@@ -75,7 +79,9 @@ def _model(structure: Structure) -> int:
 
 def _first_conformation(structure: Structure) -> NDArray[np.bool_]:
     """Keep of each atom name in a residue the first alternate conformation."""
-    keys = np.char.add(structure.residue_of_atom.astype(str), structure.atom_name.astype(str))
+    keys = np.char.add(
+        structure.residue_of_atom.astype(str), structure.atom_name.astype(str)
+    )
     keys = np.char.add(keys, np.char.add("/", structure.model_of_atom.astype(str)))
     keep = np.zeros(len(keys), dtype=bool)
     keep[np.unique(keys, return_index=True)[1]] = True
@@ -97,7 +103,9 @@ def _close_up_residues(record: AnalysisRecord) -> NDArray[np.int64]:
     return np.unique(np.concatenate([own, partners]))
 
 
-def _anchors(structure: Structure, atom: NDArray[np.int64], n_drawn: int) -> NDArray[np.int64]:
+def _anchors(
+    structure: Structure, atom: NDArray[np.int64], n_drawn: int
+) -> NDArray[np.int64]:
     residue, name = structure.residue_of_atom[atom], structure.atom_name[atom]
     anchor = np.full(n_drawn, -1)
     places = np.arange(len(atom))[::-1]
@@ -146,14 +154,17 @@ def _as_pdb(structure: Structure, atoms: DrawnAtoms) -> str:
     chains = structure.copy_of_residue[residues]
     lines = []
     for serial, (atom, residue, chain) in enumerate(
-        zip(atoms.atom.tolist(), residues.tolist(), chains.tolist(), strict=True), start=1
+        zip(atoms.atom.tolist(), residues.tolist(), chains.tolist(), strict=True),
+        start=1,
     ):
-        name = "".join(c for c in str(structure.atom_name[atom]) if c.isalnum() or c in "'*")
+        name = "".join(
+            c for c in str(structure.atom_name[atom]) if c.isalnum() or c in "'*"
+        )
         element = "".join(c for c in str(structure.element[atom]) if c.isalpha())[:2]
         x, y, z = structure.position[atom]
         lines.append(
-            f"ATOM  {serial % 100000:5d} {name[:4]:>4s} RES {_letter(chain)}{residue % 10000:4d}"
-            f"    {x:8.3f}{y:8.3f}{z:8.3f}{'':22s}{element:>2s}"
+            f"ATOM  {serial % 100000:5d} {name[:4]:>4s} RES "
+            f"{_letter(chain)}{residue % 10000:4d}    {x:8.3f}{y:8.3f}{z:8.3f}{'':22s}{element:>2s}"
         )
     return "\n".join(lines)
 
@@ -268,7 +279,9 @@ def image_residues(
     """
     structure, contacts = record.structure, record.contacts
     n_drawn = len(atoms.anchor)
-    large = np.count_nonzero(structure.kind_of_residue[structure.residue_of_atom] == POLYMER)
+    large = np.count_nonzero(
+        structure.kind_of_residue[structure.residue_of_atom] == POLYMER
+    )
     tree = None
     if large > WHOLE_UP_TO_ATOMS:
         tree = cKDTree(anchor_positions(structure, atoms))
@@ -283,8 +296,13 @@ def image_residues(
         chains = np.unique(structure.copy_of_residue[touching])
         keep = np.isin(structure.copy_of_residue[:n_drawn], chains)
         if tree is not None:
-            moved = anchor_positions(structure, atoms) @ matrix[:3, :3].T + matrix[:3, 3]
-            keep &= tree.query(moved, distance_upper_bound=NEIGHBOUR_REACH_ANGSTROM)[0] < np.inf
+            moved = (
+                anchor_positions(structure, atoms) @ matrix[:3, :3].T + matrix[:3, 3]
+            )
+            keep &= (
+                tree.query(moved, distance_upper_bound=NEIGHBOUR_REACH_ANGSTROM)[0]
+                < np.inf
+            )
         drawn.append(_ranges(keep))
     return drawn
 
@@ -306,7 +324,9 @@ def anchor_positions(structure: Structure, atoms: DrawnAtoms) -> NDArray[np.floa
 
 
 def _ranges(keep: NDArray[np.bool_]) -> list[tuple[int, int]]:
-    edges = np.flatnonzero(np.diff(np.concatenate([[False], keep, [False]]).astype(int)))
+    edges = np.flatnonzero(
+        np.diff(np.concatenate([[False], keep, [False]]).astype(int))
+    )
     return [(int(a), int(b)) for a, b in list(pairwise(edges))[::2]]
 
 
@@ -375,7 +395,9 @@ def contacts_payload(record: AnalysisRecord, images: Images) -> dict[str, Any]:
         "kind": contacts.kind.tolist(),
         "distance": np.round(contacts.distance_angstrom, 2).tolist(),
         "image": images.of_contact.tolist(),
-        "numeral": [numerals[n] if n >= 0 else "" for n in numbered.of_contact.tolist()],
+        "numeral": [
+            numerals[n] if n >= 0 else "" for n in numbered.of_contact.tolist()
+        ],
         "atomA": structure.atom_name[contacts.atom_1].tolist(),
         "atomB": structure.atom_name[contacts.atom_2].tolist(),
         "complex": COMPLEX,

@@ -15,7 +15,7 @@ COVERING_ANGSTROM = 2.5
 SEEN_AT_MOST, MEMBERS_AT_MOST = 800, 60
 
 
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True)
 class OpeningView:
     """Where one looks from.
 
@@ -38,8 +38,10 @@ class OpeningView:
     depth: float
 
 
-def opening_view(record: AnalysisRecord, atoms: DrawnAtoms, images: Images) -> OpeningView:
-    """Return the view that shows the units with least covered, the crystal from the side.
+def opening_view(
+    record: AnalysisRecord, atoms: DrawnAtoms, images: Images
+) -> OpeningView:
+    """Return the view that shows units with least covered, the crystal from aside.
 
     The horizontal axis runs between the two images of the operator that joins the first
     lattice-joined unit, else along the longest axis of the molecule; of 72 turns about
@@ -82,7 +84,7 @@ def _short(number: float) -> float:
 
 
 def _joining_images(record: AnalysisRecord, images: Images) -> list[int]:
-    """Return the images that join the first unit held by the crystal, the main ones first."""
+    """Return the two main images that join the first unit held by the crystal."""
     for unit in record.units:
         contacts = unit.lattice.contacts
         if unit.lattice.verdict.startswith("lattice") and len(contacts):
@@ -99,7 +101,10 @@ def _horizontal_axis(
 ) -> NDArray[np.float64]:
     middle = molecule.mean(axis=0)
     if joining and joining[1] >= 0:
-        ends = [images.matrices[i][:3, :3] @ middle + images.matrices[i][:3, 3] for i in joining]
+        ends = [
+            images.matrices[i][:3, :3] @ middle + images.matrices[i][:3, 3]
+            for i in joining
+        ]
         axis = ends[1] - ends[0]
         if np.linalg.norm(axis) < 1.0:
             axis = ends[0] - middle
@@ -130,7 +135,9 @@ def _joined_members(
             ):
                 if image >= 0:
                     matrix = images.matrices[image]
-                    found.append((matrix[:3, :3] @ positions[residue] + matrix[:3, 3])[None])
+                    found.append(
+                        (matrix[:3, :3] @ positions[residue] + matrix[:3, 3])[None]
+                    )
     return np.concatenate(found)
 
 
@@ -171,7 +178,9 @@ def _frame(axis: NDArray[np.float64], angle: float) -> NDArray[np.float64]:
 
 
 def _share_covered(
-    framed: NDArray[np.float64], members: NDArray[np.float64], frame: NDArray[np.float64]
+    framed: NDArray[np.float64],
+    members: NDArray[np.float64],
+    frame: NDArray[np.float64],
 ) -> float:
     """Return how many beads on average stand close in front of a unit's member."""
     if not len(members):
