@@ -2,15 +2,25 @@
 
 from structmap.analysis.compute import analyse_table
 from structmap.analysis.handle import Analysis, analyse, analyse_example, example_folder
-from structmap.analysis.jobs import list_contacts, match_notes, match_numbering
+from structmap.analysis.jobs import (
+    compare_analyses,
+    judge_table,
+    list_contacts,
+    match_notes,
+    match_numbering,
+    perturb_shifts,
+)
 
 __all__ = [
     "Analysis",
     "analyse",
     "analyse_example",
     "analyse_table",
+    "compare_analyses",
     "example_folder",
+    "judge_table",
     "list_contacts",
     "match_notes",
     "match_numbering",
+    "perturb_shifts",
 ]

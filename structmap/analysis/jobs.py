@@ -3,6 +3,8 @@
 from collections.abc import Sequence
 from pathlib import Path
 
+import numpy as np
+
 from structmap.analysis.steps import (
     Progress,
     cutoff_of,
@@ -11,10 +13,21 @@ from structmap.analysis.steps import (
 )
 from structmap.chemistry import find_chemistry
 from structmap.contacts import KINDS, choose_assemblies, find_contacts
+from structmap.errors import SettingError
+from structmap.files import write_folder
+from structmap.forms import compare_folders
+from structmap.one_process import (
+    ONE_PROCESS_COLUMNS,
+    analyse_table,
+    plain_words,
+    spinning_conditions,
+    table_rows,
+)
 from structmap.settings import Settings
+from structmap.shifts import compare_shifts, perturbation_rows
 from structmap.sites import Sites, match_rows
 from structmap.structure import read_structure
-from structmap.tables import Table, contacts_table
+from structmap.tables import Table, contacts_table, table_text
 from structmap.values import read_values
 
 
@@ -122,3 +135,108 @@ def list_contacts(
     chemistry = find_chemistry(structure, found, assemblies=assemblies).text
     table = contacts_table(structure, found, chemistry=chemistry)
     return table, (*notes, *structure.warnings)
+
+
+def judge_table(
+    values: Sequence[Path | str], settings: Settings
+) -> tuple[Table, tuple[str, ...]]:
+    """Test whether one process explains the groups of a table of profiles.
+
+    Parameters
+    ----------
+    values : sequence of Path or str
+        Tables; a column ``group`` parts the sites, else all are one group.
+    settings : Settings
+        Name the model and its conditions.
+
+    Returns
+    -------
+    table : Table
+        As ``one_process.csv``.
+    notes : tuple of str
+        The verdicts in sentences.
+
+    Raises
+    ------
+    StructmapError
+        If a file cannot be used, or the model is unknown or lacks a condition.
+    """
+    if not settings.model:
+        raise SettingError("options", "model", "is not given", "name one with --model")
+    found = analyse_table(
+        read_values([Path(path) for path in values], columns=settings.columns),
+        settings.model,
+        rng=np.random.default_rng(settings.seed),
+        conditions=spinning_conditions(
+            mas_rate_hertz=settings.mas_rate_hertz,
+            proton_frequency_megahertz=settings.proton_frequency_megahertz,
+            sample=settings.sample,
+        ),
+        quantity=settings.quantity[0] if settings.quantity else "",
+    )
+    rows = tuple(tuple(row.values()) for row in table_rows(found))
+    notes = tuple(f"{one.group}: {' '.join(plain_words(one))}" for one in found)
+    return Table(columns=ONE_PROCESS_COLUMNS, rows=rows), notes
+
+
+def perturb_shifts(
+    lists: Sequence[Path | str],
+) -> tuple[Table, tuple[str, ...]]:
+    """Turn two or more shift lists into a perturbation of each residue.
+
+    Parameters
+    ----------
+    lists : sequence of Path or str
+        The list to start from, then the others in order.
+
+    Returns
+    -------
+    table : Table
+        One that `analyse` reads.
+    notes : tuple of str
+        Threshold, lost and doubled peaks.
+
+    Raises
+    ------
+    StructmapError
+        If a file cannot be used or no residue stands in two lists.
+    """
+    comparison = compare_shifts([read_values([Path(path)]) for path in lists])
+    rows = perturbation_rows(comparison)
+    columns = tuple(rows[0])
+    cells = tuple(tuple(row.values()) for row in rows)
+    return Table(columns=columns, rows=cells), comparison.notes
+
+
+def compare_analyses(folders: Sequence[Path], output: Path) -> tuple[str, ...]:
+    """Hold the units of one analysis against other forms of the same protein.
+
+    Parameters
+    ----------
+    folders : sequence of Path
+        Folders of analyses; the form that was measured first.
+    output : Path
+        Folder for ``forms.csv`` and ``contacts_between_forms.csv``.
+
+    Returns
+    -------
+    tuple of str
+        One line a unit.
+
+    Raises
+    ------
+    StructmapError
+        If a folder is not one of an analysis or holds another protein.
+    """
+    found = compare_folders(folders)
+    write_folder(
+        output,
+        {
+            "forms.csv": table_text(found.forms_table),
+            "contacts_between_forms.csv": table_text(found.contacts_table),
+        },
+    )
+    return tuple(
+        f"{unit.name}: {verdict}"
+        for unit, verdict in zip(found.units, found.verdicts, strict=True)
+    )
