@@ -91,7 +91,7 @@ def test_hexagonal_and_rhombohedral_axes_are_one_lattice():
 def test_two_cells_of_centred_monoclinic():
     """C- and I-centred cells of one lattice, a' = a + c and c' = -c.
 
-    (a + b) / 2 = (a' + b + c') / 2, so the point that centres the face centres the body.
+    (a + b) / 2 is (a' + b + c') / 2: the point that centres the face centres the body.
     """
     a, b, c, beta = 50.35, 24.78, 34.75, 101.7
     axes = np.array(gemmi.UnitCell(a, b, c, 90, beta, 90).orth.mat.tolist())

@@ -216,7 +216,7 @@ def _front(
     known = np.zeros((0, 0))
     if parent_front is not None:
         above = blocks.rows[int(blocks.parent[block])]
-        chosen = np.searchsorted(above, rows[width:])
+        chosen = above.searchsorted(rows[width:])
         known = parent_front[chosen[:, None], chosen]
     if width == 1:
         first = lower.indptr[start]
