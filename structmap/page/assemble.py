@@ -47,6 +47,7 @@ def page_html(record: AnalysisRecord) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

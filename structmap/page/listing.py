@@ -44,6 +44,7 @@ def list_entries(record: AnalysisRecord) -> Listing:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -118,6 +119,7 @@ def residue_names(record: AnalysisRecord, n_drawn: int) -> list[str]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     n_drawn : int
         Number of polymer residues, which come first.
 
@@ -142,7 +144,9 @@ def entry_names(record: AnalysisRecord, listing: Listing) -> list[str]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     listing : Listing
+        Residues that the page lists.
 
     Returns
     -------
@@ -166,7 +170,9 @@ def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     listing : Listing
+        Residues that the page lists.
 
     Returns
     -------

@@ -31,6 +31,7 @@ def mark_text(text: str) -> str:
     Parameters
     ----------
     text : str
+        Plain text.
 
     Returns
     -------
@@ -112,6 +113,7 @@ def with_unit_buttons(text: str, record: AnalysisRecord) -> str:
     text : str
         Plain text with unit names.
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -133,6 +135,7 @@ def unit_button(name: str, index: int) -> str:
     Parameters
     ----------
     name : str
+        Name of the unit.
     index : int
         From 0.
 
@@ -180,7 +183,9 @@ def units_rows(record: AnalysisRecord, listing: Listing) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     listing : Listing
+        Residues that the page lists.
 
     Returns
     -------
@@ -275,7 +280,9 @@ def sites_rows(record: AnalysisRecord, listing: Listing) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     listing : Listing
+        Residues that the page lists.
 
     Returns
     -------

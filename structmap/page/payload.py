@@ -28,7 +28,9 @@ def page_payload(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     listing : Listing
+        Residues that the page lists.
 
     Returns
     -------
@@ -68,6 +70,7 @@ def plain(values: NDArray[Any], digits: int = 4) -> list[Any]:
     Parameters
     ----------
     values : ndarray
+        Numbers.
     digits : int, optional
         Significant digits kept.
 
@@ -162,7 +165,9 @@ def _short_and_long_name(record: AnalysisRecord) -> tuple[str, str]:
     quantity = words.grouped_quantities(record)[0]
     measurements = record.measurements
     if not measurements.is_profile:
-        return mark_text(full), mark_text(full)
+        short = full.removesuffix(" less the baseline")
+        marked = mark_text(short if short == full else f"Δ{short}")
+        return marked, mark_text(full)
     what = {
         "shape": "span of the profile, from its first to its last quarter",
         "level": "level of the profile above the baseline of the molecule",
@@ -197,9 +202,9 @@ def _is_signed(record: AnalysisRecord) -> bool:
 
 
 def _other_columns(record: AnalysisRecord, listing: Listing) -> list[dict[str, Any]]:
-    """Return the quantities of one number a site, when there are several."""
+    """Return the quantities of one number a site, as they were measured."""
     single = [q for q in record.table.quantities if not len(q.x)]
-    if record.measurements.is_profile or len(single) < 2:
+    if record.measurements.is_profile:
         return []
     row = np.append(record.sites.row, -1)[listing.site]
     return [
@@ -331,6 +336,7 @@ def factor_is_field(quantity: Quantity) -> bool:
     Parameters
     ----------
     quantity : Quantity
+        Measured quantity.
 
     Returns
     -------

@@ -49,7 +49,9 @@ def choose_atoms(record: AnalysisRecord, listing: Listing) -> DrawnAtoms:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     listing : Listing
+        Residues that the page lists.
 
     Returns
     -------
@@ -127,7 +129,9 @@ def recorded_calls(structure: Structure, atoms: DrawnAtoms) -> list[list[Any]]:
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     atoms : DrawnAtoms
+        Atoms that the page carries.
 
     Returns
     -------
@@ -164,7 +168,8 @@ def _as_pdb(structure: Structure, atoms: DrawnAtoms) -> str:
         x, y, z = structure.position[atom]
         lines.append(
             f"ATOM  {serial % 100000:5d} {name[:4]:>4s} RES "
-            f"{_letter(chain)}{residue % 10000:4d}    {x:8.3f}{y:8.3f}{z:8.3f}{'':22s}{element:>2s}"
+            f"{_letter(chain)}{residue % 10000:4d}    {x:8.3f}{y:8.3f}{z:8.3f}"
+            f"{'':22s}{element:>2s}"
         )
     return "\n".join(lines)
 
@@ -203,6 +208,7 @@ def find_images(structure: Structure, contacts: Contacts) -> Images:
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     contacts : Contacts
         Of that structure.
 
@@ -268,8 +274,11 @@ def image_residues(
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     images : Images
+        Neighbours that touch the molecule.
     atoms : DrawnAtoms
+        Atoms that the page carries.
 
     Returns
     -------
@@ -313,7 +322,9 @@ def anchor_positions(structure: Structure, atoms: DrawnAtoms) -> NDArray[np.floa
     Parameters
     ----------
     structure : Structure
+        Coordinates as read.
     atoms : DrawnAtoms
+        Atoms that the page carries.
 
     Returns
     -------
@@ -338,7 +349,9 @@ def images_payload(
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     images : Images
+        Neighbours that touch the molecule.
     drawn : list of list of (int, int)
         Residues drawn of each.
 
@@ -379,7 +392,9 @@ def contacts_payload(record: AnalysisRecord, images: Images) -> dict[str, Any]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     images : Images
+        Neighbours that touch the molecule.
 
     Returns
     -------

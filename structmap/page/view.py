@@ -50,8 +50,11 @@ def opening_view(
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     atoms : DrawnAtoms
+        Atoms that the page carries.
     images : Images
+        Neighbours that touch the molecule.
 
     Returns
     -------
