@@ -5,16 +5,19 @@ from structmap.one_process.engine import fit_each, fit_group
 from structmap.one_process.mixture import Mixture, find_mixture
 from structmap.one_process.model import Model, Parameter
 from structmap.one_process.phrases import plain_words, show_interval
+from structmap.one_process.preparing import (
+    Prepared,
+    prepare_profiles,
+    site_names,
+    spinning_conditions,
+)
 from structmap.one_process.profiles import GroupFit, Profiles, make_profiles
 from structmap.one_process.reference import Reference
 from structmap.one_process.sharing import OneProcess, TestOptions, judge_group
 from structmap.one_process.tabular import (
     ONE_PROCESS_COLUMNS,
-    Prepared,
     analyse_table,
     judge_groups,
-    prepare_profiles,
-    spinning_conditions,
     table_rows,
 )
 
@@ -42,6 +45,7 @@ __all__ = [
     "plain_words",
     "prepare_profiles",
     "show_interval",
+    "site_names",
     "spinning_conditions",
     "table_rows",
 ]

@@ -16,6 +16,7 @@ _LEAST_REST = 1e-3
 _POWER = 0.8
 _RATIOS = 40
 _FEW_RATIOS = 16
+_MOST_ODD = 16
 _LARGEST_LOG_RATIO = np.log(100.0)
 
 
@@ -204,7 +205,8 @@ class Detectable:
         Ratio between two halves of the group; a difference for parameters searched on
         a linear scale; infinite beyond a ratio of 100.
     one_up, one_down : float
-        The same for one site that lies above, or below, the others; median over sites.
+        The same for one site that lies above, or below, the others; median over sites
+        (over 16 of them in larger groups).
     """
 
     split: float
@@ -251,8 +253,9 @@ def find_detectable(
         return _first_crossing(steps, power)
 
     found = [smallest(alternate, sizes)]
+    sample = np.unique(np.linspace(0, n_sites - 1, _MOST_ODD).astype(int))
     for side in (1.0, -1.0):
-        ones = [smallest(side * row, few) for row in np.eye(n_sites)]
+        ones = [smallest(side * np.eye(n_sites)[site], few) for site in sample]
         found.append(float(np.median(ones)))
     split, one_up, one_down = (np.exp(size) if logarithmic else size for size in found)
     return Detectable(

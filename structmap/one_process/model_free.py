@@ -152,14 +152,15 @@ def tumbling_model(
             raise ValueError(f"observables holds {name!r}; it must be R1 or R2")
 
     def function(x: FloatArray, tau: FloatArray) -> FloatArray:
+        time = np.asarray(tau, dtype=np.float64)
+        fields = sorted(set(proton_frequencies_megahertz))
+        by_field = [solution_rates(time, proton_frequency_megahertz=f) for f in fields]
         columns = []
-        for point in np.asarray(x, dtype=np.int64):
-            field = proton_frequencies_megahertz[point]
-            time = np.asarray(tau, dtype=np.float64)
-            rates = solution_rates(time, proton_frequency_megahertz=field)
-            part = rates.r1 if observables[point] == "R1" else rates.r2
+        for point, name in enumerate(observables):
+            rates = by_field[fields.index(proton_frequencies_megahertz[point])]
+            part = rates.r1 if name == "R1" else rates.r2
             columns.append(part[..., 0] if part.ndim else part)
-        return np.stack(columns, axis=-1)
+        return np.stack(columns, axis=-1)[..., np.asarray(x, dtype=np.int64)]
 
     return Model(
         name="model-free",

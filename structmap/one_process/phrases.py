@@ -5,6 +5,7 @@ import numpy as np
 from structmap.one_process.sharing import OneProcess
 
 _LIKELY = 0.2
+_NOTABLE = 1.5
 _PREFIXES = ((1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
 _SCALED_UNITS = ("s", "M")
 
@@ -86,6 +87,7 @@ def plain_words(result: OneProcess) -> tuple[str, ...]:
         sentences.append(f"{result.error_note[0].upper()}{result.error_note[1:]}.")
     if result.worst:
         sentences.append(f"Far off the fit: {'; '.join(result.worst)}.")
+    sentences.extend(result.notes)
     if result.descriptive:
         sentences.append(
             "The group was formed on the same profiles, so this describes it and "
@@ -101,12 +103,26 @@ def _verdict(result: OneProcess) -> str:
     if result.verdict == "distinct":
         return (
             f"One value does not explain these {n_used} sites "
-            f"(chance {result.p_distinct:.2g})."
+            f"(chance {result.p_distinct:.2g}){_scatter(result)}."
         )
     if result.verdict == "shared by a subset":
         apart = ", ".join(result.apart)
         return f"One value explains all but {apart}: {show_interval(result)}."
     return f"These data cannot tell ({result.reason}); {show_interval(result)}."
+
+
+def _scatter(result: OneProcess) -> str:
+    """Return how much wider than stated the values scatter about one value."""
+    fit = result.fit
+    if fit is None or fit.freedom_shared < 1:
+        return ""
+    reduced = fit.chi2_shared / fit.freedom_shared
+    if reduced < _NOTABLE:
+        return ""
+    return (
+        f": with one value they scatter {np.sqrt(reduced):.1f} times as widely as "
+        f"their stated errors allow (reduced chi-square {reduced:.1f})"
+    )
 
 
 def _resolution(result: OneProcess) -> str:

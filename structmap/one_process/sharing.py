@@ -1,7 +1,7 @@
 """The test whether one value of the parameter explains a group of sites."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
@@ -24,7 +24,7 @@ from structmap.one_process.reference import (
     find_reference_p,
     find_wild_points,
 )
-from structmap.one_process.search import to_axis
+from structmap.one_process.search import parabola_minimum, to_axis
 
 Verdict = Literal["shared", "distinct", "shared by a subset", "undetermined"]
 
@@ -110,6 +110,8 @@ class OneProcess:
         The verdict describes a group formed on the same profiles.
     points_left_out : tuple of str
         Reasons of points left out, one phrase a point.
+    notes : tuple of str
+        What else a reader must know, one sentence each.
     """
 
     group: str
@@ -137,7 +139,8 @@ class OneProcess:
     apart: tuple[str, ...] = ()
     worst: tuple[str, ...] = ()
     descriptive: bool = False
-    points_left_out: tuple[str, ...] = field(default=())
+    points_left_out: tuple[str, ...] = ()
+    notes: tuple[str, ...] = ()
 
     @property
     def p_distinct(self) -> float:
@@ -383,12 +386,10 @@ def _find_subset(
     while len(kept) > least:
         kept.remove(_oddest(solver.site_profile, kept))
         part = profiles.take(kept)
+        if _quick_chance(solver.site_profile[kept], part, model) < _CLEARLY_DISTINCT:
+            continue
         rest_solver = make_solver(model, part)
         fit = describe_fit(rest_solver)
-        freedom = Freedom(between=fit.freedom_between, within=fit.freedom_free)
-        quick = freedom.statistic(np.array(fit.chi2_shared), np.array(fit.chi2_free))
-        if freedom.chance(float(quick)) < _CLEARLY_DISTINCT:
-            continue
         rest = replace(tested, fit=fit, value=fit.shared, low=fit.low, high=fit.high)
         rest = _test_once(
             replace(rest, reason="", verdict="undetermined"),
@@ -409,6 +410,19 @@ def _find_subset(
                 detectable=rest.detectable,
             )
     return None
+
+
+def _quick_chance(table: FloatArray, profiles: Profiles, model: Model) -> float:
+    """Return the chance of a group by its misfits at the nodes and the tables of F."""
+    n_sites = len(table)
+    points = int(profiles.present.sum())
+    freedom = Freedom(
+        between=model.n_shared * (n_sites - 1),
+        within=points - (model.n_own + model.n_shared) * n_sites,
+    )
+    shared = parabola_minimum(table.sum(axis=0)[:, None])
+    free = parabola_minimum(table[..., None]).sum(axis=0)
+    return freedom.chance(float(freedom.statistic(shared, free)[0]))
 
 
 def _oddest(table: FloatArray, kept: Sequence[int]) -> int:

@@ -5,6 +5,7 @@ import csv
 import numpy as np
 import pytest
 
+from structmap.one_process import judge_group, plain_words
 from structmap.one_process.constants import (
     NITROGEN_GYROMAGNETIC,
     PROTON_GYROMAGNETIC,
@@ -91,6 +92,15 @@ def test_t4_lysozyme_has_no_single_tumbling_time_at_the_stated_errors(data_folde
     # An axially symmetric tensor still leaves 21.9 (README of the data set), and one
     # time without a tensor cannot do better.
     assert fit.chi2_shared / fit.freedom_shared > 20
+
+
+def test_the_verdict_on_t4_lysozyme_is_said_in_words(data_folder):
+    fit = fit_tumbling(read_t4_lysozyme(data_folder))
+    found = judge_group(fit.profiles, fit.model, rng=np.random.default_rng(1))
+    assert found.verdict == "distinct"
+    first = plain_words(found)[0]
+    assert first.startswith("One value does not explain these ")
+    assert "times as widely as their stated errors allow (reduced chi-square" in first
 
 
 def test_trp_repressor_tumbles_with_the_known_time(data_folder):

@@ -1,6 +1,7 @@
 """From tables to verdicts: groups, units of x, errors, points left out."""
 
 import pickle
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -22,6 +23,7 @@ from structmap.one_process import (
     table_rows,
 )
 from structmap.one_process.reference import adjust_by_holm
+from structmap.one_process.tabular import compare_choices
 from structmap.values import Quantity, ValueTable
 from tests.one_process.demo import FIELDS, make_blocks
 
@@ -260,6 +262,29 @@ def test_faults_name_place_and_remedy(spoil, error, message):
     with pytest.raises(error, match=message) as caught:
         prepare_profiles(spoiled, name, conditions=conditions)
     assert str(pickle.loads(pickle.dumps(caught.value))) == str(caught.value)
+
+
+def test_coupling_between_protons_is_tried_both_ways():
+    proton = Conditions(experiment=replace(SPINNING.experiment, nucleus="1H"))
+    results = analyse_table(
+        spinning_table(group=True),
+        "mas-r1rho",
+        rng=np.random.default_rng(1),
+        conditions=proton,
+        options=FAST,
+    )
+    for result in results:
+        told = [note for note in result.notes if "coupling between protons" in note]
+        assert len(told) in (0, 1)
+    alone = replace(results[0], verdict="shared")
+    other = replace(results[0], verdict="distinct")
+    said = compare_choices(alone, other, with_pairs=True).notes[-1]
+    assert said.endswith("shared with it, distinct without.")
+
+
+def test_share_of_the_shift_anisotropy_is_told():
+    prepared = prepare_profiles(spinning_table(), "mas-r1rho", conditions=SPINNING)
+    assert prepared.notes[-1].startswith("Shift anisotropy gives 27 % of the rate")
 
 
 def test_every_model_of_the_catalogue_can_be_made():
