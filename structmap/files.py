@@ -56,6 +56,7 @@ def write_file(path: Path, content: str | bytes) -> None:
     path : Path
         Replaced when it exists; its folder must exist.
     content : str or bytes
+        What to write.
 
     Raises
     ------

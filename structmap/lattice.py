@@ -84,7 +84,9 @@ def judge_lattice(
     graph : SiteGraph
         Which sites touch within the cutoff.
     structure : Structure
+        The coordinates.
     sites : Sites
+        The measured sites.
     contacts : Contacts
         All contacts within the cutoff.
     assemblies : sequence of Assembly
@@ -200,7 +202,9 @@ def joining_distances(
     members : ndarray of int, shape (n_members,)
         Indices of sites.
     structure : Structure
+        The coordinates.
     sites : Sites
+        The measured sites.
     assemblies : sequence of Assembly
         Assemblies whose contacts are complex.
 
@@ -320,6 +324,7 @@ def number_crystal_contacts(
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     contacts : Contacts
         Of that structure.
 
@@ -364,6 +369,7 @@ def inverse_element(crystal: Crystal, key: NDArray[np.int64]) -> tuple[int, ...]
     Parameters
     ----------
     crystal : Crystal
+        The cell and its symmetry.
     key : ndarray of int, shape (4,)
         Operator index and shift.
 
@@ -397,6 +403,7 @@ def element_text(crystal: Crystal, key: Sequence[int] | NDArray[np.int64]) -> st
     Parameters
     ----------
     crystal : Crystal
+        The cell and its symmetry.
     key : sequence of int
         Operator index and the three shifts.
 

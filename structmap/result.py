@@ -39,6 +39,7 @@ class MotionalUnit:
     fringe : ndarray of int, shape (n_fringe,)
         Sites outside it that often belong.
     lattice : LatticeVerdict
+        What holds it together.
     """
 
     name: str
@@ -65,15 +66,23 @@ class AnalysisRecord:
     Attributes
     ----------
     settings : Settings
+        Every choice of the analysis.
     structure : Structure
+        The coordinates.
     table : ValueTable
+        The measured values.
     sites : Sites
+        The measured sites.
     contacts : Contacts
         All contacts of polymer residues within the cutoff, measured or not.
     graph : SiteGraph
+        Which sites touch.
     measurements : Measurements
+        What is compared.
     behaviour : Behaviour
+        Baseline, error scale, who moves.
     units : tuple of MotionalUnit
+        The motional units by falling energy.
     membership_probability : ndarray of float, shape (n_sites,)
         Largest over units; NaN where not computed or none overlaps.
     chemistry : ndarray of str, shape (n_contacts,)
@@ -108,11 +117,28 @@ class AnalysisRecord:
         )
 
     def process_of(self, unit: MotionalUnit) -> OneProcess | None:
-        """Return whether one process explains a unit; None when it was not asked."""
+        """Return whether one process explains a unit.
+
+        Parameters
+        ----------
+        unit : MotionalUnit
+            One of the units.
+
+        Returns
+        -------
+        OneProcess or None
+            None when it was not asked.
+        """
         return next((p for p in self.processes if p.group == unit.name), None)
 
     def unit_of_site(self) -> NDArray[np.int64]:
-        """Return for each site the index of its unit, -1 for none."""
+        """Return the unit of each site.
+
+        Returns
+        -------
+        ndarray of int, shape (n_sites,)
+            Index into the units, -1 for none.
+        """
         out = np.full(len(self.sites.name), -1)
         for index, unit in enumerate(self.units):
             out[unit.members] = index

@@ -46,9 +46,11 @@ def analyse_table(
     Parameters
     ----------
     coordinates : Path
-        mmCIF or PDB file.
+        A file in mmCIF or PDB format.
     table : ValueTable
+        The measured values.
     settings : Settings
+        Every choice of the analysis.
     progress : callable, optional
         Called with the name of a step and the share done.
 
@@ -63,17 +65,8 @@ def analyse_table(
         If the file cannot be used or the numbering cannot be reconciled.
     """
     tell = progress or say_nothing
-    tell("reading coordinates", 0.0)
-    structure = _with_secondary(
-        read_structure(coordinates, model=settings.coordinate_model)
-    )
-    tell("matching the numbering", 0.1)
-    sites = match_by_settings(structure, table, settings)
-    tell("finding contacts over the crystal", 0.2)
-    cutoff = cutoff_of(structure, settings)
-    assemblies = choose_assemblies(structure, settings.assembly)
-    contacts = find_contacts(structure, reach_angstrom=cutoff, assemblies=assemblies)
-    graph = make_site_graph(contacts, sites, cutoff_angstrom=cutoff)
+    crystal, cutoff = _surround(coordinates, table, settings, tell=tell)
+    structure, sites = crystal.structure, crystal.sites
     tell("finding motional units", 0.4)
     measurements = take_measurements(
         table,
@@ -85,17 +78,10 @@ def analyse_table(
     )
     search = find_motional_units(
         measurements,
-        graph,
+        crystal.graph,
         site_centres(structure, sites),
         direction=settings.direction,
         baseline=known_baseline(table, sites, measurements, settings),
-    )
-    crystal = Surroundings(
-        structure=structure,
-        sites=sites,
-        contacts=contacts,
-        graph=graph,
-        assemblies=assemblies,
     )
     # One child a step, in this order; a new step joins at the end.
     random_of_judging, random_of_process = np.random.default_rng(settings.seed).spawn(2)
@@ -119,14 +105,16 @@ def analyse_table(
         structure=structure,
         table=table,
         sites=sites,
-        contacts=contacts,
-        graph=graph,
+        contacts=crystal.contacts,
+        graph=crystal.graph,
         measurements=measurements,
         behaviour=search.behaviour,
         units=units,
         membership_probability=spread_membership(search, judgement, len(sites.name)),
-        chemistry=find_chemistry(structure, contacts, assemblies=assemblies).text,
-        exposure=find_exposure(structure, assemblies=assemblies),
+        chemistry=find_chemistry(
+            structure, crystal.contacts, assemblies=crystal.assemblies
+        ).text,
+        exposure=find_exposure(structure, assemblies=crystal.assemblies),
         processes=processes,
         warnings=list_cautions(search, measurements, judgement) if judgement else (),
     )
@@ -137,3 +125,29 @@ def _with_secondary(structure: Structure) -> Structure:
     if structure.has_secondary_structure:
         return structure
     return replace(structure, secondary_structure=assign_secondary_structure(structure))
+
+
+def _surround(
+    coordinates: Path, table: ValueTable, settings: Settings, *, tell: Progress
+) -> tuple[Surroundings, float]:
+    """Read, match, find the contacts; return them with the cutoff."""
+    tell("reading coordinates", 0.0)
+    structure = _with_secondary(
+        read_structure(coordinates, model=settings.coordinate_model)
+    )
+    tell("matching the numbering", 0.1)
+    sites = match_by_settings(structure, table, settings)
+    tell("finding contacts over the crystal", 0.2)
+    cutoff = cutoff_of(structure, settings)
+    assemblies = choose_assemblies(structure, settings.assembly)
+    contacts = find_contacts(structure, reach_angstrom=cutoff, assemblies=assemblies)
+    return (
+        Surroundings(
+            structure=structure,
+            sites=sites,
+            contacts=contacts,
+            graph=make_site_graph(contacts, sites, cutoff_angstrom=cutoff),
+            assemblies=assemblies,
+        ),
+        cutoff,
+    )

@@ -38,9 +38,13 @@ class Surroundings:
     Attributes
     ----------
     structure : Structure
+        The coordinates.
     sites : Sites
+        The measured sites.
     contacts : Contacts
+        The contacts.
     graph : SiteGraph
+        Which sites touch.
     assemblies : tuple of Assembly
         Those whose contacts are complex.
     """
@@ -58,6 +62,7 @@ def graphs_at_cutoffs(crystal: Surroundings, cutoff: float) -> tuple[SiteGraph, 
     Parameters
     ----------
     crystal : Surroundings
+        The cell and its symmetry.
     cutoff : float
         The chosen one in Å.
 
@@ -83,9 +88,13 @@ def known_baseline(
     Parameters
     ----------
     table : ValueTable
+        The measured values.
     sites : Sites
+        The measured sites.
     measurements : Measurements
+        What is compared.
     settings : Settings
+        Every choice of the analysis.
 
     Returns
     -------
@@ -131,9 +140,11 @@ def describe_units(
     Parameters
     ----------
     search : UnitSearch
+        What the search found.
     judgement : Judgement or None
         None when chance and stability were not tested.
     crystal : Surroundings
+        The cell and its symmetry.
 
     Returns
     -------
@@ -176,7 +187,9 @@ def spread_membership(
     Parameters
     ----------
     search : UnitSearch
+        What the search found.
     judgement : Judgement or None
+        None when chance and stability were not tested.
     n_sites : int
         Sites of the match.
 
@@ -204,8 +217,11 @@ def judge_processes(
     Parameters
     ----------
     table : ValueTable
+        The measured values.
     sites : Sites
+        The measured sites.
     units : tuple of MotionalUnit
+        What was found.
     settings : Settings
         Name the model and its conditions.
     rng : numpy.random.Generator

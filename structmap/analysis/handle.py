@@ -44,7 +44,9 @@ class Analysis:
     Attributes
     ----------
     record : AnalysisRecord
+        What the analysis found.
     coordinates : Path
+        Coordinate file.
     """
 
     def __init__(self, record: AnalysisRecord, coordinates: Path) -> None:
@@ -53,22 +55,46 @@ class Analysis:
 
     @property
     def sites(self) -> pd.DataFrame:
-        """A row for each measured site, as in ``sites.csv``."""
+        """A row for each measured site, as in ``sites.csv``.
+
+        Returns
+        -------
+        pandas.DataFrame
+            In the order of the file.
+        """
         return _frame(sites_table(self.record))
 
     @property
     def motional_units(self) -> pd.DataFrame:
-        """A row for each motional unit, as in ``motional_units.csv``."""
+        """A row for each motional unit, as in ``motional_units.csv``.
+
+        Returns
+        -------
+        pandas.DataFrame
+            By falling energy.
+        """
         return _frame(units_table(self.record))
 
     @property
     def contacts(self) -> pd.DataFrame:
-        """A row for each residue contact, as in ``contacts.csv``."""
+        """A row for each residue contact, as in ``contacts.csv``.
+
+        Returns
+        -------
+        pandas.DataFrame
+            Measured residues or not.
+        """
         return _frame(_contacts_of(self.record))
 
     @property
     def page(self) -> str:
-        """The whole page as HTML."""
+        """The whole page as HTML.
+
+        Returns
+        -------
+        str
+            One file that needs no network.
+        """
         return page_html(self.record)
 
     def summary(self, page: str = "page.html") -> str:
@@ -151,7 +177,7 @@ def analyse(
     Parameters
     ----------
     coordinates : Path or str
-        mmCIF or PDB file, gzipped or not.
+        A file in mmCIF or PDB format, gzipped or not.
     values : Path or str, or sequence of them
         Tables of measured values, joined by site.
     settings : Settings, optional

@@ -41,8 +41,11 @@ def match_numbering(
     Parameters
     ----------
     coordinates : Path or str
+        Coordinate file.
     values : Path or str, or sequence of them
+        Tables of values.
     settings : Settings
+        Every choice of the analysis.
 
     Returns
     -------
@@ -72,6 +75,7 @@ def match_notes(sites: Sites) -> tuple[str, ...]:
     Parameters
     ----------
     sites : Sites
+        The measured sites.
 
     Returns
     -------
@@ -98,7 +102,9 @@ def list_contacts(
     Parameters
     ----------
     coordinates : Path or str
+        Coordinate file.
     settings : Settings
+        Every choice of the analysis.
     progress : callable, optional
         Called with the name of a step and the share done.
 

@@ -19,7 +19,9 @@ def say_nothing(step: str, share: float) -> None:
     Parameters
     ----------
     step : str
+        Name of the step.
     share : float
+        Share done.
     """
     del step, share
 
@@ -32,8 +34,11 @@ def match_by_settings(
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     table : ValueTable
+        The measured values.
     settings : Settings
+        Every choice of the analysis.
 
     Returns
     -------
@@ -61,7 +66,9 @@ def cutoff_of(structure: Structure, settings: Settings) -> float:
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     settings : Settings
+        Every choice of the analysis.
 
     Returns
     -------
@@ -81,7 +88,9 @@ def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
     Parameters
     ----------
     table : ValueTable
+        The measured values.
     settings : Settings
+        Every choice of the analysis.
 
     Returns
     -------

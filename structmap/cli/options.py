@@ -16,6 +16,7 @@ def add_settings(command: Any, names: Sequence[str]) -> None:
     Parameters
     ----------
     command : argparse.ArgumentParser
+        The parser of the command.
     names : sequence of str
         Names of settings.
     """
@@ -60,7 +61,15 @@ def _shown(value: Any) -> str:
 
 
 class ShowSettings(argparse.Action):
-    """Print all settings and end, as ``--version`` does."""
+    """Print all settings and end, as ``--version`` does.
+
+    Parameters
+    ----------
+    option_strings : sequence of str
+        The option as it is written.
+    **more : object
+        What argparse hands on.
+    """
 
     def __init__(self, option_strings: Sequence[str], **more: Any) -> None:
         more["nargs"] = 0
@@ -79,12 +88,14 @@ def settings_of(call: argparse.Namespace, **more: Any) -> Settings:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     **more : object
         Settings that come before both.
 
     Returns
     -------
     Settings
+        Checked.
 
     Raises
     ------

@@ -15,6 +15,7 @@ def run_analyse(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     settings = settings_of(call)
     check_output(call.output, [call.coordinates, *call.values])
@@ -33,6 +34,7 @@ def run_example(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     check_output(call.output, [])
     from structmap.analysis import analyse_example
@@ -48,6 +50,7 @@ def run_match(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     settings = settings_of(call)
     from structmap.analysis import match_numbering
@@ -69,6 +72,7 @@ def run_contacts(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     settings = settings_of(call)
     from structmap.analysis import list_contacts
@@ -87,6 +91,7 @@ def run_one_process(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     settings = settings_of(call)
     from structmap.analysis import judge_table
@@ -110,6 +115,7 @@ def run_shifts(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     from structmap.analysis import perturb_shifts
     from structmap.files import write_file
@@ -126,6 +132,7 @@ def run_compare(call: argparse.Namespace) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     """
     check_output(call.output, [])
     from structmap.analysis import compare_analyses
@@ -142,7 +149,9 @@ def check_output(folder: Path, inputs: Sequence[Path]) -> None:
     Parameters
     ----------
     folder : Path
+        The folder.
     inputs : sequence of Path
+        Input files.
 
     Raises
     ------
@@ -164,7 +173,9 @@ def say(call: argparse.Namespace, text: str) -> None:
     Parameters
     ----------
     call : argparse.Namespace
+        The words of the call.
     text : str
+        What to say.
     """
     if not call.quiet and text:
         print(text)

@@ -15,6 +15,7 @@ def site_identity(record: AnalysisRecord, site: int) -> tuple[Cell, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     site : int
         Index of a site.
 
@@ -52,6 +53,7 @@ def residue_text(structure: Structure, residue: int) -> str:
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     residue : int
         Index of a residue.
 
@@ -72,6 +74,7 @@ def spread_over_sites(
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     values : ndarray, shape (n,)
         One for each compared site.
 

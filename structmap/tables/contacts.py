@@ -18,6 +18,7 @@ def contacts_table(
     Parameters
     ----------
     structure : Structure
+        The coordinates.
     contacts : Contacts
         Of that structure.
     chemistry : ndarray of str, shape (n_contacts,)

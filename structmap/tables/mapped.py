@@ -22,6 +22,7 @@ def mapped_coordinates(record: AnalysisRecord, coordinates: Path) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     coordinates : Path
         The file that was analysed.
 

@@ -17,6 +17,7 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     notes : iterable of str
         What else to keep.
 

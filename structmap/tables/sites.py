@@ -16,6 +16,7 @@ def sites_table(record: AnalysisRecord) -> Table:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

@@ -29,6 +29,7 @@ def table_text(table: Table) -> str:
     Parameters
     ----------
     table : Table
+        The measured values.
 
     Returns
     -------
@@ -45,6 +46,7 @@ def cell_text(cell: Cell) -> str:
     Parameters
     ----------
     cell : str, int, float, bool or None
+        The cell.
 
     Returns
     -------
@@ -69,6 +71,7 @@ def plain(text: str) -> str:
     Parameters
     ----------
     text : str
+        What to say.
 
     Returns
     -------

@@ -12,6 +12,7 @@ def units_table(record: AnalysisRecord) -> Table:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -74,6 +75,7 @@ def processes_table(record: AnalysisRecord) -> Table:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

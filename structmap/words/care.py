@@ -17,6 +17,7 @@ def care_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

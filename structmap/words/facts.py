@@ -14,6 +14,7 @@ def facts(record: AnalysisRecord) -> tuple[tuple[str, tuple[str, ...]], ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

@@ -19,6 +19,7 @@ def title(record: AnalysisRecord) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -42,6 +43,7 @@ def grouped_quantities(record: AnalysisRecord) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -70,6 +72,7 @@ def result_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

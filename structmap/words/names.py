@@ -37,6 +37,7 @@ def site_name(record: AnalysisRecord, site: int) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     site : int
         Index of a site.
 
@@ -68,6 +69,7 @@ def measured_chains(record: AnalysisRecord) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -85,6 +87,7 @@ def listing(parts: Iterable[str], last: str = "and") -> str:
     Parameters
     ----------
     parts : iterable of str
+        The parts.
     last : str, default "and"
         Stands before the last part.
 
@@ -105,6 +108,7 @@ def residues_in_view(record: AnalysisRecord) -> int:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -124,6 +128,7 @@ def measured_residues(record: AnalysisRecord) -> int:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------

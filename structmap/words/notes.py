@@ -13,6 +13,7 @@ def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -84,6 +85,7 @@ def colophon(record: AnalysisRecord) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
 
     Returns
     -------
@@ -108,6 +110,7 @@ def summary_lines(record: AnalysisRecord, page: str) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     page : str
         Where the page was written.
 

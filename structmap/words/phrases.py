@@ -18,6 +18,7 @@ def hint_phrase(unit: MotionalUnit) -> str:
     Parameters
     ----------
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -39,7 +40,9 @@ def members_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -73,7 +76,9 @@ def lattice_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -111,7 +116,9 @@ def bridged_chains(record: AnalysisRecord, unit: MotionalUnit) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -132,7 +139,9 @@ def across_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -150,7 +159,9 @@ def joining_numerals(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, .
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------

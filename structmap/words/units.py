@@ -18,7 +18,9 @@ def unit_sure(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -62,7 +64,9 @@ def unit_holds(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -110,7 +114,9 @@ def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
@@ -145,7 +151,9 @@ def unit_sentence(record: AnalysisRecord, unit: MotionalUnit) -> str:
     Parameters
     ----------
     record : AnalysisRecord
+        What the analysis found.
     unit : MotionalUnit
+        The motional unit.
 
     Returns
     -------
