@@ -214,9 +214,11 @@ def _judge_degree(
 def _price_of_prediction(samples: Samples, background: Background) -> Floats:
     """Return what wider errors of predicted baselines cost in log-likelihood.
 
-    The points of a profile share one field over the fold, so it is charged once.
+    The points of a profile are charged for each term of the trend already; charged for
+    this besides, smooth fields end as units (17 % of planted profiles without a unit).
     """
+    if samples.is_profile:
+        return np.zeros(len(background.scale))
     wider = np.log(background.error / samples.error)
-    freedom = 1 if samples.is_profile else samples.freedom()
-    out: Floats = (freedom * wider).sum(1)
+    out: Floats = (samples.freedom() * wider).sum(1)
     return out
