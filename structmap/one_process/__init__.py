@@ -17,6 +17,7 @@ from structmap.one_process.sharing import OneProcess, TestOptions, judge_group
 from structmap.one_process.tabular import (
     ONE_PROCESS_COLUMNS,
     analyse_table,
+    groups_by_row,
     judge_groups,
     table_rows,
 )
@@ -38,6 +39,7 @@ __all__ = [
     "find_mixture",
     "fit_each",
     "fit_group",
+    "groups_by_row",
     "judge_group",
     "judge_groups",
     "make_model",

@@ -160,6 +160,30 @@ def judge_groups(
     )
 
 
+def groups_by_row(
+    prepared: Prepared, rows: Mapping[str, NDArray[np.int64]]
+) -> dict[str, NDArray[np.int64]]:
+    """Return groups of profiles from groups of rows of the table.
+
+    Parameters
+    ----------
+    prepared : Prepared
+        Profiles of a table.
+    rows : mapping of str to ndarray of int
+        Rows of the table by name of the group, for example those of a motional unit.
+
+    Returns
+    -------
+    dict of str to ndarray of int
+        Indices of profiles, each row once; groups without any profile are left out.
+    """
+    found = {
+        name: np.nonzero(np.isin(prepared.row, members))[0]
+        for name, members in rows.items()
+    }
+    return {name: members for name, members in found.items() if len(members)}
+
+
 def table_rows(results: tuple[OneProcess, ...]) -> list[dict[str, str]]:
     """Return the rows of ``one_process.csv``.
 

@@ -15,6 +15,7 @@ from structmap.shifts.changes import (
     combine_changes,
     find_threshold,
 )
+from structmap.shifts.conformers import DoubledPeaks
 from structmap.shifts.peaks import SiteKey, common_nuclei, read_peaks, weights_of
 from structmap.values import Quantity, ValueTable
 
@@ -206,19 +207,26 @@ def perturbation_table(
     )
 
 
-def perturbation_rows(comparison: ShiftComparison) -> list[dict[str, str]]:
+def perturbation_rows(
+    comparison: ShiftComparison, *, doubled: DoubledPeaks | None = None
+) -> list[dict[str, str]]:
     """Return the rows of the table that ``structmap shifts`` writes.
 
     Parameters
     ----------
     comparison : ShiftComparison
         Of two or more lists; changes are those to the last.
+    doubled : DoubledPeaks, optional
+        Doubled peaks of the last list, which add the population of the stronger one.
 
     Returns
     -------
     list of dict of str to str
         Site columns, the combined change with its error, the parts, and a note.
     """
+    populations = (
+        dict(zip(doubled.site, doubled.population, strict=True)) if doubled else {}
+    )
     rows = []
     for row, (site, comp) in enumerate(
         zip(comparison.site, comparison.comp_id, strict=True)
@@ -236,6 +244,8 @@ def perturbation_rows(comparison: ShiftComparison) -> list[dict[str, str]]:
             comparison.nuclei, comparison.parts[row, -1], strict=True
         ):
             cells[f"{nucleus}_change"] = _shown(part)
+        if doubled is not None:
+            cells["population"] = _shown(populations.get(site, np.nan))
         cells["note"] = _note(comparison, row)
         rows.append(cells)
     return rows

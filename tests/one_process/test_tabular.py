@@ -17,6 +17,7 @@ from structmap.one_process import (
     Conditions,
     TestOptions,
     analyse_table,
+    groups_by_row,
     make_model,
     prepare_profiles,
     spinning_conditions,
@@ -24,7 +25,7 @@ from structmap.one_process import (
 )
 from structmap.one_process.reference import adjust_by_holm
 from structmap.one_process.tabular import compare_choices
-from structmap.values import Quantity, ValueTable
+from structmap.values import Quantity, ValueTable, read_values
 from tests.one_process.demo import FIELDS, make_blocks
 
 FAST = TestOptions(n_replicates=199, n_border=199, n_reference=199)
@@ -133,6 +134,39 @@ def test_a_group_does_not_change_with_the_others_around_it():
     first = run(["loop"] * 8 + ["patch"] * 7)
     again = run(["loop"] * 8 + [""] * 7)
     assert first.p_parametric == again.p_parametric
+
+
+def test_rows_of_the_table_become_groups_of_profiles():
+    whole = spinning_table()
+    value = whole.quantities[0].value.copy()
+    value[2] = np.nan  # a site without any value has no profile
+    part = quantity(value, whole.quantities[0].error, FIELDS / 1e3)
+    prepared = prepare_profiles(table(part), "mas-r1rho", conditions=SPINNING)
+    groups = groups_by_row(
+        prepared, {"U1": np.array([1, 2, 3, 3]), "U2": np.array([2])}
+    )
+    assert list(groups) == ["U1"]
+    assert [prepared.profiles.name[i] for i in groups["U1"]] == ["A/11", "A/13"]
+
+
+def test_a_written_table_goes_all_the_way(tmp_path):
+    lines = ["residue,group,x [kHz],value=R1rho [s-1],error"]
+    block = make_blocks()["Q"]
+    for site in range(8):
+        for point, field in enumerate(FIELDS):
+            value, error = block.value[site, point], block.error[site, point]
+            lines.append(f"{site + 3},loop,{field / 1e3},{value:.6f},{error:.6f}")
+    path = tmp_path / "rates.csv"
+    path.write_text("\n".join(lines) + "\n", encoding="utf-8")
+    (found,) = analyse_table(
+        read_values(path),
+        "mas-r1rho",
+        rng=np.random.default_rng(1),
+        conditions=SPINNING,
+        options=FAST,
+    )
+    assert (found.group, found.verdict) == ("loop", "shared")
+    assert found.value == pytest.approx(1.846e-5, rel=1e-3)
 
 
 def test_coherent_points_are_left_out_and_named():

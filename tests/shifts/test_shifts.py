@@ -242,6 +242,9 @@ def test_doubled_peaks_give_populations():
     plain = shift_list([row[:2] for row in rows])
     compared = compare_shifts([plain, doubled])
     assert compared.doubled[:, 0].tolist() == [True, True, False]
+    listed = perturbation_rows(compared, doubled=found)
+    assert [row["population"] for row in listed] == ["0.7", "0.7", ""]
+    assert listed[0]["note"].startswith("doubled")
     # The stronger peak of the second residue is the one listed second.
     assert compared.parts[1, 0, 0] == pytest.approx(0.1)
 
