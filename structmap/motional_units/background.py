@@ -44,7 +44,13 @@ class Samples:
     is_profile: bool = True
 
     def freedom(self) -> Integers:
-        """Return the degrees of freedom of each row."""
+        """Return the degrees of freedom of each row.
+
+        Returns
+        -------
+        ndarray of int, shape (n_rows,)
+            At least 1.
+        """
         n_rows, n_columns = self.value.shape[1:]
         columns = np.full(n_rows, n_columns) if self.seen is None else self.seen.sum(1)
         out: Integers = np.maximum(columns - self.lost, 1)
