@@ -18,7 +18,7 @@ from structmap.contacts import (
 )
 from structmap.errors import UnknownAssemblyError
 from structmap.structure import read_structure
-from tests.crystal_helpers import DATA
+from tests.crystals import DATA
 
 
 def contacts_of(structure, reach=4.5, assembly="auto"):

@@ -15,7 +15,7 @@ from structmap.contacts import (
     make_group_table,
 )
 from structmap.structure import POLYMER, WATER, read_structure, residue_label
-from tests.crystal_helpers import DATA, apply, moved
+from tests.crystals import DATA, apply, moved
 
 # Residue contacts of each kind in the chain, the complex, the lattice. Counted by a
 # prototype of its own. Hydrogen bonds of 1GBT are two fewer than it had: it took the

@@ -17,7 +17,7 @@ from structmap.contacts import (
 )
 from structmap.errors import CrowdedCellError
 from structmap.structure import read_structure
-from tests.crystal_helpers import DATA, only_atoms
+from tests.crystals import DATA, only_atoms
 
 
 def contacts_of(structure, reach=4.5):

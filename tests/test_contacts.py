@@ -17,7 +17,7 @@ from structmap.contacts import (
 from structmap.contacts.assemblies import assembly_frames
 from structmap.structure import POLYMER, read_structure, residue_label
 from tests.brute_force import count_directed_pairs, find_edges
-from tests.crystal_helpers import (
+from tests.crystals import (
     DATA,
     as_p1,
     edges_of_contacts,

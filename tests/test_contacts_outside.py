@@ -16,7 +16,7 @@ from structmap.contacts import (
 from structmap.contacts.assemblies import assembly_frames
 from structmap.errors import StructmapError
 from structmap.structure import POLYMER, read_structure
-from tests.crystal_helpers import DATA, apply, only_atoms
+from tests.crystals import DATA, apply, only_atoms
 
 REFERENCE = DATA / "reference"
 IMAGES = pd.read_csv(REFERENCE / "image_contacts_4A.csv", comment="#")

@@ -20,7 +20,7 @@ from structmap.exposure.sphere import (
     sphere_radii,
 )
 from structmap.structure import POLYMER, read_structure
-from tests.crystal_helpers import DATA, apply, as_p1, moved, turned_frame
+from tests.crystals import DATA, apply, as_p1, moved, turned_frame
 
 
 def read(name):

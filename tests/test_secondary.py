@@ -10,7 +10,7 @@ from structmap.secondary import (
     assign_secondary_structure,
 )
 from structmap.structure import POLYMER, read_structure
-from tests.crystal_helpers import DATA, apply, only_atoms
+from tests.crystals import DATA, apply, only_atoms
 
 # Least share of residues that must agree with the HELIX and SHEET records of the file.
 # Records reach one residue farther at the ends than the rule does, and those of 1UBI

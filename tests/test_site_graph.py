@@ -14,7 +14,7 @@ from structmap.contacts import (
 )
 from structmap.sites import Sites
 from structmap.structure import read_structure
-from tests.crystal_helpers import DATA
+from tests.crystals import DATA
 
 
 def made_sites(copies, n_sites):

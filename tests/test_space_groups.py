@@ -9,7 +9,7 @@ import pytest
 from structmap.contacts import find_contacts
 from structmap.structure import read_structure
 from tests.brute_force import edges_of, heavy_atoms
-from tests.crystal_helpers import edges_of_contacts
+from tests.crystals import edges_of_contacts
 
 EVERY = list(gemmi.spacegroup_table())
 SETTINGS = [

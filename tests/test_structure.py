@@ -27,7 +27,7 @@ from structmap.structure import (
     read_structure,
     residue_label,
 )
-from tests.crystal_helpers import DATA
+from tests.crystals import DATA
 
 ORC = (DATA / "1orc.pdb").read_text()
 ARRAYS = [

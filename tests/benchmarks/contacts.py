@@ -21,7 +21,7 @@ import gemmi
 
 from structmap.contacts import choose_assemblies, find_contacts
 from structmap.structure import POLYMER, Structure, read_structure
-from tests.crystal_helpers import as_p1, only_atoms
+from tests.crystals import as_p1, only_atoms
 
 CUTOFF_ANGSTROM = 4.5
 

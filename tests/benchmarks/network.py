@@ -39,7 +39,7 @@ from structmap.quotient import (
 )
 from structmap.structure import POLYMER, Structure, read_structure
 from tests.benchmarks.contacts import plain_search, plain_structure, seconds
-from tests.crystal_helpers import as_p1, only_atoms
+from tests.crystals import as_p1, only_atoms
 
 CUTOFF_ANGSTROM = 4.5
 REPEATS = 3
