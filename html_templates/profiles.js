@@ -148,8 +148,10 @@ function leftOutBands(axes, reason) {
     nodes.push(svg("rect", { x: short(x1), y: axes.top, width: short(x2 - x1), height: axes.bottom - axes.top, fill: tokens.band }));
     const text = `left out, ${shortReason(reasons[p])}`.replace(/, $/, "");
     const middle = (x1 + x2) / 2;
-    const fits = Math.min(middle - 0, axes.right + 26 - middle) * 2 > textWidth(text, "400 11px sans-serif");
-    if (reason) nodes.push(svgText(fits ? text : "left out", fits ? middle : Math.min(middle, axes.right - 18), axes.top + (reason === "above" ? -4 : 12), "faint", "middle"));
+    const wide = textWidth(text, "400 11px sans-serif");
+    const shown = wide < axes.right - axes.left - 40 ? text : "left out";
+    const at = Math.min(middle, axes.right + (reason === "above" ? 24 : 0) - (shown === text ? wide : 40) / 2);
+    if (reason) nodes.push(svgText(shown, Math.max(at, axes.left + 24), axes.top + (reason === "above" ? -4 : 12), "faint", "middle"));
     p = last;
   }
   return nodes;
@@ -243,11 +245,12 @@ function overviewText(group, x) {
     return [svgText(count, x, 24, "strong"), svgText(moving ? "move, in no unit" : "none moves", x, 41, "soft")];
   }
   const unit = data.units[group.unit];
-  const lines = unit.process.length === 1 && unit.process[0] === "not tested" ? ["one process: not tested"] : unit.process;
+  const untested = unit.process.length === 1 && unit.process[0] === "not tested";
+  const lines = untested ? ["one process: not tested"] : unit.process.flatMap((line) => line.split(/ \((?=.*\)$)/).map((piece) => piece.replace(/\)$/, "")));
   return [
     markAt(group.unit, x + 5, 20, 4.6),
     svgText(`${unit.name}, ${count}`, x + 15, 24, "strong"),
-    ...lines.slice(0, 3).map((line, i) => svgText(line, x, 41 + 16 * i, i < 2 && lines.length > 1 ? "soft" : "faint")),
+    ...lines.slice(0, 4).map((line, i) => svgText(line, x, 41 + 16 * i, i < 2 && lines.length > 1 ? "soft" : "faint")),
   ];
 }
 

@@ -438,6 +438,15 @@ function drawLegendInto(pen, times) {
       pen.fill();
     }
   }
+  for (const line of byId("legend").querySelectorAll("svg path")) {
+    const box = /** @type {Element} */ (line.parentElement).getBoundingClientRect();
+    pen.save();
+    pen.translate(box.left - origin.left, box.top - origin.top);
+    pen.strokeStyle = line.getAttribute("stroke") || tokens.ink;
+    pen.lineWidth = Number(line.getAttribute("stroke-width")) || 1;
+    pen.stroke(new Path2D(line.getAttribute("d") || ""));
+    pen.restore();
+  }
   const walker = document.createTreeWalker(byId("legend"), NodeFilter.SHOW_TEXT);
   for (let node = walker.nextNode(); node; node = walker.nextNode()) {
     const range = document.createRange();

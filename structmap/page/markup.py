@@ -16,6 +16,7 @@ _SUBSCRIPTS = (
         r"\1R_{1ρ}",
     ),
     (re.compile(r"(?<![\w-])(Δ?)R_?([12])(?!\w|\.\w)"), r"\1R_{\2}"),
+    (re.compile(r"\btau\b"), "τ"),
     (re.compile(r"\bk_?ex\b"), "k_{ex}"),
     (re.compile(r"\bK_?[dD]\b"), "K_{d}"),
     (re.compile(r"\bR_?ex\b"), "R_{ex}"),
