@@ -55,7 +55,7 @@ def test_motion_outside_the_window_is_never_called_shared():
 
 def test_intervals_cover_the_truth_in_nineteen_of_twenty_groups():
     rng = np.random.default_rng(5)
-    n_groups, inside = 300, 0
+    n_groups, inside = 150, 0
     for _ in range(n_groups):
         data = ONE_RATE.draw(rng)
         fit = fit_group(data.x, data.value, data.error, ONE_RATE.model)
