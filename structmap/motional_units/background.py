@@ -138,8 +138,8 @@ def fit_background(
     """Fit the baseline robustly to the rows at rest and estimate the error scale.
 
     Without a trend the median of each column, else iterated weighted least squares
-    with weights that first bend (Huber) and then end (Tukey); the trend at each row is
-    then told from the rows apart from it.
+    with weights that first bend (Huber) and then end (Tukey); where `near` is given the
+    trend at each row is then told from the rows apart from it.
 
     Parameters
     ----------
@@ -151,7 +151,7 @@ def fit_background(
         Terms of the trend; one constant term for none, no term when the baseline is
         known and already taken off.
     near : csr_array, shape (n_rows, n_rows), optional
-        Which rows are near each other; needed for a trend alone.
+        Which rows are near each other.
 
     Returns
     -------
@@ -173,11 +173,12 @@ def fit_background(
     if basis.shape[1] == 1:
         scale = _scale(samples, resting, value)
         return Background(value=value, scale=scale, error=error)
-    if near is None:
-        raise ValueError("near is None; a trend needs it")
     weight, value = _iterate(samples, resting, basis, value)
     m = resting.sum(1)
     shrink = np.sqrt(m / np.maximum(m - basis.shape[1], 1))
+    if near is None:
+        scale = _scale(samples, resting, value) * shrink
+        return Background(value=value, scale=scale, error=error)
     told = predict_apart(samples.value, weight, basis, near=near, seen=samples.seen)
     return Background(
         value=told.value,

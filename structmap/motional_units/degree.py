@@ -24,9 +24,9 @@ FEWEST_RESTING, RESTING_SHARE = 20, 0.4
 # A site outside all units cannot cost more than this chance, so that single movers
 # do not drive the choice of the trend.
 STRAY_CHANCE = 1e-4
-# Contacts within which sites do not tell each other's trend. Separate numbers, which
-# pay a smaller price for each term than the points of a profile, keep further apart.
-STEPS_PROFILE, STEPS_NUMBERS = 1, 2
+# Contacts within which sites do not tell each other's trend. Points of a profile pay
+# for each term of a trend many times over, which guards them already.
+STEPS_APART = 2
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -102,7 +102,7 @@ def search_samples(
         One a sample.
     """
     tiled = tile_links(links, len(samples.value))
-    near = find_near(links, STEPS_PROFILE if samples.is_profile else STEPS_NUMBERS)
+    near = None if samples.is_profile else find_near(links, STEPS_APART)
     fits = [
         _search_degree(samples, tiled, basis, near=near, how=(rounds, direction))
         for basis in bases
@@ -125,7 +125,7 @@ def _search_degree(
     tiled: Links,
     basis: Floats,
     *,
-    near: csr_array,
+    near: csr_array | None,
     how: tuple[int, int],
 ) -> DegreeFit:
     rounds, direction = how
@@ -214,11 +214,9 @@ def _judge_degree(
 def _price_of_prediction(samples: Samples, background: Background) -> Floats:
     """Return what wider errors of predicted baselines cost in log-likelihood.
 
-    The points of a profile are charged for each term of the trend already; charged for
-    this besides, smooth fields end as units (17 % of planted profiles without a unit).
+    Nothing for a profile, whose baseline is not predicted: predicted and charged once,
+    smooth fields ended as units in 17 % of planted profiles without one.
     """
-    if samples.is_profile:
-        return np.zeros(len(background.scale))
     wider = np.log(background.error / samples.error)
     out: Floats = (samples.freedom() * wider).sum(1)
     return out
