@@ -213,28 +213,66 @@ function drawCurve(axes, x, y, colour, dash) {
 function drawOverview(box, width, height) {
   const profile = /** @type {Profile} */ (data.profile);
   const unitText = profile.unit ? ` (${profile.unit})` : "";
-  aboutProfiles("residues of a unit laid on one another, ", ...rich(`${profile.name} less the baseline${unitText}`));
+  const laid = layOnOneAnother();
+  if (laid) aboutProfiles("residues of a unit laid on one another; 0 foot of the curve, 1 its height");
+  else aboutProfiles("residues of a unit laid on one another, ", ...rich(`${profile.name} less the baseline${unitText}`));
   const groups = data.units.map((unit, u) => ({ unit: u, members: unit.members }));
   const movers = data.entries.moves.flatMap((m, e) => (m ? [e] : []));
   if (!groups.length) groups.push({ unit: -1, members: movers.length ? movers : measuredEntries() });
   const row = Math.max(groups.length > 4 ? 84 : 96, Math.min(groups.length > 2 ? 138 : 190, (height - 22) / groups.length));
   const whole = row * groups.length + 22;
   if (whole > height + 1) box.style.overflowY = "auto";
-  const range = rangeOf(groups.flatMap((g) => g.members), profile.above, null);
+  const values = laid || profile.above;
+  const [low, high] = rangeOf(groups.flatMap((g) => g.members), values, null);
+  const range = laid ? [Math.min(low, -0.2), Math.max(high, 1.2)] : [low, high];
   const side = state.printing ? 122 : Math.min(150, Math.max(134, width * 0.27));
   const nodes = groups.map((group, i) => {
     const axes = axesIn(34, 14, width - 34 - side - 16, row - 46, range);
     const last = i === groups.length - 1;
     const drawn = drawAxes(axes, { ticks: true, yTicks: 2, named: last, reason: i ? "" : "above" });
-    const curve = group.unit >= 0 ? data.units[group.unit].curve : null;
-    for (const e of group.members) drawn.push(...drawPoints(axes, e, { values: profile.above, size: 2.1 }));
-    if (curve) drawn.push(...drawCurve(axes, curve.x, curve.y, tokens.ink));
+    if (laid) drawn.push(...laidCurves(axes, group.unit));
+    for (const e of group.members) drawn.push(...drawPoints(axes, e, { values, size: 2.1 }));
     drawn.push(...overviewText(group, axes.right + 16));
     const name = group.unit >= 0 ? data.units[group.unit].name : "residues that move";
     const place = { left: 0, top: i * row, width, height: row + (last ? 22 : 0), label: `${name}, ${group.members.length} residues` };
     return panel(place, () => group.unit >= 0 && chooseUnit(group.unit), drawn);
   });
   box.replaceChildren(...nodes);
+}
+
+/**
+ * Values of the members of units, scaled so that one curve fits all if one process does.
+ * @returns {((number|null)[]|null)[]|null} null where no model was fitted
+ */
+function layOnOneAnother() {
+  const profile = /** @type {Profile} */ (data.profile);
+  if (!profile.curve || !profile.curve.scaled.every((s) => s.low && s.height)) return null;
+  /** @type {((number|null)[]|null)[]} */
+  const laid = profile.value.map(() => null);
+  for (const { members, low, height } of profile.curve.scaled) {
+    members.forEach((e, i) => {
+      const [from, size] = [Number(low?.[i]), Number(height?.[i])];
+      laid[e] = (profile.value[e] || []).map((v) => {
+        const at = v === null ? null : (v - from) / size;
+        return at === null || at < -0.6 || at > 2.2 ? null : at;
+      });
+    });
+  }
+  return laid;
+}
+
+/** The shared curve in ink, or one thin curve a residue where several are needed. @param {Axes} axes @param {number} unit */
+function laidCurves(axes, unit) {
+  const curve = data.profile?.curve;
+  if (!curve || unit < 0) return [];
+  const { apart, members, low, height } = curve.scaled[unit];
+  const source = apart ? curve.alone : curve.y;
+  return members.slice(0, apart ? members.length : 1).flatMap((e, i) => {
+    const scaledY = source[e]?.map((v) => (v - Number(low?.[i])) / Number(height?.[i]));
+    const drawn = drawCurve(axes, curve.x, scaledY, apart ? unitColour(unit) : tokens.ink);
+    if (apart) for (const node of drawn) node.setAttribute("stroke-width", "1");
+    return drawn;
+  });
 }
 
 /** @param {{unit: number, members: number[]}} group @param {number} x */
@@ -271,7 +309,7 @@ function drawMembers(box, width, height, chosen) {
   const shown = measured.slice(0, AT_MOST_PANELS);
   const unitText = profile.unit ? ` (${profile.unit})` : "";
   const some = shown.length < measured.length ? `; first ${shown.length} of ${measured.length}` : "";
-  aboutProfiles(...rich(`${profile.name}${unitText}, one scale for all${hollowText()}${some}`));
+  aboutProfiles(...rich(`${profile.name}${unitText}${profile.curve ? "; line: one value for all, dotted: each alone" : ", one scale for all"}${hollowText()}${some}`));
   const columns = shown.length === 1 ? 1 : shown.length <= 4 ? 2 : 3;
   const rows = Math.ceil(shown.length / columns);
   const range = profileRange(shown);

@@ -33,7 +33,16 @@
  * @property {string[]} holds
  * @property {string[]} process
  * @property {string} sentence
- * @property {{x: number[], y: number[], low?: number[], high?: number[]}|null} curve
+ */
+
+/**
+ * How the members of a unit are laid on one another: 0 the lowest of the curve, 1 its height.
+ * @typedef {object} Scaled
+ * @property {string} verdict
+ * @property {boolean} apart one curve a residue
+ * @property {number[]} members
+ * @property {number[]|null} low
+ * @property {number[]|null} height
  */
 
 /**
@@ -49,7 +58,7 @@
  * @property {((number|null)[]|null)[]} value
  * @property {((number|null)[]|null)[]} error
  * @property {((number|null)[]|null)[]} above
- * @property {{x: number[], y: (number[]|null)[], alone?: (number[]|null)[]}|null} curve
+ * @property {{x: number[], y: (number[]|null)[], alone: (number[]|null)[], scaled: Scaled[]}|null} curve
  */
 
 /**

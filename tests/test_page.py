@@ -260,6 +260,21 @@ def test_recorded_calls_hold_no_text_of_the_coordinate_file(record):
     assert found == pytest.approx(first, abs=0.001)
 
 
+def test_fitted_curves_run_through_the_points_that_were_fitted(record):
+    """Judged in the errors of the table; no point of the example is an outlier."""
+    data = page_payload(record, list_entries(record))
+    profile, curve = data["profile"], data["profile"]["curve"]
+    kept = np.array(profile["kept"])
+    x = np.array(profile["x"])[kept]
+    shared = [s for s in curve["scaled"] if s["verdict"] == "shared"]
+    assert shared
+    for e in (e for group in shared for e in group["members"]):
+        value = np.array(profile["value"][e], dtype=float)[kept]
+        error = np.array(profile["error"][e], dtype=float)[kept]
+        drawn = np.interp(x, curve["x"], curve["y"][e])
+        assert np.nanmax(np.abs(value - drawn) / error) < 5
+
+
 def test_opening_view_frames_the_molecule_from_the_side_of_the_contact(record):
     listing = list_entries(record)
     atoms = choose_atoms(record, listing)

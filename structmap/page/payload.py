@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 
 from structmap import words
 from structmap.page import scene
+from structmap.page.curves import fitted_curves
 from structmap.page.listing import Listing, entry_names, entry_notes, residue_names
 from structmap.page.markup import mark_text, mark_unit, pretty_operator
 from structmap.page.view import opening_view
@@ -241,7 +242,6 @@ def _unit(
         "holds": [mark_text(line) for line in words.unit_holds(record, unit)],
         "process": [mark_text(line) for line in words.unit_process(record, unit)],
         "sentence": mark_text(words.unit_sentence(record, unit)),
-        "curve": None,
     }
 
 
@@ -303,7 +303,7 @@ def _profile(record: AnalysisRecord, listing: Listing) -> dict[str, Any] | None:
         "value": _spread(listing, quantity.value[row]),
         "error": _spread(listing, quantity.error[row]),
         "above": _spread(listing, _above_baseline(record, quantity)),
-        "curve": None,
+        "curve": fitted_curves(record, listing, x),
     }
 
 
