@@ -404,7 +404,10 @@ def test_choosing_a_unit_is_followed_by_every_part(opened, record):
     assert opened.count("#unit-rows tr.chosen") == 1
     assert opened.count("#site-rows tr.chosen") == len(unit.members)
     assert opened.count('#result .unit[aria-pressed="true"]') == 1
-    assert opened.count('#over circle[stroke-width="1.6"]') >= len(unit.members)
+    # The picture is drawn in the browser's next frame, so this one is waited for.
+    ring = '#over circle[stroke-width="1.6"]'
+    opened.tab.wait_for_selector(ring, state="attached")
+    assert opened.count(ring) >= len(unit.members)
     opened.tab.keyboard.press("Escape")
     assert opened.tab.evaluate("location.hash") == ""
     assert opened.count('#chain [aria-selected="true"]') == 0
