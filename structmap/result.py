@@ -91,8 +91,12 @@ class AnalysisRecord:
         Accessible areas of the residues.
     processes : tuple of OneProcess
         For each unit whether one process explains it; empty when no model was named.
+    process_notes : tuple of str
+        On the process over the whole molecule, one sentence each.
     warnings : tuple of str
-        What the reader must know, the most important first, one sentence each.
+        What limits the answer, the most important first, one sentence each.
+    reason : str
+        Why no unit can be told from these data, one sentence; blank when they can.
     """
 
     settings: Settings
@@ -109,6 +113,8 @@ class AnalysisRecord:
     exposure: Exposure
     processes: tuple[OneProcess, ...]
     warnings: tuple[str, ...]
+    warnings: tuple[str, ...]
+    process_notes: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         store_read_only(self, "chemistry", np.str_, (len(self.contacts.kind),))

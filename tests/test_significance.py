@@ -10,6 +10,7 @@ from structmap.significance import (
     Effort,
     choose_verdict,
     cutoffs_to_vary,
+    describe_error_scale,
     judge_units,
     list_cautions,
 )
@@ -322,7 +323,9 @@ def cautions(value, n=120, **given):
         rng=np.random.default_rng(1),
         effort=Effort(most_permutations=99, repeats=4),
     )
-    return " ".join(list_cautions(found, data, evidence))
+    scale = describe_error_scale(found.behaviour, data)
+    told = (found.reason, scale, *list_cautions(found, evidence))
+    return " ".join(filter(None, told))
 
 
 def test_errors_far_from_the_scatter_are_told():
@@ -330,7 +333,7 @@ def test_errors_far_from_the_scatter_are_told():
     assert "stated too small" in cautions(value, error=np.full_like(value, 0.3))
     assert "stated too large" in cautions(value, error=np.full_like(value, 3.0))
     assert cautions(value, error=np.ones_like(value)) == ""
-    assert "No errors were given" in cautions(value)
+    assert cautions(value) == ""
 
 
 def test_many_movers_and_few_sites_are_told():

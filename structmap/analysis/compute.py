@@ -9,10 +9,10 @@ from structmap.analysis.evidence import (
     Surroundings,
     describe_units,
     graphs_at_cutoffs,
-    judge_processes,
     known_baseline,
     spread_membership,
 )
+from structmap.analysis.processes import judge_processes
 from structmap.analysis.steps import (
     Progress,
     cutoff_of,
@@ -99,7 +99,9 @@ def analyse_table(
     tell("asking what holds the units together", 0.9)
     units = describe_units(search, judgement, crystal)
     tell("asking whether one process explains them", 0.95)
-    processes = judge_processes(table, sites, units, settings, rng=random_of_process)
+    processes = judge_processes(
+        table, sites, search, settings=settings, rng=random_of_process
+    )
     return AnalysisRecord(
         settings=settings,
         structure=structure,
@@ -116,7 +118,8 @@ def analyse_table(
         ).text,
         exposure=find_exposure(structure, assemblies=crystal.assemblies),
         processes=processes,
-        warnings=list_cautions(search, measurements, judgement) if judgement else (),
+        reason=search.reason,
+        warnings=list_cautions(search, judgement),
     )
 
 

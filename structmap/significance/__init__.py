@@ -1,6 +1,10 @@
 """How sure: chances of an accident, stability, membership, and the verdict."""
 
-from structmap.significance.cautions import cutoffs_to_vary, list_cautions
+from structmap.significance.cautions import (
+    cutoffs_to_vary,
+    describe_error_scale,
+    list_cautions,
+)
 from structmap.significance.judging import (
     Effort,
     Judgement,
@@ -15,6 +19,7 @@ __all__ = [
     "UnitEvidence",
     "choose_verdict",
     "cutoffs_to_vary",
+    "describe_error_scale",
     "judge_units",
     "list_cautions",
 ]

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from structmap.behaviour import Measurements
+from structmap.behaviour import Behaviour, Measurements
 from structmap.motional_units.search import UnitSearch
 from structmap.significance.judging import Judgement
 from structmap.significance.verdict import LEVEL
@@ -37,42 +37,25 @@ def cutoffs_to_vary(
     return tuple(cutoff_angstrom + step for step in steps)
 
 
-def list_cautions(
-    search: UnitSearch, measurements: Measurements, judgement: Judgement
-) -> tuple[str, ...]:
-    """Return what limits the answer, the most important first.
+def describe_error_scale(behaviour: Behaviour, measurements: Measurements) -> str:
+    """Return whether the errors given fit the scatter of the values.
 
     Parameters
     ----------
-    search : UnitSearch
-        What was found.
+    behaviour : Behaviour
+        Holds the scale.
     measurements : Measurements
         What was compared.
-    judgement : Judgement
-        What the tests say.
 
     Returns
     -------
-    tuple of str
-        One sentence each; empty when nothing stands out.
+    str
+        A sentence with what may be wrong and what to do; blank where the scale is from
+        0.5 to 2 or no errors were given.
     """
-    if search.reason:
-        return (search.reason,)
-    found = (
-        _say_errors(search, measurements),
-        _say_movers(search),
-        _say_few(search),
-        _say_chance(search, judgement),
-        _say_tentative(judgement),
-        _say_shared(judgement),
-    )
-    return tuple(one for one in found if one)
-
-
-def _say_errors(search: UnitSearch, measurements: Measurements) -> str:
-    scale = search.behaviour.error_scale
-    if not measurements.errors_given:
-        return "No errors were given; one common error was estimated from the scatter."
+    scale = behaviour.error_scale
+    if not measurements.errors_given or not scale > 0:
+        return ""
     if scale > LARGE_SCALE:
         remedy = (
             "or baselines differ from site to site: compare shapes (--profile-part "
@@ -92,13 +75,44 @@ def _say_errors(search: UnitSearch, measurements: Measurements) -> str:
     return ""
 
 
+def list_cautions(
+    search: UnitSearch, judgement: Judgement | None = None
+) -> tuple[str, ...]:
+    """Return what limits the answer, the most important first.
+
+    Parameters
+    ----------
+    search : UnitSearch
+        What was found.
+    judgement : Judgement or None
+        What the tests say; None when there were none.
+
+    Returns
+    -------
+    tuple of str
+        One sentence each; empty when nothing stands out, and when no unit can be told
+        at all, which `UnitSearch.reason` says.
+    """
+    if search.reason:
+        return ()
+    found = [_say_movers(search), _say_few(search)]
+    if judgement is not None:
+        found += [
+            _say_chance(search, judgement),
+            _say_tentative(judgement),
+            _say_shared(judgement),
+        ]
+    return tuple(one for one in found if one)
+
+
 def _say_movers(search: UnitSearch) -> str:
     share = float(np.mean(search.behaviour.moves | (search.label >= 0)))
     if share <= MOST_MOVING:
         return ""
     return (
         f"{share:.0%} of the sites move or are in units: the baseline may be wrong and "
-        "permutation tests lose their power; give a baseline if one is known."
+        "permutation tests lose their power; give a baseline if one is known "
+        "(--baseline)."
     )
 
 

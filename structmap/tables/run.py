@@ -9,6 +9,7 @@ from structmap.contacts import KINDS
 from structmap.result import AnalysisRecord
 from structmap.tables.text import plain
 from structmap.version import __version__
+from structmap.words import care_sentences
 
 
 def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
@@ -48,7 +49,9 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
         "numbering": [asdict(chain) for chain in record.sites.chains],
         "residue_names_that_differ": list(record.sites.mismatches),
         "rows_without_residue": list(record.sites.unmatched),
-        "warnings": [plain(text) for text in record.warnings],
+        "warnings": [
+            plain(text) for text in (record.reason, *care_sentences(record)) if text
+        ],
         "notes": [
             plain(text)
             for text in (

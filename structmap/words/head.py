@@ -85,13 +85,14 @@ def result_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     if not n_moving and not record.units:
         return (
             f"{counted}.",
-            "No residue moves beyond its errors. Small motions, or motions at other "
+            record.reason
+            or "No residue moves beyond its errors. Small motions, or motions at other "
             "rates, would not show in these data.",
         )
     verb = "moves" if n_moving == 1 else "move"
     first = f"{counted}, and {n_moving} of these {verb} beyond their errors."
     if not record.units:
-        return (first, _no_unit(record))
+        return (first, record.reason or _no_unit(record))
     return (first, *_unit_sentences(record))
 
 
