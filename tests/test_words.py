@@ -1,7 +1,20 @@
+import numpy as np
 import pytest
 
+from structmap.analysis import analyse, example_folder
 from structmap.lattice import roman_numeral
-from structmap.words import number_in_words, p_text
+from structmap.settings import Settings
+from structmap.words import errors_off_baseline, number_in_words, p_text
+
+
+@pytest.fixture(scope="module")
+def example_record():
+    folder = example_folder()
+    return analyse(
+        folder / "4cup.cif.gz",
+        folder / "invented_values.csv",
+        Settings(profile_part="shape", most_permutations=0),
+    ).record
 
 
 def test_numbers_up_to_twelve_are_words():
@@ -31,3 +44,14 @@ def test_roman_numerals_by_the_subtractive_rule():
 def test_no_roman_numeral_outside_its_range(number):
     with pytest.raises(ValueError, match=rf"^number is {number}; it must be from 1"):
         roman_numeral(number)
+
+
+def test_sites_at_rest_lie_around_no_error_off_the_baseline(example_record):
+    off = errors_off_baseline(example_record)
+    quiet = off[~example_record.behaviour.moves]
+    # The sizes of normal noise in twelve points, told as one normal variable each.
+    assert abs(np.median(quiet)) < 0.5
+    assert np.percentile(quiet, 95) < 3.0
+    assert off[example_record.behaviour.moves].min() > 2.0
+    order = np.argsort(example_record.behaviour.deviation)
+    assert (np.diff(off[order]) > -1.0).all()

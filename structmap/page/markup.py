@@ -292,7 +292,7 @@ def sites_rows(record: AnalysisRecord, listing: Listing) -> str:
     """
     behaviour, units = record.behaviour, record.unit_of_site()
     names, notes = entry_names(record, listing), entry_notes(record, listing)
-    rows = []
+    off, rows = words.errors_off_baseline(record), []
     for index, (site, row) in enumerate(
         zip(listing.site.tolist(), listing.measured.tolist(), strict=True)
     ):
@@ -300,7 +300,7 @@ def sites_rows(record: AnalysisRecord, listing: Listing) -> str:
         if row >= 0:
             cells[0] = _number(behaviour.summary[row])
             cells[1] = _number(behaviour.summary_error[row])
-            cells[2] = f"{behaviour.deviation[row]:.1f}".replace("-", "−")
+            cells[2] = f"{off[row]:.1f}".replace("-", "−")
             cells[3] = record.units[units[site]].name if units[site] >= 0 else ""
         inner = "".join(f"<td>{cell}</td>" for cell in cells)
         rows.append(

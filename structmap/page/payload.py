@@ -130,7 +130,7 @@ def _entries(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
         "membership": plain(membership[site], 3),
         "value": _spread(listing, behaviour.summary),
         "error": _spread(listing, behaviour.summary_error),
-        "deviation": _spread(listing, behaviour.deviation),
+        "deviation": _spread(listing, words.errors_off_baseline(record)),
         "moves": [bool(row >= 0 and moves[row]) for row in listing.measured.tolist()],
         "note": entry_notes(record, listing),
     }

@@ -8,7 +8,12 @@ was not tested.
 from structmap.words.care import care_sentences
 from structmap.words.facts import facts
 from structmap.words.head import grouped_quantities, result_sentences, title
-from structmap.words.names import measured_chains, number_in_words, site_name
+from structmap.words.names import (
+    errors_off_baseline,
+    measured_chains,
+    number_in_words,
+    site_name,
+)
 from structmap.words.notes import colophon, rests_on, summary_lines
 from structmap.words.phrases import joining_numerals, lattice_phrase, members_phrase
 from structmap.words.units import (
@@ -22,6 +27,7 @@ from structmap.words.units import (
 __all__ = [
     "care_sentences",
     "colophon",
+    "errors_off_baseline",
     "facts",
     "grouped_quantities",
     "joining_numerals",

@@ -3,10 +3,14 @@
 from collections.abc import Iterable
 
 import numpy as np
+from numpy.typing import NDArray
+from scipy.special import ndtri
 
 from structmap.result import AnalysisRecord
 from structmap.structure import POLYMER, one_letter
 
+# Below it a chance cannot be told from 0 and the deviation itself is shown.
+SMALLEST_CHANCE = 1e-300
 NUMBERS = (
     *("no", "one", "two", "three", "four", "five", "six", "seven", "eight", "nine"),
     *("ten", "eleven", "twelve"),
@@ -137,3 +141,30 @@ def measured_residues(record: AnalysisRecord) -> int:
     """
     sites = record.sites.residue[record.measurements.site]
     return len(np.unique(sites[sites >= 0]))
+
+
+def errors_off_baseline(record: AnalysisRecord) -> NDArray[np.float64]:
+    """Return how many errors each compared site lies off the baseline.
+
+    For one value that is its deviation. For several columns it is the number of
+    standard deviations of a normal variable that has the same chance, so that sites at
+    rest lie around 0 whatever the number of points.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    ndarray of float, shape (n,)
+        For each compared site.
+    """
+    behaviour = record.behaviour
+    if behaviour.background.shape[1] == 1:
+        return behaviour.deviation
+    chance = np.maximum(behaviour.p_deviation, SMALLEST_CHANCE)
+    out: NDArray[np.float64] = np.where(
+        behaviour.p_deviation > SMALLEST_CHANCE, -ndtri(chance), behaviour.deviation
+    )
+    return out
