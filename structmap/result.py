@@ -113,7 +113,7 @@ class AnalysisRecord:
     exposure: Exposure
     processes: tuple[OneProcess, ...]
     warnings: tuple[str, ...]
-    warnings: tuple[str, ...]
+    reason: str = ""
     process_notes: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:

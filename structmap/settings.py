@@ -46,8 +46,17 @@ class Settings:
         relaxation, else ``whole``.
     model : str
         Name of the process model that the profiles follow; blank for none.
+    process_quantity : str
+        Quantity that the model is fitted to, when it is not the one that enters the
+        grouping; the test then confirms units that were formed on another quantity.
+    reference : {'random', 'clustered'}
+        Groups that the agreement of a unit is compared with: random ones, or those
+        that the same search finds when the profiles are put on random sites.
     direction : {'both', 'up', 'down'}
         Which way units may deviate from the baseline.
+    low_moves : tuple of str
+        Quantities of which a low value means motion; order parameters, heteronuclear
+        NOE and protection factors are known by their names. Only the words change.
     baseline : str
         The baseline when it is known: a number in the unit of the values, or the name
         of a quantity in the table that holds it for each site (a reference state);
@@ -62,6 +71,8 @@ class Settings:
         Rate of magic-angle spinning; 0 is not given.
     sample : {'protonated', 'deuterated'}
         Decides below which spin-lock field points are left out.
+    keep_points : bool
+        Keep the points of a profile that are left out as not motion alone.
     most_permutations : int
         Most permutations of a test whose p lies at the border of 0.05; 0 leaves the
         tests of chance and stability out.
@@ -85,13 +96,17 @@ class Settings:
     quantity: tuple[str, ...] = ()
     profile_part: ProfilePart = "auto"
     model: str = ""
+    process_quantity: str = ""
+    reference: Literal["random", "clustered"] = "random"
     direction: Direction = "both"
+    low_moves: tuple[str, ...] = ()
     baseline: str = ""
     exclude: tuple[str, ...] = ()
     columns: tuple[str, ...] = ()
     proton_frequency_megahertz: float = 0.0
     mas_rate_hertz: float = 0.0
     sample: Literal["protonated", "deuterated"] = "protonated"
+    keep_points: bool = False
     most_permutations: int = 9999
     repeats: int = 100
     title: str = ""

@@ -12,7 +12,7 @@ from structmap.analysis.evidence import (
     known_baseline,
     spread_membership,
 )
-from structmap.analysis.processes import judge_processes
+from structmap.analysis.processes import describe_molecule, judge_processes
 from structmap.analysis.steps import (
     Progress,
     cutoff_of,
@@ -84,7 +84,8 @@ def analyse_table(
         baseline=known_baseline(table, sites, measurements, settings),
     )
     # One child a step, in this order; a new step joins at the end.
-    random_of_judging, random_of_process = np.random.default_rng(settings.seed).spawn(2)
+    children = np.random.default_rng(settings.seed).spawn(3)
+    random_of_judging, random_of_process, random_of_molecule = children
     judgement = None
     if settings.most_permutations:
         judgement = judge_units(
@@ -118,6 +119,7 @@ def analyse_table(
         ).text,
         exposure=find_exposure(structure, assemblies=crystal.assemblies),
         processes=processes,
+        process_notes=describe_molecule(table, settings, rng=random_of_molecule),
         reason=search.reason,
         warnings=list_cautions(search, judgement),
     )

@@ -16,13 +16,6 @@ from structmap.contacts import (
 from structmap.errors import SettingError
 from structmap.lattice import judge_lattice
 from structmap.motional_units import UnitSearch
-from structmap.one_process import (
-    OneProcess,
-    TestOptions,
-    judge_groups,
-    prepare_profiles,
-    spinning_conditions,
-)
 from structmap.result import MotionalUnit
 from structmap.settings import Settings
 from structmap.significance import Judgement, cutoffs_to_vary
@@ -202,60 +195,3 @@ def spread_membership(
     if judgement is not None:
         out[search.site] = judgement.membership
     return out
-
-
-def judge_processes(
-    table: ValueTable,
-    sites: Sites,
-    units: tuple[MotionalUnit, ...],
-    settings: Settings,
-    *,
-    rng: np.random.Generator,
-) -> tuple[OneProcess, ...]:
-    """Ask of each unit whether one process of the named model explains it.
-
-    Parameters
-    ----------
-    table : ValueTable
-        The measured values.
-    sites : Sites
-        The measured sites.
-    units : tuple of MotionalUnit
-        What was found.
-    settings : Settings
-        Name the model and its conditions.
-    rng : numpy.random.Generator
-        Draws replicates and random groups.
-
-    Returns
-    -------
-    tuple of OneProcess
-        One a unit, all descriptive, for the units were formed on the same profiles;
-        empty when no model is named.
-
-    Raises
-    ------
-    StructmapError
-        If the model is unknown, lacks a condition or cannot read the profiles.
-    """
-    if not settings.model:
-        return ()
-    prepared = prepare_profiles(
-        table,
-        settings.model,
-        conditions=spinning_conditions(
-            mas_rate_hertz=settings.mas_rate_hertz,
-            proton_frequency_megahertz=settings.proton_frequency_megahertz,
-            sample=settings.sample,
-        ),
-        quantity=settings.quantity[0] if settings.quantity else "",
-    )
-    place = {int(row): index for index, row in enumerate(prepared.row)}
-    rows = {unit.name: sites.row[unit.members].tolist() for unit in units}
-    groups = {
-        name: np.array([place[row] for row in found if row in place], dtype=np.int64)
-        for name, found in rows.items()
-    }
-    return judge_groups(
-        prepared, groups, rng=rng, options=TestOptions(descriptive=True)
-    )

@@ -5,6 +5,11 @@ from pathlib import Path
 
 import numpy as np
 
+from structmap.analysis.processes import (
+    conditions_of,
+    prepare_by_settings,
+    process_quantity,
+)
 from structmap.analysis.steps import (
     Progress,
     cutoff_of,
@@ -19,9 +24,11 @@ from structmap.forms import compare_folders
 from structmap.one_process import (
     ONE_PROCESS_COLUMNS,
     analyse_table,
+    describe_whole,
     plain_words,
-    spinning_conditions,
     table_rows,
+    whole_rows,
+    whole_words,
 )
 from structmap.settings import Settings
 from structmap.shifts import compare_shifts, perturbation_rows
@@ -169,20 +176,24 @@ def judge_table(
     """
     if not settings.model:
         raise SettingError("options", "model", "is not given", "name one with --model")
+    read = read_values([Path(path) for path in values], columns=settings.columns)
+    rng = np.random.default_rng(settings.seed)
     found = analyse_table(
-        read_values([Path(path) for path in values], columns=settings.columns),
+        read,
         settings.model,
-        rng=np.random.default_rng(settings.seed),
-        conditions=spinning_conditions(
-            mas_rate_hertz=settings.mas_rate_hertz,
-            proton_frequency_megahertz=settings.proton_frequency_megahertz,
-            sample=settings.sample,
-        ),
-        quantity=settings.quantity[0] if settings.quantity else "",
+        rng=rng,
+        conditions=conditions_of(settings),
+        quantity=process_quantity(settings),
     )
-    rows = tuple(tuple(row.values()) for row in table_rows(found))
-    notes = tuple(f"{one.group}: {' '.join(plain_words(one))}" for one in found)
-    return Table(columns=ONE_PROCESS_COLUMNS, rows=rows), notes
+    rows = table_rows(found)
+    notes = [f"{one.group}: {' '.join(plain_words(one))}" for one in found]
+    if not any(read.group):
+        whole = describe_whole(prepare_by_settings(read, settings), rng=rng)
+        if whole:
+            notes += whole_words(whole)
+            rows += whole_rows(whole, ONE_PROCESS_COLUMNS)
+    cells = tuple(tuple(row.values()) for row in rows)
+    return Table(columns=ONE_PROCESS_COLUMNS, rows=cells), tuple(notes)
 
 
 def perturb_shifts(

@@ -108,7 +108,7 @@ def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
     if not profiles:
         return ()
     profile = profiles[0]
-    if settings.model != SPINNING_MODEL:
+    if settings.model != SPINNING_MODEL or settings.keep_points:
         return ("",) * len(profile.x)
     return points_left_out(
         convert_to_base(profile.x, profile.x_unit, quantity=profile.x_name, base="Hz"),

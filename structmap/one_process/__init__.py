@@ -11,7 +11,12 @@ from structmap.one_process.preparing import (
     site_names,
     spinning_conditions,
 )
-from structmap.one_process.profiles import GroupFit, Profiles, make_profiles
+from structmap.one_process.profiles import (
+    GroupFit,
+    Profiles,
+    find_flat_sites,
+    make_profiles,
+)
 from structmap.one_process.reference import Reference
 from structmap.one_process.sharing import OneProcess, TestOptions, judge_group
 from structmap.one_process.tabular import (
@@ -20,6 +25,12 @@ from structmap.one_process.tabular import (
     groups_by_row,
     judge_groups,
     table_rows,
+)
+from structmap.one_process.whole import (
+    WholeMolecule,
+    describe_whole,
+    whole_rows,
+    whole_words,
 )
 
 __all__ = [
@@ -35,7 +46,10 @@ __all__ = [
     "Profiles",
     "Reference",
     "TestOptions",
+    "WholeMolecule",
     "analyse_table",
+    "describe_whole",
+    "find_flat_sites",
     "find_mixture",
     "fit_each",
     "fit_group",
@@ -50,4 +64,6 @@ __all__ = [
     "site_names",
     "spinning_conditions",
     "table_rows",
+    "whole_rows",
+    "whole_words",
 ]

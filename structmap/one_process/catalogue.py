@@ -33,6 +33,8 @@ class Conditions:
         For ``model-free``, the proton frequency of each point.
     homonuclear : bool
         For observed protons, whether the coupling between protons counts.
+    keep_points : bool
+        Keep points that are not motion alone, as points of caution.
     """
 
     experiment: Experiment = field(default_factory=Experiment)
@@ -40,6 +42,7 @@ class Conditions:
     observables: tuple[str, ...] = ()
     fields_megahertz: tuple[float, ...] = ()
     homonuclear: bool = True
+    keep_points: bool = False
 
 
 def make_model(name: str, conditions: Conditions) -> Model:

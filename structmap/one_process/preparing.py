@@ -43,6 +43,8 @@ class Prepared:
         Row of the table behind each profile.
     notes : tuple of str
         What was mended or left out and which interactions count, one sentence each.
+    quantities : tuple of str
+        Quantities of the table that make up the profiles.
     """
 
     profiles: Profiles
@@ -51,6 +53,7 @@ class Prepared:
     left_out: tuple[str, ...]
     row: NDArray[np.int64]
     notes: tuple[str, ...]
+    quantities: tuple[str, ...] = ()
 
 
 def prepare_profiles(
@@ -93,6 +96,9 @@ def prepare_profiles(
     if model_name == SPINNING_MODEL:
         reasons = find_coherent_points(x, experiment)
         doubts = find_doubtful_points(x, experiment)
+    if conditions.keep_points:
+        doubts = tuple(map(str.__add__, doubts, reasons))
+        reasons = ("",) * len(x)
     keep = np.array([not reason for reason in reasons])
     if np.count_nonzero(keep) < _LEAST_POINTS:
         raise UnusableProfileError(
@@ -116,6 +122,7 @@ def prepare_profiles(
             if reason
         ),
     )
+    prepared = replace(prepared, quantities=(profile.name,))
     if model_name != SPINNING_MODEL:
         return prepared
     return replace(prepared, notes=(*prepared.notes, *_share_note(conditions)))
@@ -275,6 +282,8 @@ def _prepare_tumbling(table: ValueTable, conditions: Conditions) -> Prepared:
     )
     caution = np.zeros(len(rates), dtype=bool)
     prepared = _finish(table, model, columns, caution=caution, left_out=())
+    names = tuple(one.name for one, parts in found if parts is not None)
+    prepared = replace(prepared, quantities=names)
     if not mobile.any():
         return prepared
     note = f"{mobile.sum()} sites with a NOE below {MOBILE_NOE} are left out: mobile."
@@ -308,6 +317,7 @@ def spinning_conditions(
     mas_rate_hertz: float,
     proton_frequency_megahertz: float,
     sample: str,
+    keep_points: bool = False,
 ) -> Conditions:
     """Return the conditions that the settings of an analysis name.
 
@@ -319,6 +329,8 @@ def spinning_conditions(
         Larmor frequency of the protons in MHz; 0 is not given.
     sample : str
         ``protonated`` or ``deuterated``.
+    keep_points : bool, optional
+        Keep points that are not motion alone.
 
     Returns
     -------
@@ -330,5 +342,6 @@ def spinning_conditions(
             mas_rate_hertz=mas_rate_hertz,
             proton_frequency_megahertz=proton_frequency_megahertz,
             sample="deuterated" if sample == "deuterated" else "protonated",
-        )
+        ),
+        keep_points=keep_points,
     )

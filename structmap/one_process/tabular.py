@@ -16,7 +16,7 @@ from structmap.values import ValueTable
 ONE_PROCESS_COLUMNS = (
     *("group", "n_sites", "model", "parameter", "unit", "value", "low", "high"),
     *("verdict", "p_distinct", "detectable_ratio", "reference_p", "sites_apart"),
-    "points_left_out",
+    *("points_left_out", "sites"),
 )
 
 
@@ -112,6 +112,7 @@ def judge_groups(
     *,
     rng: np.random.Generator,
     options: TestOptions | None = None,
+    references: Mapping[str, Reference] | None = None,
 ) -> tuple[OneProcess, ...]:
     """Judge several groups of sites against each other's sites.
 
@@ -125,6 +126,8 @@ def judge_groups(
         A child of it serves each group, so that groups do not change each other.
     options : TestOptions, optional
         Choices of the test.
+    references : mapping of str to Reference, optional
+        By name of the group, what it is compared with; else the sites outside it.
 
     Returns
     -------
@@ -136,13 +139,15 @@ def judge_groups(
     for name, child in zip(names, rng.spawn(len(names)), strict=True):
         inside = np.zeros(len(prepared.profiles.name), dtype=bool)
         inside[groups[name]] = True
-        outside = Reference(profiles=prepared.profiles.take(~inside))
+        outside = (references or {}).get(name)
+        if outside is None and not inside.all():
+            outside = Reference(profiles=prepared.profiles.take(~inside))
         result = judge_group(
             prepared.profiles.take(groups[name]),
             prepared.model,
             rng=child,
             options=options,
-            reference=outside if (~inside).any() else None,
+            reference=outside,
             caution=prepared.caution,
         )
         results.append(
@@ -205,6 +210,7 @@ def table_rows(results: tuple[OneProcess, ...]) -> list[dict[str, str]]:
             *(_number(result.high), result.verdict, _number(result.p_distinct)),
             *(_number(result.detectable_ratio), _number(result.reference_p)),
             *(" ".join(result.apart), "; ".join(result.points_left_out)),
+            " ".join(result.sites),
         )
         rows.append(dict(zip(ONE_PROCESS_COLUMNS, cells, strict=True)))
     return rows

@@ -60,6 +60,33 @@ def score_orders(field: Field, links: Links, orders: Integers) -> Scores:
     )
 
 
+def find_groups_of_orders(
+    field: Field, links: Links, orders: Integers
+) -> tuple[Integers, ...]:
+    """Return the groups found in fields in which other rows sit at the places.
+
+    Parameters
+    ----------
+    field : Field
+        Deviations.
+    links : Links
+        Who touches whom.
+    orders : ndarray of int, shape (n_orders, n_rows)
+        Row that comes to each place.
+
+    Returns
+    -------
+    tuple of ndarray of int
+        Rows of each group, of all placements.
+    """
+    flat = orders.ravel()
+    label = find_groups(take_rows(field, flat), tile_links(links, len(orders))).label
+    inside = np.flatnonzero(label >= 0)
+    inside = inside[np.argsort(label[inside], kind="stable")]
+    ends = np.flatnonzero(np.diff(label[inside])) + 1
+    return tuple(flat[one] for one in np.split(inside, ends) if len(one))
+
+
 def random_orders(n_rows: int, rng: np.random.Generator) -> Callable[[int], Integers]:
     """Return a source of random permutations.
 

@@ -8,7 +8,7 @@ from structmap.words.names import number_in_words
 
 
 def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
-    """Return in two or three paragraphs what the result rests on.
+    """Return in a few paragraphs what the result rests on.
 
     Parameters
     ----------
@@ -20,7 +20,33 @@ def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
     tuple of str
         Methods in plain words, with their settings.
     """
-    return (_contacts_paragraph(record), _units_paragraph(record), _simple_way(record))
+    return (
+        _contacts_paragraph(record),
+        _units_paragraph(record),
+        _simple_way(record),
+        *_process_paragraph(record),
+    )
+
+
+def _process_paragraph(record: AnalysisRecord) -> tuple[str, ...]:
+    processes = record.processes
+    if not processes and not record.process_notes:
+        return ()
+    text = f"One process ({record.settings.model}): " if processes else ""
+    if processes:
+        text += (
+            "one shared value against one for each residue, with both bootstraps of "
+            "the errors. "
+        )
+    if any(process.descriptive for process in processes):
+        text += (
+            "The units were formed on the same profiles, so a value that is enough "
+            "describes them and confirms nothing: residues picked for their likeness "
+            "mostly pass. Form the units on another quantity (quantity and "
+            "process_quantity), give the groups in the table, or compare with the "
+            "groups that the same search finds on permuted sites (reference). "
+        )
+    return ((text + " ".join(record.process_notes)).rstrip(),)
 
 
 def _contacts_paragraph(record: AnalysisRecord) -> str:

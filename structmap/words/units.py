@@ -132,6 +132,8 @@ def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
         lines.append(show_interval(process))
     if process.verdict != "undetermined":
         lines.append(f"p\u00a0{p_text(process.p_distinct)}")
+    if process.descriptive:
+        lines.append("describes only: the unit was formed on these profiles")
     return tuple(lines)
 
 
