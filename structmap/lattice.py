@@ -97,11 +97,10 @@ def judge_lattice(
     LatticeVerdict
         The verdict, what joins the unit and what is left without the crystal.
     """
-    pieces = _pieces(members, graph, COMPLEX)
-    n_chain_parts = len(_pieces(members, graph, CHAIN))
+    pieces = connected_pieces(members, graph, highest_kind=COMPLEX)
     joining = _contacts_between(pieces, sites, contacts)
     return LatticeVerdict(
-        verdict=_verdict(len(members), n_chain_parts, pieces),
+        verdict=verdict_by_graph(members, graph),
         operators=_operators(structure, contacts, joining),
         contacts=joining,
         share_kept_without_lattice=len(pieces[0]) / len(members),
@@ -112,9 +111,24 @@ def judge_lattice(
     )
 
 
-def _verdict(
-    n_members: int, n_chain_parts: int, pieces: tuple[tuple[int, ...], ...]
-) -> str:
+def verdict_by_graph(members: NDArray[np.int64], graph: SiteGraph) -> str:
+    """Return what holds a unit together, by the rules of `judge_lattice`.
+
+    Parameters
+    ----------
+    members : ndarray of int, shape (n_members,)
+        Indices of sites.
+    graph : SiteGraph
+        Which sites touch within some cutoff.
+
+    Returns
+    -------
+    str
+        ``internal``, ``interface``, ``lattice-joined`` or ``lattice-only``.
+    """
+    n_members = len(members)
+    pieces = connected_pieces(members, graph, highest_kind=COMPLEX)
+    n_chain_parts = len(connected_pieces(members, graph, highest_kind=CHAIN))
     needed = SHARE_NEEDED * (n_members - 1)
     if sum(len(piece) >= SMALLEST_PIECE for piece in pieces) > 1:
         return "lattice-joined"
@@ -125,10 +139,25 @@ def _verdict(
     return "lattice-only"
 
 
-def _pieces(
-    members: NDArray[np.int64], graph: SiteGraph, highest_kind: int
+def connected_pieces(
+    members: NDArray[np.int64], graph: SiteGraph, *, highest_kind: int
 ) -> tuple[tuple[int, ...], ...]:
-    """Return the parts of the members over edges up to a kind, largest first."""
+    """Return the parts into which edges up to a kind join the members.
+
+    Parameters
+    ----------
+    members : ndarray of int, shape (n_members,)
+        Indices of sites.
+    graph : SiteGraph
+        Which sites touch.
+    highest_kind : int
+        ``CHAIN``, ``COMPLEX`` or ``LATTICE``.
+
+    Returns
+    -------
+    tuple of tuple of int
+        Indices of sites, the largest part first.
+    """
     place = np.full(max(graph.n_sites, int(members.max()) + 1), -1)
     place[members] = np.arange(len(members))
     first, second = place[graph.site_1], place[graph.site_2]

@@ -16,8 +16,8 @@ ORDER = (
     *("values", "sites", "contacts", "atom_pairs", "secondary", "chemistry"),
     *("quotient", "weakest", "experiment", "behaviour", "motional_units"),
     *("significance", "lattice", "one_process", "shifts", "network", "exposure"),
-    *("result", "words", "tables", "forms", "page", "figures", "analysis", "batch"),
-    "cli",
+    *("holding", "result", "words", "tables", "forms", "page", "figures"),
+    *("analysis", "batch", "cli"),
 )
 FUNCTIONS = (ast.FunctionDef, ast.AsyncFunctionDef)
 

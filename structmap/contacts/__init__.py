@@ -4,6 +4,7 @@ from structmap.contacts.assemblies import choose_assemblies
 from structmap.contacts.describing import (
     contact_cutoff,
     contact_matrix,
+    contacts_where,
     contacts_within,
     image_matrix,
     mate_matrix,
@@ -32,6 +33,7 @@ __all__ = [
     "choose_assemblies",
     "contact_cutoff",
     "contact_matrix",
+    "contacts_where",
     "contacts_within",
     "find_contacts",
     "image_matrix",

@@ -58,13 +58,31 @@ def contacts_within(contacts: Contacts, cutoff_angstrom: float) -> Contacts:
             f"cutoff_angstrom is {cutoff_angstrom}; contacts were searched only up to "
             f"{contacts.reach_angstrom}"
         )
-    keep = contacts.distance_angstrom <= cutoff_angstrom
+    near = contacts_where(contacts, contacts.distance_angstrom <= cutoff_angstrom)
+    return replace(near, reach_angstrom=cutoff_angstrom)
+
+
+def contacts_where(contacts: Contacts, keep: NDArray[np.bool_]) -> Contacts:
+    """Return some of the contacts.
+
+    Parameters
+    ----------
+    contacts : Contacts
+        Contacts as found.
+    keep : ndarray of bool, shape (n_contacts,)
+        Those to return.
+
+    Returns
+    -------
+    Contacts
+        In the same order.
+    """
     columns = {
         column.name: getattr(contacts, column.name)[keep]
         for column in fields(Contacts)
         if column.name != "reach_angstrom"
     }
-    return replace(contacts, reach_angstrom=cutoff_angstrom, **columns)
+    return replace(contacts, **columns)
 
 
 def operator_text(structure: Structure, contacts: Contacts, index: int) -> str:

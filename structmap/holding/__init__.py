@@ -1,0 +1,18 @@
+"""What holds a motional unit together: weakest link, area, ablation, sensitivity."""
+
+from structmap.holding.disorder import (
+    find_deciding_side_chains,
+    poorly_ordered_atoms,
+)
+from structmap.holding.finding import Held, describe_hold, prepare_holding
+from structmap.holding.record import CLOSE_CONTACT, Hold
+
+__all__ = [
+    "CLOSE_CONTACT",
+    "Held",
+    "Hold",
+    "describe_hold",
+    "find_deciding_side_chains",
+    "poorly_ordered_atoms",
+    "prepare_holding",
+]

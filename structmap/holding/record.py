@@ -1,0 +1,68 @@
+"""What is known of the contacts that hold one motional unit together."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from structmap.records import store_read_only
+from structmap.weakest import WeakestLink
+
+CLOSE_CONTACT = "close contact"
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Hold:
+    """What holds one motional unit together, and how much that depends on.
+
+    Attributes
+    ----------
+    unit : str
+        Name of the unit.
+    closes : str
+        ``finite``, ``ring``, ``rod``, ``layer`` or ``net``: what the unit closes to
+        with the kinds of contact that hold it.
+    order : int
+        Number of images in a ring.
+    periods : ndarray of float, shape (n_periods, 3)
+        Translations in cell edges after which an endless one comes back.
+    weakest : WeakestLink or None
+        The fewest contacts without which it falls apart; None for a lone member.
+    link_kinds : tuple of (str, int)
+        What these contacts can be, by the first kind that holds for each, and how many.
+    link_images : tuple of str
+        Operators with shifts, ``-x,y+1/2,-z+1/2 [1 0 0]``, of the neighbours in the
+        crystal that these contacts lead to.
+    link_chains : tuple of str
+        Chains of the assembly that they join, where they are complex contacts.
+    buried_area : float
+        Area in Å² that its members bury across lattice contacts, both sides together;
+        NaN in a file of CA atoms.
+    largest_without_lattice, largest_by_lattice_alone : int
+        Members that stay together when lattice contacts are taken away, and when only
+        these are left.
+    verdict_at : tuple of (float, str)
+        Cutoffs in Å and the verdict with each.
+    is_marginal : bool
+        Whether contacts of a closer kind would hold it within 1 Å more.
+    loose_residues : tuple of int
+        Residues of which a single poorly ordered side chain decides that it holds.
+    """
+
+    unit: str
+    closes: str
+    order: int
+    periods: NDArray[np.float64]
+    weakest: WeakestLink | None
+    link_kinds: tuple[tuple[str, int], ...]
+    link_images: tuple[str, ...]
+    link_chains: tuple[str, ...]
+    buried_area: float
+    largest_without_lattice: int
+    largest_by_lattice_alone: int
+    verdict_at: tuple[tuple[float, str], ...]
+    is_marginal: bool
+    loose_residues: tuple[int, ...]
+
+    def __post_init__(self) -> None:
+        store_read_only(self, "periods", np.float64, (None, 3))
