@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from structmap.behaviour import Behaviour, Measurements
 from structmap.contacts import Contacts, SiteGraph
 from structmap.exposure import Exposure
+from structmap.holding import Hold, Packing
 from structmap.lattice import LatticeVerdict
 from structmap.one_process import OneProcess
 from structmap.records import store_read_only
@@ -89,6 +90,8 @@ class AnalysisRecord:
         What each contact is made of, ``hydrogen bond 2.9; salt bridge 3.1``.
     exposure : Exposure
         Accessible areas of the residues.
+    packing : Packing
+        How molecules pack, and what holds each unit.
     processes : tuple of OneProcess
         For each unit whether one process explains it; empty when no model was named.
     process_notes : tuple of str
@@ -111,6 +114,7 @@ class AnalysisRecord:
     membership_probability: NDArray[np.float64]
     chemistry: NDArray[np.str_]
     exposure: Exposure
+    packing: Packing
     processes: tuple[OneProcess, ...]
     warnings: tuple[str, ...]
     reason: str = ""
@@ -136,6 +140,21 @@ class AnalysisRecord:
             None when it was not asked.
         """
         return next((p for p in self.processes if p.group == unit.name), None)
+
+    def hold_of(self, unit: MotionalUnit) -> Hold:
+        """Return what holds a unit together.
+
+        Parameters
+        ----------
+        unit : MotionalUnit
+            One of the units.
+
+        Returns
+        -------
+        Hold
+            Of that unit.
+        """
+        return next(hold for hold in self.packing.holds if hold.unit == unit.name)
 
     def unit_of_site(self) -> NDArray[np.int64]:
         """Return the unit of each site.

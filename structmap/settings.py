@@ -71,6 +71,14 @@ class Settings:
         Rate of magic-angle spinning; 0 is not given.
     sample : {'protonated', 'deuterated'}
         Decides below which spin-lock field points are left out.
+    sample_cell : str
+        Unit cell of the crystal that was measured: ``a b c alpha beta gamma`` in Å and
+        degrees; blank when it is not known to differ from the file's.
+    sample_space_group : str
+        Its space group; blank when not given.
+    network : bool
+        Whether an elastic network is asked as well, as evidence of a model beside the
+        measured values.
     keep_points : bool
         Keep the points of a profile that are left out as not motion alone.
     most_permutations : int
@@ -106,6 +114,9 @@ class Settings:
     proton_frequency_megahertz: float = 0.0
     mas_rate_hertz: float = 0.0
     sample: Literal["protonated", "deuterated"] = "protonated"
+    sample_cell: str = ""
+    sample_space_group: str = ""
+    network: bool = False
     keep_points: bool = False
     most_permutations: int = 9999
     repeats: int = 100

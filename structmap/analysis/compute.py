@@ -12,6 +12,7 @@ from structmap.analysis.evidence import (
     known_baseline,
     spread_membership,
 )
+from structmap.analysis.packing import describe_packing
 from structmap.analysis.processes import describe_molecule, judge_processes
 from structmap.analysis.steps import (
     Progress,
@@ -20,8 +21,7 @@ from structmap.analysis.steps import (
     point_reasons,
     say_nothing,
 )
-from structmap.behaviour import take_measurements
-from structmap.chemistry import find_chemistry
+from structmap.behaviour import Measurements, take_measurements
 from structmap.contacts import choose_assemblies, find_contacts, make_site_graph
 from structmap.exposure import find_exposure
 from structmap.motional_units import find_motional_units
@@ -29,7 +29,7 @@ from structmap.result import AnalysisRecord
 from structmap.secondary import assign_secondary_structure
 from structmap.settings import Settings
 from structmap.significance import Effort, judge_units, list_cautions
-from structmap.sites import site_centres
+from structmap.sites import Sites, site_centres
 from structmap.structure import Structure, read_structure
 from structmap.values import ValueTable
 
@@ -68,14 +68,7 @@ def analyse_table(
     crystal, cutoff = _surround(coordinates, table, settings, tell=tell)
     structure, sites = crystal.structure, crystal.sites
     tell("finding motional units", 0.4)
-    measurements = take_measurements(
-        table,
-        sites,
-        quantity=settings.quantity,
-        profile_part=settings.profile_part,
-        model_name=settings.model,
-        point_reason=point_reasons(table, settings),
-    )
+    measurements = _measurements(table, sites, settings)
     search = find_motional_units(
         measurements,
         crystal.graph,
@@ -84,8 +77,8 @@ def analyse_table(
         baseline=known_baseline(table, sites, measurements, settings),
     )
     # One child a step, in this order; a new step joins at the end.
-    children = np.random.default_rng(settings.seed).spawn(3)
-    random_of_judging, random_of_process, random_of_molecule = children
+    children = np.random.default_rng(settings.seed).spawn(4)
+    random_of_judging, random_of_process, random_of_molecule = children[:3]
     judgement = None
     if settings.most_permutations:
         judgement = judge_units(
@@ -99,6 +92,9 @@ def analyse_table(
         )
     tell("asking what holds the units together", 0.9)
     units = describe_units(search, judgement, crystal)
+    packing = describe_packing(
+        crystal, units, search=search, settings=settings, rng=children[3]
+    )
     tell("asking whether one process explains them", 0.95)
     processes = judge_processes(
         table, sites, search, settings=settings, rng=random_of_process
@@ -114,10 +110,9 @@ def analyse_table(
         behaviour=search.behaviour,
         units=units,
         membership_probability=spread_membership(search, judgement, len(sites.name)),
-        chemistry=find_chemistry(
-            structure, crystal.contacts, assemblies=crystal.assemblies
-        ).text,
+        chemistry=packing.chemistry.text,
         exposure=find_exposure(structure, assemblies=crystal.assemblies),
+        packing=packing,
         processes=processes,
         process_notes=describe_molecule(table, settings, rng=random_of_molecule),
         reason=search.reason,
@@ -130,6 +125,17 @@ def _with_secondary(structure: Structure) -> Structure:
     if structure.has_secondary_structure:
         return structure
     return replace(structure, secondary_structure=assign_secondary_structure(structure))
+
+
+def _measurements(table: ValueTable, sites: Sites, settings: Settings) -> Measurements:
+    return take_measurements(
+        table,
+        sites,
+        quantity=settings.quantity,
+        profile_part=settings.profile_part,
+        model_name=settings.model,
+        point_reason=point_reasons(table, settings),
+    )
 
 
 def _surround(

@@ -191,7 +191,30 @@ def spread_membership(
     ndarray of float, shape (n_sites,)
         NaN where not computed.
     """
+    if judgement is None:
+        return np.full(n_sites, np.nan)
+    return spread_over_all(judgement.membership, search.site, n_sites)
+
+
+def spread_over_all(
+    values: NDArray[np.float64], site: NDArray[np.int64], n_sites: int
+) -> NDArray[np.float64]:
+    """Return values of some sites among all sites.
+
+    Parameters
+    ----------
+    values : ndarray of float, shape (n,)
+        One a site.
+    site : ndarray of int, shape (n,)
+        Which sites these are.
+    n_sites : int
+        Sites of the match.
+
+    Returns
+    -------
+    ndarray of float, shape (n_sites,)
+        NaN where there is none.
+    """
     out = np.full(n_sites, np.nan)
-    if judgement is not None:
-        out[search.site] = judgement.membership
+    out[site] = values
     return out

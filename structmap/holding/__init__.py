@@ -5,14 +5,21 @@ from structmap.holding.disorder import (
     poorly_ordered_atoms,
 )
 from structmap.holding.finding import Held, describe_hold, prepare_holding
-from structmap.holding.record import CLOSE_CONTACT, Hold
+from structmap.holding.modelled import NetworkEvidence, ask_network
+from structmap.holding.neighbours import list_neighbours
+from structmap.holding.record import CLOSE_CONTACT, Hold, Neighbour, Packing
 
 __all__ = [
     "CLOSE_CONTACT",
     "Held",
     "Hold",
+    "Neighbour",
+    "NetworkEvidence",
+    "Packing",
+    "ask_network",
     "describe_hold",
     "find_deciding_side_chains",
+    "list_neighbours",
     "poorly_ordered_atoms",
     "prepare_holding",
 ]

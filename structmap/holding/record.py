@@ -1,11 +1,16 @@
-"""What is known of the contacts that hold one motional unit together."""
+"""What is known of the contacts that hold motional units together."""
 
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
+from structmap.cell import CellComparison
+from structmap.chemistry import Chemistry
+from structmap.holding.modelled import NetworkEvidence
+from structmap.quotient import AssemblyExtent
 from structmap.records import store_read_only
+from structmap.structure import Assembly
 from structmap.weakest import WeakestLink
 
 CLOSE_CONTACT = "close contact"
@@ -66,3 +71,57 @@ class Hold:
 
     def __post_init__(self) -> None:
         store_read_only(self, "periods", np.float64, (None, 3))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Neighbour:
+    """A neighbour in the crystal, with what lies between it and the molecule.
+
+    Attributes
+    ----------
+    numeral : str
+        Roman numeral.
+    text : str
+        Operator with shift.
+    n_contacts, n_atom_pairs : int
+        Residue contacts and atom pairs within the cutoff.
+    area : float
+        Buried area in Å², both sides together; NaN in a file of CA atoms.
+    """
+
+    numeral: str
+    text: str
+    n_contacts: int
+    n_atom_pairs: int
+    area: float
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Packing:
+    """How molecules pack, and what that has to do with the units.
+
+    Attributes
+    ----------
+    assemblies : tuple of Assembly
+        Those whose contacts are complex.
+    chemistry : Chemistry
+        What the geometry of each contact is compatible with.
+    extent : AssemblyExtent
+        How far their contacts go.
+    neighbours : tuple of Neighbour
+        In the crystal, in the order of their numerals.
+    holds : tuple of Hold
+        One for each unit, in the same order.
+    sample : CellComparison or None
+        The crystal of the sample against that of the file; None when not given.
+    network : NetworkEvidence or None
+        What an elastic network says; None when not asked.
+    """
+
+    assemblies: tuple[Assembly, ...]
+    chemistry: Chemistry
+    extent: AssemblyExtent
+    neighbours: tuple[Neighbour, ...]
+    holds: tuple[Hold, ...]
+    sample: CellComparison | None
+    network: NetworkEvidence | None
