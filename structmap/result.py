@@ -1,6 +1,6 @@
 """The plain record of one analysis, which tables, page and words are made from."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,6 +10,7 @@ from structmap.contacts import Contacts, SiteGraph
 from structmap.exposure import Exposure
 from structmap.holding import Hold, Packing
 from structmap.lattice import LatticeVerdict
+from structmap.motional_units.beside import Beside
 from structmap.one_process import OneProcess
 from structmap.records import store_read_only
 from structmap.settings import Settings
@@ -100,6 +101,8 @@ class AnalysisRecord:
         What limits the answer, the most important first, one sentence each.
     reason : str
         Why no unit can be told from these data, one sentence; blank when they can.
+    beside : Beside
+        What other choices, the other part of profiles and other methods show.
     """
 
     settings: Settings
@@ -119,6 +122,7 @@ class AnalysisRecord:
     warnings: tuple[str, ...]
     reason: str = ""
     process_notes: tuple[str, ...] = ()
+    beside: Beside = field(default_factory=Beside)
 
     def __post_init__(self) -> None:
         store_read_only(self, "chemistry", np.str_, (len(self.contacts.kind),))

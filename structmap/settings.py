@@ -86,6 +86,9 @@ class Settings:
         tests of chance and stability out.
     repeats : int
         Searches with redrawn errors behind stability and behind membership.
+    second_opinion : bool
+        Hold the units against scikit-learn's agglomerative clustering along the same
+        contacts.
     title : str
         What was measured, for the head of the page; blank makes one.
     data_note : str
@@ -120,6 +123,7 @@ class Settings:
     keep_points: bool = False
     most_permutations: int = 9999
     repeats: int = 100
+    second_opinion: bool = False
     title: str = ""
     data_note: str = ""
     seed: int = 20260

@@ -5,6 +5,7 @@ from pathlib import Path
 
 import numpy as np
 
+from structmap.analysis.beside import look_beside
 from structmap.analysis.evidence import (
     Surroundings,
     describe_units,
@@ -79,11 +80,12 @@ def analyse_table(
     # One child a step, in this order; a new step joins at the end.
     children = np.random.default_rng(settings.seed).spawn(4)
     random_of_judging, random_of_process, random_of_molecule = children[:3]
+    graphs = graphs_at_cutoffs(crystal, cutoff)
     judgement = None
     if settings.most_permutations:
         judgement = judge_units(
             search,
-            graphs_at_cutoffs(crystal, cutoff) if search.members else (),
+            graphs,
             rng=random_of_judging,
             progress=lambda step, share: tell(step, 0.5 + 0.4 * share),
             effort=Effort(
@@ -117,6 +119,9 @@ def analyse_table(
         process_notes=describe_molecule(table, settings, rng=random_of_molecule),
         reason=search.reason,
         warnings=list_cautions(search, judgement),
+        beside=look_beside(
+            table, search, measurements, crystal, settings=settings, graphs=graphs
+        ),
     )
 
 

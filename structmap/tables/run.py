@@ -5,6 +5,8 @@ from collections.abc import Iterable
 from dataclasses import asdict
 from importlib.metadata import PackageNotFoundError, version
 
+import numpy as np
+
 from structmap.contacts import KINDS
 from structmap.result import AnalysisRecord
 from structmap.tables.text import plain
@@ -52,6 +54,8 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
         "warnings": [
             plain(text) for text in (record.reason, *care_sentences(record)) if text
         ],
+        "choices": _choices(record),
+        "second_opinion": _second_opinion(record),
         "notes": [
             plain(text)
             for text in (
@@ -64,6 +68,25 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
         ],
     }
     return json.dumps(content, indent=2, ensure_ascii=False) + "\n"
+
+
+def _choices(record: AnalysisRecord) -> list[dict[str, str | int | float]]:
+    """Return what choices made otherwise would have found."""
+    return [
+        asdict(one)
+        | {"choice": plain(one.choice), "agreement": round(one.agreement, 6)}
+        for one in record.beside.choices
+    ]
+
+
+def _second_opinion(record: AnalysisRecord) -> dict[str, int | float | None] | None:
+    opinion = record.beside.second_opinion
+    if opinion is None:
+        return None
+    return {
+        name: round(value, 6) if np.isfinite(value) else None
+        for name, value in asdict(opinion).items()
+    }
 
 
 def _counts(record: AnalysisRecord) -> dict[str, int]:

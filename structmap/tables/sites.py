@@ -1,13 +1,14 @@
 """``sites.csv``: a row for each measured site."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 
 from structmap.contacts import LATTICE
 from structmap.result import AnalysisRecord
 from structmap.tables.columns import residue_text, site_identity, spread_over_sites
-from structmap.tables.text import Cell, Table
+from structmap.tables.text import Cell, Table, plain
+from structmap.words import find_gaps, gap_note
 
 
 def sites_table(record: AnalysisRecord) -> Table:
@@ -50,6 +51,7 @@ def sites_table(record: AnalysisRecord) -> Table:
         ),
     )
     partners = _lattice_partners(record)
+    gaps = find_gaps(record)
     found = _found_columns(record)
     rows = tuple(
         (
@@ -59,7 +61,7 @@ def sites_table(record: AnalysisRecord) -> Table:
             bool(partners[site]),
             " ".join(partners[site]),
             _exposure(record, site),
-            _note(record, site),
+            _note(record, site, gaps),
         )
         for site in range(len(record.sites.name))
     )
@@ -120,7 +122,9 @@ def _exposure(record: AnalysisRecord, site: int) -> float | None:
     return None if residue < 0 else float(record.exposure.relative_in_assembly[residue])
 
 
-def _note(record: AnalysisRecord, site: int) -> str:
+def _note(
+    record: AnalysisRecord, site: int, gaps: Mapping[int, tuple[int, ...]]
+) -> str:
     sites, table = record.sites, record.table
     row, residue = int(sites.row[site]), int(sites.residue[site])
     if residue < 0:
@@ -136,4 +140,6 @@ def _note(record: AnalysisRecord, site: int) -> str:
         notes.append("too few values to compare")
     fringe = [unit.name for unit in record.units if site in unit.fringe]
     notes += [f"fringe of {name}" for name in fringe]
+    if site in gaps and any(site in unit.members for unit in record.units):
+        notes.append(plain(gap_note(record, gaps[site])))
     return "; ".join(notes)

@@ -8,6 +8,7 @@ was not tested.
 from structmap.words.care import care_sentences
 from structmap.words.facts import facts
 from structmap.words.head import grouped_quantities, result_sentences, title
+from structmap.words.limits import find_gaps, gap_note
 from structmap.words.names import (
     errors_off_baseline,
     measured_chains,
@@ -29,6 +30,8 @@ __all__ = [
     "colophon",
     "errors_off_baseline",
     "facts",
+    "find_gaps",
+    "gap_note",
     "grouped_quantities",
     "joining_numerals",
     "lattice_phrase",

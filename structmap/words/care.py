@@ -4,12 +4,15 @@ import numpy as np
 
 from structmap.result import AnalysisRecord
 from structmap.significance import describe_error_scale
+from structmap.words.beside import other_part_sentences
+from structmap.words.limits import coverage_sentences
 from structmap.words.names import (
     listing,
     measured_residues,
     number_in_words,
     residues_in_view,
 )
+from structmap.words.packing import packing_cautions, sample_sentence
 
 
 def care_sentences(record: AnalysisRecord) -> tuple[str, ...]:
@@ -26,10 +29,12 @@ def care_sentences(record: AnalysisRecord) -> tuple[str, ...]:
         One sentence each; the page shows the first three in its head.
     """
     found = (
+        sample_sentence(record),
         *_care_errors(record),
         *_care_numbering(record),
         describe_error_scale(record.behaviour, record.measurements),
         *_care_crystal(record),
+        *packing_cautions(record),
         *_care_points(record),
         *_care_unmeasured(record),
         *_care_atoms(record),
@@ -82,6 +87,8 @@ def _care_crystal(record: AnalysisRecord) -> list[str]:
             f"{structure.no_crystal_reason}; contacts "
             "are those inside the molecule or assembly."
         ]
+    if record.packing.sample is not None:
+        return []
     return [
         f"A statement about the crystal holds for {structure.name}; whether the "
         "measured "
@@ -125,4 +132,10 @@ def _care_atoms(record: AnalysisRecord) -> list[str]:
 def _care_others(record: AnalysisRecord) -> tuple[str, ...]:
     """Return what comes after all that the head of the page has room for."""
     notes = [note for note in record.sites.notes if not _is_on_numbering(note)]
-    return (*record.warnings, *notes, *record.measurements.notes)
+    return (
+        *other_part_sentences(record),
+        *record.warnings,
+        *coverage_sentences(record),
+        *notes,
+        *record.measurements.notes,
+    )

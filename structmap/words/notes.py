@@ -2,8 +2,10 @@
 
 from structmap.result import AnalysisRecord
 from structmap.version import __version__
+from structmap.words.beside import choices_paragraph, second_opinion_sentence
 from structmap.words.care import care_sentences
 from structmap.words.head import result_sentences, title
+from structmap.words.limits import border_sentences
 from structmap.words.names import number_in_words
 
 
@@ -24,8 +26,16 @@ def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
         _contacts_paragraph(record),
         _units_paragraph(record),
         _simple_way(record),
+        *second_opinion_sentence(record),
+        *choices_paragraph(record),
+        *_limits_paragraph(record),
         *_process_paragraph(record),
     )
+
+
+def _limits_paragraph(record: AnalysisRecord) -> tuple[str, ...]:
+    sentences = border_sentences(record)
+    return (f"What cannot be told: {' '.join(sentences)}",) if sentences else ()
 
 
 def _process_paragraph(record: AnalysisRecord) -> tuple[str, ...]:
