@@ -18,6 +18,7 @@ from structmap.analysis.processes import describe_molecule, judge_processes
 from structmap.analysis.steps import (
     Progress,
     cutoff_of,
+    kept_points_note,
     match_by_settings,
     point_reasons,
     say_nothing,
@@ -118,7 +119,10 @@ def analyse_table(
         processes=processes,
         process_notes=describe_molecule(table, settings, rng=random_of_molecule),
         reason=search.reason,
-        warnings=list_cautions(search, judgement),
+        warnings=(
+            *list_cautions(search, judgement),
+            *kept_points_note(table, settings),
+        ),
         beside=look_beside(
             table, search, measurements, crystal, settings=settings, graphs=graphs
         ),

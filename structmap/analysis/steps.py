@@ -1,6 +1,7 @@
 """Steps that take their choices from the settings."""
 
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 
 from structmap.contacts import contact_cutoff
@@ -116,4 +117,38 @@ def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
         mas_rate_hertz=settings.mas_rate_hertz,
         proton_frequency_megahertz=settings.proton_frequency_megahertz,
         sample=settings.sample,
+    )
+
+
+def kept_points_note(table: ValueTable, settings: Settings) -> tuple[str, ...]:
+    """Say which points were put back that are not motion alone.
+
+    Parameters
+    ----------
+    table : ValueTable
+        The measured values.
+    settings : Settings
+        Every choice of the analysis.
+
+    Returns
+    -------
+    tuple of str
+        One sentence, or none where nothing was put back.
+
+    Raises
+    ------
+    UnknownUnitError
+        If the spin-lock field has no unit that is known.
+    """
+    if not settings.keep_points:
+        return ()
+    reasons = point_reasons(table, replace(settings, keep_points=False))
+    put_back = [reason for reason in reasons if reason]
+    if not put_back:
+        return ()
+    listed = "; ".join(dict.fromkeys(put_back))
+    noun = "point" if len(put_back) == 1 else "points"
+    return (
+        f"{len(put_back)} {noun} a profile that would be left out ({listed}) were kept "
+        "on demand; what they show need not be motion.",
     )

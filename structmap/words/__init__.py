@@ -6,6 +6,11 @@ was not tested.
 """
 
 from structmap.words.care import care_sentences
+from structmap.words.direction import (
+    direction_phrase,
+    direction_sentence,
+    low_quantities,
+)
 from structmap.words.facts import facts
 from structmap.words.head import grouped_quantities, result_sentences, title
 from structmap.words.limits import find_gaps, gap_note
@@ -28,6 +33,8 @@ from structmap.words.units import (
 __all__ = [
     "care_sentences",
     "colophon",
+    "direction_phrase",
+    "direction_sentence",
     "errors_off_baseline",
     "facts",
     "find_gaps",
@@ -35,6 +42,7 @@ __all__ = [
     "grouped_quantities",
     "joining_numerals",
     "lattice_phrase",
+    "low_quantities",
     "measured_chains",
     "members_phrase",
     "number_in_words",

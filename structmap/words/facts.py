@@ -4,8 +4,10 @@ import numpy as np
 
 from structmap.lattice import number_crystal_contacts
 from structmap.result import AnalysisRecord
+from structmap.words.direction import low_quantities
 from structmap.words.head import grouped_quantities
 from structmap.words.names import measured_chains, number_in_words
+from structmap.words.packing import packing_facts
 
 
 def facts(record: AnalysisRecord) -> tuple[tuple[str, tuple[str, ...]], ...]:
@@ -39,7 +41,8 @@ def _coordinate_lines(record: AnalysisRecord) -> tuple[str, ...]:
     if structure.crystal is None:
         models = structure.n_models
         return (first, "no crystal" + (f", {models} models" if models > 1 else ""))
-    return (first, f"{structure.crystal.space_group}, {_neighbours(record)}")
+    group = f"{structure.crystal.space_group}, {_neighbours(record)}"
+    return (first, group, *packing_facts(record))
 
 
 def _neighbours(record: AnalysisRecord) -> str:
@@ -52,7 +55,9 @@ def _neighbours(record: AnalysisRecord) -> str:
 def _value_lines(record: AnalysisRecord) -> tuple[str, ...]:
     names = ", ".join(record.table.names)
     if not record.measurements.is_profile:
-        return (names, ", ".join(grouped_quantities(record)))
+        low = low_quantities(record)
+        direction = (f"low means moving: {', '.join(low)}",) if low else ()
+        return (names, ", ".join(grouped_quantities(record)), *direction)
     quantity = next(
         q for q in record.table.quantities if q.name in grouped_quantities(record)
     )
