@@ -9,6 +9,7 @@ import numpy as np
 
 from structmap.contacts import KINDS
 from structmap.result import AnalysisRecord
+from structmap.tables.packing import packing_content
 from structmap.tables.text import plain
 from structmap.version import __version__
 from structmap.words import care_sentences
@@ -48,6 +49,7 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
             "degree_of_trend": record.behaviour.degree,
             "share_of_variance": round(record.behaviour.trend_share, 6),
         },
+        "packing": packing_content(record),
         "numbering": [asdict(chain) for chain in record.sites.chains],
         "residue_names_that_differ": list(record.sites.mismatches),
         "rows_without_residue": list(record.sites.unmatched),

@@ -5,8 +5,10 @@ from structmap.version import __version__
 from structmap.words.beside import choices_paragraph, second_opinion_sentence
 from structmap.words.care import care_sentences
 from structmap.words.head import result_sentences, title
+from structmap.words.holding import hold_paragraphs
 from structmap.words.limits import border_sentences
 from structmap.words.names import number_in_words
+from structmap.words.packing import assembly_paragraph, network_paragraph
 
 
 def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
@@ -23,9 +25,11 @@ def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
         Methods in plain words, with their settings.
     """
     return (
-        _contacts_paragraph(record),
+        f"{_contacts_paragraph(record)} {assembly_paragraph(record)}",
         _units_paragraph(record),
         _simple_way(record),
+        *hold_paragraphs(record),
+        *filter(None, (network_paragraph(record),)),
         *second_opinion_sentence(record),
         *choices_paragraph(record),
         *_limits_paragraph(record),

@@ -4,6 +4,7 @@ import numpy as np
 
 from structmap.one_process import OneProcess, show_interval
 from structmap.result import AnalysisRecord, MotionalUnit
+from structmap.words.holding import hold_lines
 from structmap.words.phrases import (
     across_phrase,
     bridged_chains,
@@ -81,15 +82,18 @@ def unit_holds(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
             else _bridge_line(record, unit)
         )
         if record.structure.crystal is None:
-            return (what, "the crystal was not asked: there is none")
+            asked = "the crystal was not asked: there is none"
+            return (what, asked, *hold_lines(record, unit))
         kept = len(unit.lattice.pieces_without_lattice[0])
         same = f"the same {count}" if kept == count else f"{kept} of its {count}"
-        return (what, f"{same} without crystal neighbours")
+        same = f"{same} without crystal neighbours"
+        return (what, same, *hold_lines(record, unit))
     only = "only " if verdict == "lattice-only" else ""
     operators = dict.fromkeys(
         _operator_triplet(text) for text in unit.lattice.operators
     )
-    return (only + across_phrase(record, unit), *operators, _left_without(unit))
+    left = _left_without(unit), *hold_lines(record, unit)
+    return (only + across_phrase(record, unit), *operators, *left)
 
 
 def _bridge_line(record: AnalysisRecord, unit: MotionalUnit) -> str:

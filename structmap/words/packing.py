@@ -1,0 +1,256 @@
+"""What is said of assemblies, of the crystal of the sample, of the elastic network."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from structmap.cell import DIFFERENT_CRYSTAL
+from structmap.holding import NetworkEvidence
+from structmap.result import AnalysisRecord
+from structmap.structure import Assembly
+from structmap.words.holding import directions, loose_sentences
+from structmap.words.names import listing
+
+
+def sample_sentence(record: AnalysisRecord) -> str:
+    """Return that the sample is another crystal.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    str
+        Blank when it is not, or its crystal was not given.
+    """
+    sample = record.packing.sample
+    if sample is None or sample.verdict != DIFFERENT_CRYSTAL:
+        return ""
+    return sample.sentence
+
+
+def packing_facts(record: AnalysisRecord) -> tuple[str, ...]:
+    """Return short lines on the assembly and the crystal of the sample.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    tuple of str
+        ``assembly 1 of the authors``, ``crystal of the sample: same lattice``.
+    """
+    lines = []
+    chosen = record.packing.assemblies
+    if chosen:
+        noun = "assembly" if len(chosen) == 1 else "assemblies"
+        lines.append(f"{noun} {listing(item.name for item in chosen)}, {_by(chosen)}")
+    elif record.structure.crystal is not None:
+        lines.append("each chain alone, no assembly")
+    if record.packing.sample is not None:
+        lines.append(f"crystal of the sample: {record.packing.sample.verdict}")
+    return tuple(lines)
+
+
+def _by(chosen: tuple[Assembly, ...]) -> str:
+    if all(item.by_author for item in chosen):
+        return "by the authors"
+    if all(item.by_software for item in chosen):
+        return "by software"
+    return "by whom the file does not say"
+
+
+def assembly_paragraph(record: AnalysisRecord) -> str:
+    """Return which assembly made contacts complex, and how far it goes.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    str
+        One or two sentences.
+    """
+    packing, structure = record.packing, record.structure
+    if packing.assemblies:
+        text = _assembly_sentence(record)
+    elif structure.crystal is None:
+        text = "The file names no assembly; contacts between its chains are complex."
+    elif structure.assemblies:
+        text = (
+            "No assembly was asked for: each chain alone is the molecule, and every "
+            "other chain or image a neighbour in the lattice."
+        )
+    else:
+        text = no_assembly_sentence(record)
+    endless = endless_sentence(record)
+    return f"{text} {endless}".rstrip()
+
+
+def packing_cautions(record: AnalysisRecord) -> tuple[str, ...]:
+    """Return what limits statements about the crystal.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    tuple of str
+        An endless assembly, no assembly, a poorly ordered side chain.
+    """
+    found = endless_sentence(record), no_assembly_sentence(record)
+    return (*filter(None, found), *loose_sentences(record))
+
+
+def no_assembly_sentence(record: AnalysisRecord) -> str:
+    """Return that a crystal comes without any assembly.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    str
+        Blank when there is no crystal or an assembly is listed.
+    """
+    structure = record.structure
+    if structure.crystal is None or structure.assemblies:
+        return ""
+    return (
+        f"{structure.name} names no assembly: each chain alone is taken for the "
+        "molecule, and every other chain or image for a neighbour in the lattice."
+    )
+
+
+def _assembly_sentence(record: AnalysisRecord) -> str:
+    chosen = record.packing.assemblies
+    named = listing(_described(record, item) for item in chosen)
+    named += f", determined {_by(chosen)},"
+    noun, verb = ("assembly", "is") if len(chosen) == 1 else ("assemblies", "are")
+    others = len(record.structure.assemblies) - len(chosen)
+    left = f" Of {others + len(chosen)} that the file lists" if others else ""
+    if left:
+        return (
+            f"{left.strip()} {noun} {named} {verb} used; contacts within are complex."
+        )
+    return f"Contacts within {noun} {named} are complex."
+
+
+def _described(record: AnalysisRecord, item: Assembly) -> str:
+    n_chains = sum(len(names) for names in item.chains)
+    n_here = len(record.structure.chain_copies)
+    size = ""
+    if n_chains != n_here and record.structure.crystal is not None:
+        size = "larger" if n_chains > n_here else "smaller"
+        size += " than the asymmetric unit"
+    told = ", ".join(part for part in (item.oligomer, size) if part)
+    return f"{item.name} ({told})" if told else item.name
+
+
+def endless_sentence(record: AnalysisRecord) -> str:
+    """Return that the assembly is a slice of something endless.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    str
+        Blank when it is finite.
+    """
+    extent = record.packing.extent
+    if not extent.is_endless or not record.packing.assemblies:
+        return ""
+    rank = max(part.rank for part in extent.parts)
+    part = next(part for part in extent.parts if part.rank == rank)
+    where = directions(part.periods.tolist())
+    return (
+        f"The assembly is a finite slice of an endless {extent.closes}: its contacts "
+        f"go on through the crystal {where}.".replace(" .", ".")
+    )
+
+
+def network_paragraph(record: AnalysisRecord) -> str:
+    """Return what the elastic network says, labelled as a model.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    str
+        Blank when it was not asked.
+    """
+    network = record.packing.network
+    if network is None:
+        return ""
+    sentences = [
+        "Evidence of a model, which sets no verdict: an elastic network of equal "
+        "springs between CA (P) atoms within 7.3\u00a0Å",
+        _agreement(record, network),
+    ]
+    followed = network.followed.follows
+    if record.structure.crystal is not None:
+        told = {"undecided": "either profile equally well, as far as can be told"}
+        sentences.append(
+            "The measured departures from the baseline follow "
+            + told.get(followed, f"its profile of the {followed}")
+        )
+        sentences += _damping(record, network)
+    for unit, together in zip(record.units, network.together, strict=True):
+        if together is not None and np.isfinite(together.p_value):
+            sentences.append(
+                f"In the slow modes of the assembly {unit.name} moves with a mean "
+                f"correlation of {together.correlation:.2f}, random groups as compact "
+                f"with {together.random_mean:.2f} (p\u00a0{together.p_value:.2f})"
+            )
+    return " ".join(f"{sentence}." for sentence in sentences if sentence)
+
+
+def _agreement(record: AnalysisRecord, network: NetworkEvidence) -> str:
+    names = {"isolated": "alone", "assembly": "in the assembly"}
+    if record.structure.crystal is not None:
+        names["crystal"] = "in the crystal"
+    found = {
+        word: network.agreement[name].pearson
+        for name, word in names.items()
+        if np.isfinite(network.agreement[name].pearson)
+    }
+    if not found:
+        return "The B factors of the file do not vary, so it cannot be checked on them"
+    parts = [f"{r:.2f} {word}" for word, r in found.items()]
+    return f"Correlation with the B factors: {listing(parts)}".replace("-", "−")
+
+
+def _damping(record: AnalysisRecord, network: NetworkEvidence) -> list[str]:
+    inside = record.unit_of_site() >= 0
+    others = _median(network.site_damping[~inside])
+    parts = [
+        f"{_median(network.site_damping[unit.members]):.2f} for {unit.name}"
+        for unit in record.units
+        if np.isfinite(_median(network.site_damping[unit.members]))
+    ]
+    if not parts:
+        return []
+    rest = (
+        f" against {others:.2f} for the other residues" if np.isfinite(others) else ""
+    )
+    return [f"Packing leaves this share of the fluctuation: {listing(parts)}{rest}"]
+
+
+def _median(values: NDArray[np.float64]) -> float:
+    known = values[np.isfinite(values)]
+    return float(np.median(known)) if len(known) else float("nan")
