@@ -401,7 +401,7 @@ def _why_none(links: Links, error_scale: float) -> str:
     if links.n_rows == 0:
         return "No unit can be told: no site has enough values to compare."
     if links.n_rows < SMALLEST_UNIT:
-        sites = "one site" if links.n_rows == 1 else f"{links.n_rows} sites"
+        sites = "one site" if links.n_rows == 1 else "two sites"
         return f"No unit can be told: only {sites} to compare; a unit needs three."
     if not error_scale > 0:
         return "No unit can be told: all values are equal."

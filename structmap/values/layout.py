@@ -109,12 +109,13 @@ def find_layout(grid: Grid) -> Layout:
     free = [c for c in range(len(grid.header)) if c not in site.values()]
     free = [c for c in free if grid.header[c] != _SKIPPED]
     x, quantity = _long_columns(grid, free)
-    free = [c for c in free if c not in (x, quantity) and _is_measured(grid, c, notes)]
-    names = {c: _named(grid, c) for c in free}
-    errors = _pair_errors(grid, names)
-    values = [c for c in free if not names[c].is_error]
+    free = [c for c in free if c not in (x, quantity)]
+    kept = [c for c in free if _is_measured(grid, c, notes)]
+    names = _without_lonely_errors(grid, kept, [c for c in free if c not in kept])
+    values = [c for c in names if not names[c].is_error]
     if not values:
         raise NoQuantityError(grid.path, grid.header)
+    errors = _pair_errors(grid, names)
     points = (
         {} if x >= 0 else _profile_points(grid, {c: names[c] for c in values}, notes)
     )
@@ -185,6 +186,19 @@ def _is_measured(grid: Grid, column: int, notes: list[str]) -> bool:
     )
     notes.append(f"{grid.path.name}: {called} was left out.")
     return False
+
+
+def _without_lonely_errors(
+    grid: Grid, kept: list[int], left_out: list[int]
+) -> dict[int, ColumnName]:
+    """Return the names of the columns kept, less errors of values left out."""
+    blank = {_named(grid, column).name for column in left_out if grid.header[column]}
+    named = {column: _named(grid, column) for column in kept}
+    return {
+        column: name
+        for column, name in named.items()
+        if not (name.is_error and name.name and name.name in blank)
+    }
 
 
 def _named(grid: Grid, column: int) -> ColumnName:
