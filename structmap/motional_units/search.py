@@ -1,11 +1,11 @@
 """The whole search: background, error scale, who moves, and the units."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.stats import chi2
+from scipy.stats import f as f_distribution
 
 from structmap.behaviour import (
     Behaviour,
@@ -23,6 +23,7 @@ from structmap.motional_units.background import (
 from structmap.motional_units.degree import ChosenFits, flat_field, search_samples
 from structmap.motional_units.edge_filter import find_edge_filter_units
 from structmap.motional_units.field import (
+    Booleans,
     Field,
     Floats,
     Integers,
@@ -38,6 +39,7 @@ from structmap.motional_units.refinement import (
 
 # Share of false discoveries allowed among the sites called moving.
 FALSE_DISCOVERY_SHARE = 0.05
+MEDIAN_EFFICIENCY = 0.37
 SIGN = {"both": 0, "up": 1, "down": -1}
 
 
@@ -144,12 +146,17 @@ def find_motional_units(
     background = chosen.background[0] * scales + (0.0 if known is None else known)
     rows = tuple(np.flatnonzero(label == unit) for unit in range(len(energy)))
     return UnitSearch(
-        behaviour=_describe(
-            measurements,
-            background=background,
-            degree=int(chosen.degree[0]),
-            field=field,
-            error_scale=float(chosen.scale[0] * np.median(own_scatter(measurements))),
+        behaviour=replace(
+            _describe(
+                measurements,
+                background=background,
+                degree=int(chosen.degree[0]),
+                field=field,
+                error_scale=float(
+                    chosen.scale[0] * np.median(own_scatter(measurements))
+                ),
+                resting=label < 0,
+            ),
             edge_filter_unit=find_edge_filter_units(samples, links, bases[0]),
         ),
         site=measurements.site,
@@ -269,9 +276,9 @@ def _describe(
     degree: int,
     field: Field,
     error_scale: float,
-    edge_filter_unit: Integers,
+    resting: Booleans,
 ) -> Behaviour:
-    chance = chi2.sf(field.power, field.freedom)
+    chance = _chance_of_deviation(field, resting)
     deviation = np.sqrt(field.power)
     if measurements.value.shape[1] == 1:
         deviation = deviation * np.sign(field.value[:, 0])
@@ -289,8 +296,27 @@ def _describe(
         summary_error=summary.error,
         summary_name=summary.name,
         summary_unit=summary.unit,
-        edge_filter_unit=edge_filter_unit,
+        edge_filter_unit=np.zeros(len(deviation), np.int64),
     )
+
+
+def _chance_of_deviation(field: Field, resting: Booleans) -> Floats:
+    """Return the chance of each deviation under an error scale that was estimated.
+
+    The scale is a median of absolute values, which tells the standard deviation as well
+    as a mean square of 37 % of the values would (Rousseeuw and Croux, J. Am. Stat.
+    Assoc. 88, 1273 (1993), from memory); so the mean square deviation of a site follows
+    Fisher's F with that many degrees of freedom below. The baseline, a median too, has
+    an error of its own, and a median of distances from it comes out small in small
+    samples (n / (n - 0.8); Croux and Rousseeuw, Compstat 1992, from memory).
+    """
+    n_rest = max(int(resting.sum()), 2)
+    told = MEDIAN_EFFICIENCY * float(field.freedom[resting].sum())
+    small = (n_rest / (n_rest - 0.8)) ** 2 * (1 + np.pi / (2 * n_rest))
+    out: Floats = f_distribution.sf(
+        field.power / field.freedom / small, field.freedom, max(told, 1.0)
+    )
+    return out
 
 
 def _one_sided(chance: Floats, deviation: Floats, direction: int) -> Floats:
