@@ -3,6 +3,7 @@
 from structmap.analysis.compute import analyse_table
 from structmap.analysis.handle import Analysis, analyse, analyse_example, example_folder
 from structmap.analysis.jobs import (
+    ShiftChoices,
     compare_analyses,
     judge_table,
     list_contacts,
@@ -13,6 +14,7 @@ from structmap.analysis.jobs import (
 
 __all__ = [
     "Analysis",
+    "ShiftChoices",
     "analyse",
     "analyse_example",
     "analyse_table",

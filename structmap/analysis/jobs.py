@@ -1,6 +1,8 @@
 """The smaller jobs: only the numbering, only the contacts."""
 
 from collections.abc import Sequence
+from dataclasses import dataclass, field
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -19,6 +21,7 @@ from structmap.analysis.steps import (
 from structmap.chemistry import find_chemistry
 from structmap.contacts import KINDS, choose_assemblies, find_contacts
 from structmap.errors import SettingError
+from structmap.experiment import convert_to_base
 from structmap.files import write_folder
 from structmap.forms import compare_folders
 from structmap.one_process import (
@@ -31,7 +34,14 @@ from structmap.one_process import (
     whole_words,
 )
 from structmap.settings import Settings
-from structmap.shifts import compare_shifts, perturbation_rows
+from structmap.shifts import (
+    compare_shifts,
+    find_doubled_peaks,
+    perturbation_rows,
+    perturbation_table,
+    pick_list,
+    profile_rows,
+)
 from structmap.sites import Sites, match_rows
 from structmap.structure import read_structure
 from structmap.tables import Table, contacts_table, table_text
@@ -196,8 +206,30 @@ def judge_table(
     return Table(columns=ONE_PROCESS_COLUMNS, rows=cells), tuple(notes)
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ShiftChoices:
+    """How shift lists are compared.
+
+    Attributes
+    ----------
+    weights : dict of str to float
+        Weights of the nuclei that enter; empty takes the usual ones of H and N.
+    x : tuple of float
+        Total ligand or the like of each list; empty compares with the last list.
+    x_unit : str
+        Unit of x, for example uM.
+    list_names : tuple of str
+        Which shift list of each file; empty where each holds one.
+    """
+
+    weights: dict[str, float] = field(default_factory=dict)
+    x: tuple[float, ...] = ()
+    x_unit: str = ""
+    list_names: tuple[str, ...] = ()
+
+
 def perturb_shifts(
-    lists: Sequence[Path | str],
+    lists: Sequence[Path | str], choices: ShiftChoices | None = None
 ) -> tuple[Table, tuple[str, ...]]:
     """Turn two or more shift lists into a perturbation of each residue.
 
@@ -205,24 +237,78 @@ def perturb_shifts(
     ----------
     lists : sequence of Path or str
         The list to start from, then the others in order.
+    choices : ShiftChoices, optional
+        Weights, x of a titration, which list of a file.
 
     Returns
     -------
     table : Table
-        One that `analyse` reads.
+        One that `analyse` reads: a row a residue, or with x a row a point.
     notes : tuple of str
         Threshold, lost and doubled peaks.
 
     Raises
     ------
     StructmapError
-        If a file cannot be used or no residue stands in two lists.
+        If a file cannot be used, no residue stands in two lists, or a choice does not
+        fit the lists.
     """
-    comparison = compare_shifts([read_values([Path(path)]) for path in lists])
-    rows = perturbation_rows(comparison)
+    chosen = choices or ShiftChoices()
+    _check_shift_choices(chosen, len(lists))
+    names = chosen.list_names or ("",) * len(lists)
+    tables = [
+        pick_list(read_values([Path(path)]), name)
+        for path, name in zip(lists, names, strict=True)
+    ]
+    comparison = compare_shifts(tables, weights=chosen.weights or None)
+    if chosen.x:
+        series = perturbation_table(
+            comparison, x=chosen.x, x_name="x", x_unit=chosen.x_unit
+        )
+        rows = profile_rows(series)
+    else:
+        doubled = find_doubled_peaks(tables[-1]) if comparison.doubled.any() else None
+        rows = perturbation_rows(comparison, doubled=doubled)
     columns = tuple(rows[0])
     cells = tuple(tuple(row.values()) for row in rows)
-    return Table(columns=columns, rows=cells), comparison.notes
+    told = [note for table in tables for note in table.notes if "shift list" in note]
+    notes = (*told, _weights_note(chosen, comparison.nuclei), *comparison.notes)
+    return Table(columns=columns, rows=cells), notes
+
+
+def _check_shift_choices(choices: ShiftChoices, n_lists: int) -> None:
+    if choices.list_names and len(choices.list_names) != n_lists:
+        raise SettingError(
+            "options",
+            "list",
+            f"names {len(choices.list_names)} lists for {n_lists} files",
+            "give one a file, parted by commas",
+        )
+    refused = [name for name, size in choices.weights.items() if not 0 < size < np.inf]
+    if refused:
+        remedy = "give numbers above 0, as in H=1,N=0.14"
+        raise SettingError("options", "weights", f"of {refused[0]} is not", remedy)
+    x = choices.x
+    if not x:
+        return
+    rising = all(low < high for low, high in pairwise(x))
+    if len(x) != n_lists or not rising or not 0 <= x[0] <= x[-1] < np.inf:
+        raise SettingError(
+            "options",
+            "x",
+            f"is {', '.join(f'{value:g}' for value in x)}",
+            f"give {n_lists} rising values of 0 or more, one a list in the same order",
+        )
+    convert_to_base(x, choices.x_unit, quantity="--x-unit")
+
+
+def _weights_note(choices: ShiftChoices, nuclei: tuple[str, ...]) -> str:
+    if choices.weights:
+        shown = ", ".join(f"{name} {choices.weights[name]:g}" for name in nuclei)
+    else:
+        usual = {"H": "H 1", "N": "N 0.14 (0.20 in glycine)"}
+        shown = ", ".join(usual[name] for name in nuclei)
+    return f"Weights of the nuclei: {shown}."
 
 
 def compare_analyses(folders: Sequence[Path], output: Path) -> tuple[str, ...]:

@@ -8,7 +8,13 @@ from dataclasses import fields
 from pathlib import Path
 from typing import Any
 
-from structmap.cli.options import ShowSettings, add_settings
+from structmap.cli.options import (
+    ShowSettings,
+    add_settings,
+    comma_parted,
+    listed_numbers,
+    weights_by_nucleus,
+)
 from structmap.cli.running import (
     run_analyse,
     run_compare,
@@ -35,7 +41,7 @@ _MATCH_SETTINGS = (
 )
 _PROCESS_SETTINGS = (
     *("model", "mas_rate_hertz", "proton_frequency_megahertz", "sample", "quantity"),
-    *("columns", "seed"),
+    *("process_quantity", "keep_points", "columns", "seed"),
 )
 
 
@@ -212,7 +218,10 @@ def _add_shifts(commands: Any) -> None:
         "shifts",
         run_shifts,
         summary="turn two or more shift lists into a perturbation of each residue",
-        example="structmap shifts free.str bound.str -o perturbation.csv",
+        example="structmap shifts free.str bound.str -o perturbation.csv\n"
+        "structmap shifts free.csv half.csv full.csv --x 0,50,100 --x-unit uM \\\n"
+        "    -o titration.csv\n"
+        "structmap one-process titration.csv --model binding",
     )
     command.add_argument("free", type=Path, help="shift list to start from")
     command.add_argument(
@@ -220,6 +229,31 @@ def _add_shifts(commands: Any) -> None:
     )
     command.add_argument(
         "-o", "--output", type=Path, required=True, help="table that analyse reads"
+    )
+    command.add_argument(
+        "--weights",
+        type=weights_by_nucleus,
+        default={},
+        metavar="H=1,N=0.14",
+        help="nuclei that enter and their weights [H=1,N=0.14, 0.20 in glycine]",
+    )
+    command.add_argument(
+        "--x",
+        type=listed_numbers,
+        default=(),
+        metavar="0,50,…",
+        help="total ligand of each list: writes the titration, a row a point",
+    )
+    command.add_argument(
+        "--x-unit", default="", metavar="uM", help="unit of x: M, mM, uM, nM, …"
+    )
+    command.add_argument(
+        "--list",
+        dest="list_names",
+        type=comma_parted,
+        default=(),
+        metavar="NAME,NAME",
+        help="shift list of each file that holds several: its save frame or number",
     )
 
 

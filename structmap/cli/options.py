@@ -36,7 +36,7 @@ def add_settings(command: Any, names: Sequence[str]) -> None:
         if kind is bool:
             group.add_argument(option, action=argparse.BooleanOptionalAction, **say)
         elif get_origin(kind) is tuple:
-            group.add_argument(option, type=_comma_parted, metavar="A,B,…", **say)
+            group.add_argument(option, type=comma_parted, metavar="A,B,…", **say)
         elif name == "seed" or int in (kind, *get_args(kind)):
             group.add_argument(option, type=int, metavar="N", **say)
         elif kind is float:
@@ -48,8 +48,73 @@ def add_settings(command: Any, names: Sequence[str]) -> None:
             )
 
 
-def _comma_parted(text: str) -> tuple[str, ...]:
+def comma_parted(text: str) -> tuple[str, ...]:
+    """Return the parts of a word of a call.
+
+    Parameters
+    ----------
+    text : str
+        Parts with commas between them.
+
+    Returns
+    -------
+    tuple of str
+        Without blanks.
+    """
     return tuple(part.strip() for part in text.split(",") if part.strip())
+
+
+def listed_numbers(text: str) -> tuple[float, ...]:
+    """Return the numbers of a word of a call.
+
+    Parameters
+    ----------
+    text : str
+        Numbers with commas between them.
+
+    Returns
+    -------
+    tuple of float
+        In the order given.
+
+    Raises
+    ------
+    ArgumentTypeError
+        If a part is no number.
+    """
+    try:
+        return tuple(float(part) for part in comma_parted(text))
+    except ValueError as error:
+        raise argparse.ArgumentTypeError(
+            f"{text!r} is not a list of numbers like 0,50,100"
+        ) from error
+
+
+def weights_by_nucleus(text: str) -> dict[str, float]:
+    """Return the weights of nuclei of a word of a call.
+
+    Parameters
+    ----------
+    text : str
+        ``H=1,N=0.14``.
+
+    Returns
+    -------
+    dict of str to float
+        By nucleus.
+
+    Raises
+    ------
+    ArgumentTypeError
+        If a part is not a nucleus and a number.
+    """
+    parts = [part.partition("=") for part in comma_parted(text)]
+    try:
+        return {name.strip(): float(number) for name, _, number in parts}
+    except ValueError as error:
+        raise argparse.ArgumentTypeError(
+            f"{text!r} is not a list of weights like H=1,N=0.14"
+        ) from error
 
 
 def _shown(value: Any) -> str:

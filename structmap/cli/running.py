@@ -117,11 +117,17 @@ def run_shifts(call: argparse.Namespace) -> None:
     call : argparse.Namespace
         The words of the call.
     """
-    from structmap.analysis import perturb_shifts
+    from structmap.analysis import ShiftChoices, perturb_shifts
     from structmap.files import write_file
     from structmap.tables import table_text
 
-    table, notes = perturb_shifts([call.free, *call.bound])
+    choices = ShiftChoices(
+        weights=call.weights,
+        x=call.x,
+        x_unit=call.x_unit,
+        list_names=call.list_names,
+    )
+    table, notes = perturb_shifts([call.free, *call.bound], choices)
     write_file(call.output, table_text(table))
     say(call, "\n".join(notes))
 

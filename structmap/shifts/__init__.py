@@ -17,6 +17,7 @@ from structmap.shifts.conformers import (
     find_populations,
     pair_with_states,
 )
+from structmap.shifts.lists import pick_list, profile_rows
 
 __all__ = [
     "DoubledPeaks",
@@ -34,4 +35,6 @@ __all__ = [
     "pair_with_states",
     "perturbation_rows",
     "perturbation_table",
+    "pick_list",
+    "profile_rows",
 ]
