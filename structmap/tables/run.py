@@ -12,7 +12,7 @@ from structmap.result import AnalysisRecord
 from structmap.tables.packing import packing_content
 from structmap.tables.text import plain
 from structmap.version import __version__
-from structmap.words import care_sentences
+from structmap.words import care_sentences, low_quantities
 
 
 def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
@@ -44,6 +44,7 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
         "inputs_sha256": inputs,
         "libraries": library_versions(),
         "counts": _counts(record),
+        "low_means_moving": list(low_quantities(record)),
         "error_scale": round(record.behaviour.error_scale, 6),
         "baseline": {
             "degree_of_trend": record.behaviour.degree,
@@ -65,6 +66,7 @@ def run_text(record: AnalysisRecord, notes: Iterable[str] = ()) -> str:
                 *table.notes,
                 *record.sites.notes,
                 *record.measurements.notes,
+                *record.process_notes,
                 *notes,
             )
         ],

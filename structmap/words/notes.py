@@ -4,6 +4,7 @@ from structmap.result import AnalysisRecord
 from structmap.version import __version__
 from structmap.words.beside import choices_paragraph, second_opinion_sentence
 from structmap.words.care import care_sentences
+from structmap.words.direction import direction_sentence
 from structmap.words.head import result_sentences, title
 from structmap.words.holding import hold_paragraphs
 from structmap.words.limits import border_sentences
@@ -26,7 +27,7 @@ def rests_on(record: AnalysisRecord) -> tuple[str, ...]:
     """
     return (
         f"{_contacts_paragraph(record)} {assembly_paragraph(record)}",
-        _units_paragraph(record),
+        f"{_units_paragraph(record)} {direction_sentence(record)}".rstrip(),
         _simple_way(record),
         *hold_paragraphs(record),
         *filter(None, (network_paragraph(record),)),

@@ -4,6 +4,7 @@ import numpy as np
 
 from structmap.one_process import OneProcess, show_interval
 from structmap.result import AnalysisRecord, MotionalUnit
+from structmap.words.direction import direction_phrase
 from structmap.words.holding import hold_lines
 from structmap.words.phrases import (
     across_phrase,
@@ -169,6 +170,8 @@ def unit_sentence(record: AnalysisRecord, unit: MotionalUnit) -> str:
     head = (
         f"{unit.name}, {members_phrase(record, unit)}, {lattice_phrase(record, unit)}"
     )
+    way = direction_phrase(record, unit)
+    head += f"; {way}" if way else ""
     return f"{head}; {_sure_phrase(unit)}{_process_clause(record, unit)}."
 
 
