@@ -10,6 +10,8 @@ NAMED_AT_MOST = 5
 
 
 LEVEL = 0.05
+# A score that no placement fails to reach is none: what likeness earns, unlikeness takes.
+NEVER_LESS = 0.995
 
 
 def hint_phrase(unit: MotionalUnit) -> str:
@@ -26,6 +28,8 @@ def hint_phrase(unit: MotionalUnit) -> str:
         A phrase that follows the name of the unit.
     """
     chance = max(unit.p_any, unit.p_place)
+    if unit.p_place >= NEVER_LESS:
+        return "moves, but its residues are not alike within their errors: a hint"
     if not chance <= LEVEL:
         text = f"is a hint: chance alone makes groups as good (p\u00a0{chance:.2g})"
     else:
