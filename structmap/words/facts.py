@@ -1,5 +1,7 @@
 """The facts beside the title."""
 
+from collections.abc import Sequence
+
 import numpy as np
 
 from structmap.lattice import number_crystal_contacts
@@ -8,6 +10,8 @@ from structmap.words.direction import low_quantities
 from structmap.words.head import grouped_quantities
 from structmap.words.names import measured_chains, number_in_words
 from structmap.words.packing import packing_facts
+
+NAMED_AT_MOST = 3
 
 
 def facts(record: AnalysisRecord) -> tuple[tuple[str, tuple[str, ...]], ...]:
@@ -53,18 +57,25 @@ def _neighbours(record: AnalysisRecord) -> str:
 
 
 def _value_lines(record: AnalysisRecord) -> tuple[str, ...]:
-    names = ", ".join(record.table.names)
+    files = _some(record.table.names, "files")
     if not record.measurements.is_profile:
         low = low_quantities(record)
-        direction = (f"low means moving: {', '.join(low)}",) if low else ()
-        return (names, ", ".join(grouped_quantities(record)), *direction)
+        direction = (f"low means moving: {_some(low, 'quantities')}",) if low else ()
+        return (files, _some(grouped_quantities(record), "quantities"), *direction)
     quantity = next(
         q for q in record.table.quantities if q.name in grouped_quantities(record)
     )
     spread = f"{quantity.x[0]:g}–{quantity.x[-1]:g} {quantity.x_unit}".rstrip()
     if record.settings.mas_rate_hertz:
         spread += f", spinning at {record.settings.mas_rate_hertz / 1000:g}\u00a0kHz"
-    return (f"{names}, {len(quantity.x)} points", spread)
+    return (f"{files}, {len(quantity.x)} points", spread)
+
+
+def _some(names: Sequence[str], noun: str) -> str:
+    """Return few names in full, of many the first and how many there are."""
+    if len(names) <= NAMED_AT_MOST:
+        return ", ".join(names)
+    return f"{names[0]} and {number_in_words(len(names) - 1)} more {noun}"
 
 
 def _numbering_lines(record: AnalysisRecord) -> tuple[str, ...]:
