@@ -19,7 +19,12 @@ from structmap.analysis.steps import (
     say_nothing,
 )
 from structmap.chemistry import find_chemistry
-from structmap.contacts import KINDS, choose_assemblies, find_contacts
+from structmap.contacts import (
+    KINDS,
+    choose_assemblies,
+    find_contacts,
+    overlap_warning,
+)
 from structmap.errors import SettingError
 from structmap.experiment import convert_to_base
 from structmap.files import write_folder
@@ -157,7 +162,8 @@ def list_contacts(
     notes.append(f"assemblies that make contacts complex: {names or 'none stated'}")
     chemistry = find_chemistry(structure, found, assemblies=assemblies).text
     table = contacts_table(structure, found, chemistry=chemistry)
-    return table, (*notes, *structure.warnings)
+    overlap = overlap_warning(structure, found)
+    return table, (*notes, *structure.warnings, *filter(None, (overlap,)))
 
 
 def judge_table(

@@ -9,6 +9,7 @@ from structmap.contacts.describing import (
     image_matrix,
     mate_matrix,
     operator_text,
+    overlap_warning,
 )
 from structmap.contacts.finding import find_contacts
 from structmap.contacts.group import GroupTable, make_group_table
@@ -41,4 +42,5 @@ __all__ = [
     "make_site_graph",
     "mate_matrix",
     "operator_text",
+    "overlap_warning",
 ]

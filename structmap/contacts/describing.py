@@ -7,7 +7,9 @@ from numpy.typing import ArrayLike, NDArray
 
 from structmap.contacts.group import element_matrix
 from structmap.contacts.record import Contacts
-from structmap.structure import Structure
+from structmap.structure import Structure, residue_label
+
+OVERLAP_ANGSTROM = 1.0
 
 
 def contact_cutoff(
@@ -83,6 +85,36 @@ def contacts_where(contacts: Contacts, keep: NDArray[np.bool_]) -> Contacts:
         if column.name != "reach_angstrom"
     }
     return replace(contacts, **columns)
+
+
+def overlap_warning(structure: Structure, contacts: Contacts) -> str:
+    """Return that molecules overlap with their images, if they do.
+
+    Parameters
+    ----------
+    structure : Structure
+        Coordinates as read.
+    contacts : Contacts
+        Contacts as found.
+
+    Returns
+    -------
+    str
+        One sentence; blank when no atoms of residues in different images come within
+        1 Å, where no two atoms can be.
+    """
+    elsewhere = (contacts.operator != 0) | contacts.shift.any(axis=1)
+    over = np.flatnonzero(elsewhere & (contacts.distance_angstrom < OVERLAP_ANGSTROM))
+    if not len(over):
+        return ""
+    image = operator_text(structure, contacts, int(over[0]))
+    label = residue_label(structure, int(contacts.residue_1[over[0]]))
+    noun = "pair of residues comes" if len(over) == 1 else "pairs of residues come"
+    return (
+        f"Molecules overlap with their images: {len(over)} {noun} within 1\u00a0Å "
+        f"({label} of {image} first); cell, space group or coordinates do not belong "
+        "together, and contacts across the crystal mean nothing there."
+    )
 
 
 def operator_text(structure: Structure, contacts: Contacts, index: int) -> str:

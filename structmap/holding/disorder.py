@@ -6,7 +6,7 @@ from numpy.typing import NDArray
 from structmap.contacts import LATTICE, Contacts, contacts_where, make_site_graph
 from structmap.lattice import SHARE_NEEDED, connected_pieces
 from structmap.sites import Sites
-from structmap.structure import POLYMER, Structure
+from structmap.structure import LOW_CONFIDENCE, POLYMER, Structure
 
 BACKBONE = (
     *("N", "CA", "C", "O", "OXT", "P", "OP1", "OP2", "O5'", "C5'", "C4'", "O4'"),
@@ -80,13 +80,16 @@ def poorly_ordered_atoms(structure: Structure) -> NDArray[np.bool_]:
     Returns
     -------
     ndarray of bool, shape (n_atoms,)
-        B factor above twice the median of the chain, or occupancy below one half.
+        B factor above twice the median of the chain, or occupancy below one half; in a
+        predicted model confidence below 70.
     """
     residue = structure.residue_of_atom
     side = (structure.kind_of_residue[residue] == POLYMER) & ~np.isin(
         structure.atom_name, BACKBONE
     )
     chain = structure.copy_of_residue[residue]
+    if structure.is_predicted:
+        return np.asarray(side & (structure.b_iso < LOW_CONFIDENCE))
     median = np.full(len(structure.chain_copies) + 1, np.inf)
     for index in range(len(structure.chain_copies)):
         b_factors = structure.b_iso[chain == index]

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 from structmap.records import store_read_only
 from structmap.result import AnalysisRecord
 from structmap.structure import POLYMER, Structure, one_letter
-from structmap.words import measured_chains
+from structmap.words import confidence_note, measured_chains
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -193,4 +193,7 @@ def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:
             notes.append(
                 "; ".join(f"at the edge of {name}" for name in fringe.get(site, []))
             )
-    return notes
+    return [
+        "; ".join(filter(None, (note, confidence_note(record, residue))))
+        for note, residue in zip(notes, listing.residue.tolist(), strict=True)
+    ]

@@ -1,5 +1,10 @@
 """Reading coordinates: polymer residues, their atoms, the crystal, the assemblies."""
 
+from structmap.structure.confidence import (
+    LOW_CONFIDENCE,
+    is_low_confidence,
+    residue_confidence,
+)
 from structmap.structure.names import one_letter, residue_label
 from structmap.structure.reading import read_structure
 from structmap.structure.record import (
@@ -14,13 +19,16 @@ from structmap.structure.record import (
 
 __all__ = [
     "LIGAND",
+    "LOW_CONFIDENCE",
     "POLYMER",
     "WATER",
     "Assembly",
     "ChainCopy",
     "Crystal",
     "Structure",
+    "is_low_confidence",
     "one_letter",
     "read_structure",
+    "residue_confidence",
     "residue_label",
 ]

@@ -18,6 +18,7 @@ from structmap.structure.chains import (
 from structmap.structure.entries import AtomTable, Entry, collect_entries
 from structmap.structure.expansion import atom_columns, make_layout, residue_columns
 from structmap.structure.files import ParsedFile, find_model, parse_file
+from structmap.structure.oddities import find_oddities, is_predicted
 from structmap.structure.record import POLYMER, ChainCopy, Crystal, Structure
 from structmap.structure.symmetry import check_cell_against_group, find_crystal
 
@@ -25,6 +26,7 @@ CA_ONLY_ATOMS_PER_RESIDUE = 1.5
 # Å^3/Da. Dry protein fills 1.23 (0.74 cm^3/g); Matthews, J. Mol. Biol. 33, 491 (1968)
 # found 1.6 to 3.5 in crystals of proteins, and peptides pack more tightly.
 USUAL_VOLUME_PER_DALTON = (1.2, 6.0)
+PREDICTED_REASON = "the coordinates are a predicted model"
 LEAST_VOLUME_PER_ATOM = 3.0  # Å^3; diamond has 5.7
 
 
@@ -78,6 +80,7 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     if crystal is not None:
         _refuse_crowded_cell(parsed, crystal, len(ncs) * len(atoms.entry))
     warnings = _warnings(parsed, crystal, entries, chains)
+    warnings += find_oddities(parsed, entries, atoms)
     if crystal is not None and not model and len(parsed.content) > 1:
         count = len(parsed.content)
         warnings.append(
@@ -142,6 +145,7 @@ def _assemble(
 ) -> Structure:
     entries, atoms = content
     info = parsed.content.info
+    predicted = is_predicted(parsed, crystal[0], entries=entries, atoms=atoms)
     ncs = list({chain.ncs: chain.ncs_matrix for chain in chains}.values())
     layout = make_layout(entries, len(ncs))
     return Structure(
@@ -152,11 +156,12 @@ def _assemble(
         method=_stated(info, "_exptl.method"),
         resolution_angstrom=parsed.content.resolution or np.nan,
         crystal=crystal[0],
-        no_crystal_reason=crystal[1],
+        no_crystal_reason=PREDICTED_REASON if predicted else crystal[1],
         chain_copies=chains,
         assemblies=read_assemblies(parsed),
         n_models=int(atoms.model.max()) + 1,
         ca_only=_is_ca_only(entries, atoms),
+        is_predicted=predicted,
         warnings=tuple(warnings),
         secondary_structure=secondary_structure(parsed, entries)[layout.entry],
         has_secondary_structure=bool(

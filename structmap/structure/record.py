@@ -142,6 +142,9 @@ class Structure:
         Models that are used: 1 for a crystal.
     ca_only : bool
         Fewer than 1.5 heavy atoms a polymer residue.
+    is_predicted : bool
+        A predicted model, whose B column holds the confidence in each residue (pLDDT,
+        0 to 100).
     warnings : tuple of str
         What is odd about the file, one sentence each.
     kind_of_residue : ndarray of int, shape (n_residues,)
@@ -180,6 +183,7 @@ class Structure:
     assemblies: tuple[Assembly, ...]
     n_models: int
     ca_only: bool
+    is_predicted: bool
     warnings: tuple[str, ...]
     kind_of_residue: NDArray[np.int64]
     copy_of_residue: NDArray[np.int64]

@@ -1,6 +1,5 @@
 """Whether a file holds a crystal, and which cell and operators it has."""
 
-import itertools
 import math
 import re
 
@@ -13,6 +12,7 @@ from structmap.structure.files import ParsedFile
 from structmap.structure.record import Crystal
 
 TWENTY_FOURTHS = 24
+MOST_OPERATORS = 192  # of F m -3 m, with centring
 SYMMETRY_LOOPS = (
     "_symmetry_equiv.pos_as_xyz",
     "_symmetry_equiv_pos_as_xyz",
@@ -137,8 +137,8 @@ def _make_crystal(parsed: ParsedFile) -> Crystal:
     structure = parsed.content
     group = structure.find_spacegroup()
     operators = list(group.operations()) if group else stated_operators(parsed)
-    operators = [operator.wrap() for operator in operators]
-    if not _is_group(operators):
+    operators = _closed([operator.wrap() for operator in operators])
+    if not operators:
         raise UnknownSymmetryError(parsed.path, structure.spacegroup_hm)
     group = group or gemmi.find_spacegroup_by_ops(gemmi.GroupOps(operators))
     operators.sort(key=lambda operator: operator != gemmi.Op())
@@ -168,13 +168,26 @@ def _rotations(operators: list[gemmi.Op]) -> NDArray[np.int64]:
     return np.asarray(rotations // TWENTY_FOURTHS, dtype=np.int64)
 
 
-def _is_group(operators: list[gemmi.Op]) -> bool:
-    triplets = {operator.triplet() for operator in operators}
-    products = (
-        (first * second).wrap().triplet()
-        for first, second in itertools.product(operators, repeat=2)
-    )
-    return "x,y,z" in triplets and triplets.issuperset(products)
+def _closed(operators: list[gemmi.Op]) -> list[gemmi.Op]:
+    """Return the group that operators generate; empty when they generate none.
+
+    Files with an unusual name list every operator; where one was lost, the others give
+    it back.
+    """
+    if not operators:
+        return []
+    group = {operator.triplet(): operator for operator in (gemmi.Op(), *operators)}
+    waiting = list(group.values())
+    while waiting:
+        newest = waiting.pop()
+        for operator in operators:
+            product = (newest * operator).wrap()
+            if product.triplet() not in group:
+                group[product.triplet()] = product
+                waiting.append(product)
+        if len(group) > MOST_OPERATORS:
+            return []
+    return list(group.values())
 
 
 def check_cell_against_group(parsed: ParsedFile, crystal: Crystal) -> list[str]:
@@ -200,7 +213,12 @@ def check_cell_against_group(parsed: ParsedFile, crystal: Crystal) -> list[str]:
             f"The unit cell {cell} does not have the symmetry of {crystal.space_group}."
         )
     stated = {operator.triplet() for operator in stated_operators(parsed)}
-    if stated and stated != set(crystal.triplets):
+    if stated and group is None and stated != set(crystal.triplets):
+        warnings.append(
+            f"The {len(stated)} operators listed in the file are no group; the "
+            f"{len(crystal.triplets)} that they generate are used."
+        )
+    elif stated and stated != set(crystal.triplets):
         warnings.append(
             f"The operators listed in the file are not those of {crystal.space_group}; "
             "those of the space group are used."

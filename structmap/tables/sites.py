@@ -8,7 +8,7 @@ from structmap.contacts import LATTICE
 from structmap.result import AnalysisRecord
 from structmap.tables.columns import residue_text, site_identity, spread_over_sites
 from structmap.tables.text import Cell, Table, plain
-from structmap.words import find_gaps, gap_note
+from structmap.words import confidence_note, find_gaps, gap_note
 
 
 def sites_table(record: AnalysisRecord) -> Table:
@@ -142,4 +142,4 @@ def _note(
     notes += [f"fringe of {name}" for name in fringe]
     if site in gaps and any(site in unit.members for unit in record.units):
         notes.append(plain(gap_note(record, gaps[site])))
-    return "; ".join(notes)
+    return "; ".join(filter(None, (*notes, confidence_note(record, residue))))

@@ -21,6 +21,7 @@ from structmap.words.names import (
     site_name,
 )
 from structmap.words.notes import colophon, rests_on, summary_lines
+from structmap.words.packing import confidence_note
 from structmap.words.phrases import joining_numerals, lattice_phrase, members_phrase
 from structmap.words.units import (
     p_text,
@@ -33,6 +34,7 @@ from structmap.words.units import (
 __all__ = [
     "care_sentences",
     "colophon",
+    "confidence_note",
     "direction_phrase",
     "direction_sentence",
     "errors_off_baseline",

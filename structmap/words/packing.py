@@ -4,11 +4,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from structmap.cell import DIFFERENT_CRYSTAL
+from structmap.contacts import overlap_warning
 from structmap.holding import NetworkEvidence
 from structmap.result import AnalysisRecord
-from structmap.structure import Assembly
+from structmap.structure import (
+    LOW_CONFIDENCE,
+    Assembly,
+    is_low_confidence,
+    residue_confidence,
+)
 from structmap.words.holding import directions, loose_sentences
-from structmap.words.names import listing
+from structmap.words.names import listing, number_in_words
 
 
 def sample_sentence(record: AnalysisRecord) -> str:
@@ -103,10 +109,62 @@ def packing_cautions(record: AnalysisRecord) -> tuple[str, ...]:
     Returns
     -------
     tuple of str
-        An endless assembly, no assembly, a poorly ordered side chain.
+        What is odd about the file, molecules that overlap, low confidence, an endless
+        assembly or none, a poorly ordered side chain.
     """
-    found = endless_sentence(record), no_assembly_sentence(record)
-    return (*filter(None, found), *loose_sentences(record))
+    found = (
+        *record.structure.warnings,
+        overlap_warning(record.structure, record.contacts),
+        _confidence_sentence(record),
+        endless_sentence(record),
+        no_assembly_sentence(record),
+        *loose_sentences(record),
+    )
+    return tuple(filter(None, found))
+
+
+def _confidence_sentence(record: AnalysisRecord) -> str:
+    if not record.structure.is_predicted:
+        return ""
+    low = is_low_confidence(record.structure)
+    count = int(low.sum())
+    of_units = np.zeros(len(low), dtype=np.bool_)
+    for unit in record.units:
+        own = np.isin(record.sites.copy_site, unit.members)
+        of_units[record.sites.copy_residue[own]] = True
+    n_inside = int((low & of_units).sum())
+    if not count:
+        return "The coordinates are a predicted model, confident in every residue."
+    noun = "residue has" if count == 1 else "residues have"
+    inside = f", {number_in_words(n_inside)} of them in units" if n_inside else ""
+    return (
+        f"The coordinates are a predicted model: {number_in_words(count)} {noun} a "
+        f"confidence below {LOW_CONFIDENCE:g}{inside}; contacts to them are weak "
+        "evidence."
+    )
+
+
+def confidence_note(record: AnalysisRecord, residue: int) -> str:
+    """Return that a residue of a predicted model is uncertain.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+    residue : int
+        Index of a residue.
+
+    Returns
+    -------
+    str
+        ``predicted with low confidence (54)``; blank in other files.
+    """
+    if not record.structure.is_predicted:
+        return ""
+    confidence = residue_confidence(record.structure)[residue]
+    if not confidence < LOW_CONFIDENCE:
+        return ""
+    return f"predicted with low confidence ({confidence:.0f})"
 
 
 def no_assembly_sentence(record: AnalysisRecord) -> str:
@@ -221,6 +279,8 @@ def network_paragraph(record: AnalysisRecord) -> str:
 
 
 def _agreement(record: AnalysisRecord, network: NetworkEvidence) -> str:
+    if record.structure.is_predicted:
+        return ""
     names = {"isolated": "alone", "assembly": "in the assembly"}
     if record.structure.crystal is not None:
         names["crystal"] = "in the crystal"
