@@ -95,9 +95,9 @@ def found_on_ring():
 
 
 def test_the_same_contacts_and_limits_give_the_same_units():
-    search, data, graph, centres = found_on_ring()
+    search, _, graph, _ = found_on_ring()
     assert search.members
-    (same,) = vary_contacts(search, data, {"the same": graph}, centres=centres)
+    (same,) = vary_contacts(search, {"the same": graph})
     assert (same.n_units, same.agreement) == (len(search.members), 1.0)
     assert same.n_sites == (search.label >= 0).sum()
     assert adjusted_rand_index(_group_with(search, 1.0), search.label) == 1.0

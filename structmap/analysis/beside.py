@@ -4,7 +4,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from structmap.analysis.evidence import Surroundings, known_baseline
+from structmap.analysis.evidence import Surroundings
 from structmap.analysis.steps import point_reasons
 from structmap.behaviour import Measurements, take_measurements
 from structmap.contacts import SiteGraph, find_contacts, make_site_graph
@@ -63,9 +63,7 @@ def look_beside(
         other_part=_look_at_other_part(
             table, search, measurements, crystal, settings=settings
         ),
-        choices=_vary_choices(
-            table, search, measurements, crystal, settings=settings, graphs=graphs
-        ),
+        choices=_vary_choices(search, crystal, settings, graphs),
         second_opinion=ask_second_opinion(search) if settings.second_opinion else None,
     )
 
@@ -97,11 +95,8 @@ def _look_at_other_part(
 
 
 def _vary_choices(
-    table: ValueTable,
     search: UnitSearch,
-    measurements: Measurements,
     crystal: Surroundings,
-    *,
     settings: Settings,
     graphs: tuple[SiteGraph, ...],
 ) -> tuple[Alternative, ...]:
@@ -117,15 +112,7 @@ def _vary_choices(
     by_ca = None if ca_only else _graph_by_ca(crystal, settings.ca_cutoff_angstrom)
     if by_ca is not None:
         others[f"CA atoms within {settings.ca_cutoff_angstrom:g}\u00a0Å"] = by_ca
-    contacts = vary_contacts(
-        search,
-        measurements,
-        others,
-        centres=site_centres(crystal.structure, crystal.sites),
-        direction=settings.direction,
-        baseline=known_baseline(table, crystal.sites, measurements, settings),
-    )
-    return contacts + vary_thresholds(search)
+    return vary_contacts(search, others) + vary_thresholds(search)
 
 
 def _graph_by_ca(crystal: Surroundings, cutoff: float) -> SiteGraph | None:

@@ -2,21 +2,21 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
-from typing import Literal
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
 
-from structmap.behaviour import Measurements
 from structmap.contacts import SiteGraph
 from structmap.motional_units.agreement import adjusted_rand_index
+from structmap.motional_units.degree import search_samples
 from structmap.motional_units.field import Integers
 from structmap.motional_units.refinement import find_groups
-from structmap.motional_units.search import UnitSearch, find_motional_units
+from structmap.motional_units.search import UnitSearch, link_rows
 
 # Every limit of the search counts in errors, so errors taken larger by a factor raise
 # all of them by it.
 THRESHOLD_FACTORS = (0.8, 1.25)
+# Above this many rows every degree of the trend would cost too much.
+LARGE = 2000
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -41,40 +41,35 @@ class Alternative:
 
 
 def vary_contacts(
-    search: UnitSearch,
-    measurements: Measurements,
-    graphs: Mapping[str, SiteGraph],
-    *,
-    centres: NDArray[np.float64],
-    direction: Literal["both", "up", "down"] = "both",
-    baseline: ArrayLike | None = None,
+    search: UnitSearch, graphs: Mapping[str, SiteGraph]
 ) -> tuple[Alternative, ...]:
     """Search once on each of some other contact graphs.
 
     Parameters
     ----------
     search : UnitSearch
-        What the analysis found.
-    measurements : Measurements
-        What is compared.
+        What the analysis found; its values, terms of trends and direction are kept.
     graphs : mapping of str to SiteGraph
         Contacts by other rules, each under the name of its rule.
-    centres : ndarray of float, shape (n_sites, 3)
-        Centre of each site in Å.
-    direction : {'both', 'up', 'down'}
-        Which way units may deviate.
-    baseline : array_like or None
-        The baseline when it is known.
 
     Returns
     -------
     tuple of Alternative
-        In the order of the graphs.
+        In the order of the graphs. Above 2,000 sites the degree of the trend is kept
+        too; empty when no unit can be told.
     """
+    if search.reason:
+        return ()
+    bases = search.bases
+    if search.links.n_rows > LARGE:
+        bases = (bases[search.behaviour.degree],)
     found = {
-        name: find_motional_units(
-            measurements, graph, centres, direction=direction, baseline=baseline
-        ).label
+        name: search_samples(
+            search.samples,
+            link_rows(search.site, graph),
+            bases=bases,
+            direction=search.direction,
+        ).label[0]
         for name, graph in graphs.items()
     }
     return tuple(_compare(name, search, label) for name, label in found.items())
