@@ -203,6 +203,7 @@ def judge_table(
     )
     rows = table_rows(found)
     notes = [f"{one.group}: {' '.join(plain_words(one))}" for one in found]
+    notes += [note for note in read.notes if "taken as not given" in note]
     if not any(read.group):
         whole = describe_whole(prepare_by_settings(read, settings), rng=rng)
         if whole:

@@ -95,6 +95,8 @@ class Model:
         Sites with fewer points are left out.
     source : str
         Where the equations were published.
+    point_names : tuple of str
+        Where x only counts the points (0, 1, …), what each of them is.
 
     Notes
     -----
@@ -123,6 +125,24 @@ class Model:
     x_lowest: float = 0.0
     min_points: int = 5
     source: str = ""
+    point_names: tuple[str, ...] = ()
+
+    def name_point(self, x: float) -> str:
+        """Return what a point is called.
+
+        Parameters
+        ----------
+        x : float
+            Where it was measured, in the base unit.
+
+        Returns
+        -------
+        str
+            For example ``x = 0.5 s`` or ``R1 at 600 MHz``.
+        """
+        if self.point_names:
+            return self.point_names[int(x)]
+        return f"x = {x:g} {self.x_unit}".rstrip()
 
     @property
     def n_linear(self) -> int:

@@ -171,6 +171,12 @@ def tumbling_model(
         baseline="none",
         min_points=2,
         source="Lipari and Szabo, J. Am. Chem. Soc. 104, 4546 (1982)",
+        point_names=tuple(
+            f"{rate} at {field:g} MHz"
+            for rate, field in zip(
+                observables, proton_frequencies_megahertz, strict=True
+            )
+        ),
     )
 
 

@@ -101,8 +101,9 @@ def find_wild_points(fit: GroupFit) -> tuple[str, ...]:
     phrases = []
     for site, point in zip(*np.unravel_index(order, distance.shape), strict=True):
         if distance[site, point] > _WILD_ERRORS:
-            where = f"{fit.profiles.name[site]} at x = {fit.profiles.x[point]:g}"
-            phrases.append(f"{where}: {distance[site, point]:.1f} errors off")
+            where = fit.model.name_point(float(fit.profiles.x[point]))
+            what = f"{fit.profiles.name[site]}, {where}"
+            phrases.append(f"{what}: {distance[site, point]:.1f} errors off")
     return tuple(phrases)
 
 

@@ -112,7 +112,7 @@ def test_a_wild_point_shows_up():
     value = BLOCKS["P"].value.copy()
     value[2, 9] += 8.0
     found = judge(replace(BLOCKS["P"], value=value))
-    assert found.worst[0].startswith("P3 at x = 41000: ")
+    assert found.worst[0].startswith("P3, x = 41000 Hz: ")
     assert "too small" in found.error_note
 
 
