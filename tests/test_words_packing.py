@@ -14,7 +14,7 @@ from structmap.errors import SettingError
 from structmap.settings import Settings
 from structmap.structure import POLYMER, read_structure
 from structmap.words import care_sentences, facts, rests_on, unit_holds
-from structmap.words.holding import directions
+from structmap.words.holding import directions, link_phrase
 
 DATA = Path(__file__).parent / "data"
 ACROSS = {1916, 1919, 1920, 1922, 1955, 1956, 1959, 1960}
@@ -141,6 +141,23 @@ def test_the_same_crystal_of_the_sample_is_a_fact(tmp_path):
 def test_a_cell_given_for_a_file_without_crystal_is_refused(tmp_path):
     with pytest.raises(SettingError, match=r"1as5\.cif\.gz holds no crystal"):
         analysed(tmp_path, "1as5.cif.gz", sample_cell="50 60 70 90 90 90")
+
+
+@pytest.mark.parametrize(
+    ("images", "words"),
+    [
+        (("-x,y+1/2,-z [0 1 0]",), "the molecule at −x, y+1/2, −z"),
+        (("x,y,z [1 0 -1]",), "the molecule at x+1, y, z−1"),
+        (
+            ("x,y,z [0 0 0]", "-x,-y,z [0 0 0]"),
+            "a molecule of the asymmetric unit in no common assembly and the molecule "
+            "at −x, −y, z",
+        ),
+    ],
+)
+def test_neighbours_in_words(across, images, words):
+    hold = replace(across.record.packing.holds[0], link_images=images)
+    assert link_phrase(hold).partition(" to ")[2] == words
 
 
 def test_directions_of_periods():

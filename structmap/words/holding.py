@@ -18,6 +18,7 @@ NOUNS = {
     "water bridge": "bridge by a water",
 }
 UNITS_TOLD = 6
+IN_FILE = "x,y,z [0 0 0]"
 BY_LATTICE = ("lattice-joined", "lattice-only")
 
 
@@ -69,9 +70,7 @@ def link_phrase(hold: Hold) -> str:
     """
     text = _kinds_phrase(hold)
     if hold.link_images:
-        noun = "molecule" if len(hold.link_images) == 1 else "molecules"
-        places = listing(_place(image) for image in hold.link_images)
-        return f"{text} to the {noun} at {places}"
+        return f"{text} to {_molecules(hold.link_images)}"
     if len(hold.link_chains) > 1:
         return f"{text} between chains {listing(hold.link_chains)}"
     if hold.link_chains:
@@ -92,8 +91,24 @@ def _counted(kind: str, count: int) -> str:
     return f"{number_in_words(count)} {head}s{by}{rest}"
 
 
+def _molecules(images: Sequence[str]) -> str:
+    """Return the neighbours that operators with shifts make, in words."""
+    elsewhere = [_place(image) for image in images if image != IN_FILE]
+    noun = "molecule" if len(elsewhere) == 1 else "molecules"
+    parts = [f"the {noun} at {listing(elsewhere)}"] if elsewhere else []
+    if IN_FILE in images:
+        parts.insert(0, "a molecule of the asymmetric unit in no common assembly")
+    return listing(parts)
+
+
 def _place(image: str) -> str:
-    return image.split(" [", maxsplit=1)[0].replace(",", ", ").replace("-", "−")
+    """Return an operator as it is printed; whole cells only of a mere translation."""
+    triplet, _, cells = image.removesuffix("]").partition(" [")
+    if triplet == "x,y,z":
+        shifts = [int(cell) for cell in cells.split()]
+        steps = zip("xyz", shifts, strict=True)
+        triplet = ",".join(f"{axis}{n:+d}" if n else axis for axis, n in steps)
+    return triplet.replace(",", ", ").replace("-", "−")
 
 
 def _closing(hold: Hold) -> str:

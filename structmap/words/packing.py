@@ -275,7 +275,8 @@ def network_paragraph(record: AnalysisRecord) -> str:
                 f"correlation of {together.correlation:.2f}, random groups as compact "
                 f"with {together.random_mean:.2f} (p\u00a0{together.p_value:.2f})"
             )
-    return " ".join(f"{sentence}." for sentence in sentences if sentence)
+    text = " ".join(f"{sentence}." for sentence in sentences if sentence)
+    return text.replace(" -0", " −0")
 
 
 def _agreement(record: AnalysisRecord, network: NetworkEvidence) -> str:
@@ -292,7 +293,7 @@ def _agreement(record: AnalysisRecord, network: NetworkEvidence) -> str:
     if not found:
         return "The B factors of the file do not vary, so it cannot be checked on them"
     parts = [f"{r:.2f} {word}" for word, r in found.items()]
-    return f"Correlation with the B factors: {listing(parts)}".replace("-", "−")
+    return f"Correlation with the B factors: {listing(parts)}"
 
 
 def _damping(record: AnalysisRecord, network: NetworkEvidence) -> list[str]:
