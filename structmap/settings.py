@@ -79,6 +79,23 @@ class Settings:
     network : bool
         Whether an elastic network is asked as well, as evidence of a model beside the
         measured values.
+    nucleus : {'15N', '1H'}
+        What is observed in a spin lock.
+    homonuclear : bool
+        For observed protons, whether the coupling between protons counts; the verdict
+        is found with the other choice too.
+    lowest_field_hertz : float
+        Spin-lock field below which points are left out; 0 takes the rule for the
+        sample.
+    largest_offset_hertz : float
+        Largest plausible distance of a resonance from the carrier, for points to be
+        taken with caution; 0 is not given.
+    protein_molar : float
+        Total protein of a titration in mol/L, for the depletion of the ligand; 0
+        neglects it.
+    errors_trusted : bool
+        The errors are known to be right, so that one of the two chances of the test of
+        one process, that of the stated errors, decides alone.
     keep_points : bool
         Keep the points of a profile that are left out as not motion alone.
     most_permutations : int
@@ -120,6 +137,12 @@ class Settings:
     sample_cell: str = ""
     sample_space_group: str = ""
     network: bool = False
+    nucleus: Literal["15N", "1H"] = "15N"
+    homonuclear: bool = True
+    lowest_field_hertz: float = 0.0
+    largest_offset_hertz: float = 0.0
+    protein_molar: float = 0.0
+    errors_trusted: bool = False
     keep_points: bool = False
     most_permutations: int = 9999
     repeats: int = 100

@@ -16,7 +16,7 @@ from structmap.analysis.processes import (
     prepare_by_settings,
     profile_of_row,
 )
-from structmap.analysis.steps import kept_points_note, match_by_settings
+from structmap.analysis.steps import kept_points_note, match_by_settings, point_reasons
 from structmap.behaviour import take_measurements
 from structmap.cli import main
 from structmap.contacts import (
@@ -320,3 +320,74 @@ def test_a_high_order_parameter_is_not_called_motion(measured):
     record = analyse_table(COORDINATES, table, Settings(most_permutations=0))
     sentence = words.unit_sentence(record, record.units[0])
     assert "S2 higher than the baseline: moves less" in sentence
+
+
+# --- conditions of the experiment -----------------------------------------------------
+
+
+def spin_lock_settings(**more):
+    return Settings(
+        model="mas-r1rho",
+        mas_rate_hertz=60e3,
+        proton_frequency_megahertz=600.0,
+        **more,
+    )
+
+
+def test_settings_of_the_experiment_decide_which_points_stay(measured):
+    def lowest(**more):
+        return prepare_by_settings(
+            measured, spin_lock_settings(**more)
+        ).profiles.x.min()
+
+    assert lowest() == 11e3  # protonated: below 10 kHz coherent loss
+    assert lowest(sample="deuterated") == 5e3
+    assert lowest(lowest_field_hertz=20e3) == 20e3
+
+    usual = prepare_by_settings(measured, spin_lock_settings())
+    wide = prepare_by_settings(measured, spin_lock_settings(largest_offset_hertz=3e3))
+    near = usual.profiles.x < 15e3  # five times the largest offset
+    assert not usual.caution[near].any()
+    assert wide.caution[near].all()
+
+
+def test_both_steps_leave_the_same_points_out(measured):
+    chosen = replace(
+        spin_lock_settings(nucleus="1H", lowest_field_hertz=9e3), mas_rate_hertz=52e3
+    )
+    reasons = point_reasons(measured, chosen)
+    prepared = prepare_by_settings(measured, chosen)
+    kept = measured.quantities[0].x[[not reason for reason in reasons]]
+    np.testing.assert_allclose(prepared.profiles.x, 1e3 * kept)
+    assert any("half the spinning rate" in reason for reason in reasons)
+
+
+def test_protein_depletes_the_ligand(tmp_path):
+    # One site, Kd 20 uM, 100 uM protein: most of the ligand is bound at first.
+    protein, kd = 100e-6, 20e-6
+    ligand = 1e-6 * np.array([0, 25, 50, 100, 150, 200, 300, 400])
+    total = ligand + protein + kd
+    bound = (total - np.sqrt(total**2 - 4 * ligand * protein)) / (2 * protein)
+    rng = np.random.default_rng(9)
+    lines = ["auth_seq_id,x [uM],value [ppm],error"]
+    for site in range(1, 6):
+        for place, share in zip(ligand * 1e6, bound, strict=True):
+            value = 0.1 * site * share + 0.004 * rng.standard_normal()
+            lines.append(f"{site},{place:g},{value:.5f},0.004")
+    path, out = tmp_path / "titration.csv", tmp_path / "out.csv"
+    path.write_text("\n".join(lines) + "\n", encoding="utf-8")
+    call = ["one-process", str(path), "--model", "binding", "-o", str(out)]
+    assert main([*call, "--protein-molar", "1e-4"]) == 0
+    row = dict(
+        zip(
+            *(line.split(",") for line in out.read_text().splitlines()[:2]), strict=True
+        )
+    )
+    assert float(row["low"]) < kd < float(row["high"])
+    assert main(call) == 0  # without depletion the constant comes out too large
+    row = dict(
+        zip(
+            *(line.split(",") for line in out.read_text().splitlines()[:2]), strict=True
+        )
+    )
+    assert float(row["low"]) > kd

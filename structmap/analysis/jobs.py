@@ -31,6 +31,7 @@ from structmap.files import write_folder
 from structmap.forms import compare_folders
 from structmap.one_process import (
     ONE_PROCESS_COLUMNS,
+    TestOptions,
     analyse_table,
     describe_whole,
     plain_words,
@@ -199,6 +200,7 @@ def judge_table(
         settings.model,
         rng=rng,
         conditions=conditions_of(settings),
+        options=TestOptions(errors_trusted=settings.errors_trusted),
         quantity=process_quantity(settings),
     )
     rows = table_rows(found)

@@ -5,6 +5,7 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
+from structmap.analysis.steps import experiment_of
 from structmap.behaviour import choose_quantities
 from structmap.motional_units import UnitSearch
 from structmap.one_process import (
@@ -17,7 +18,6 @@ from structmap.one_process import (
     find_flat_sites,
     judge_groups,
     prepare_profiles,
-    spinning_conditions,
     whole_words,
 )
 from structmap.settings import Settings
@@ -45,10 +45,10 @@ def conditions_of(settings: Settings) -> Conditions:
     Conditions
         Spinning rate, proton frequency, sample and whether points are put back.
     """
-    return spinning_conditions(
-        mas_rate_hertz=settings.mas_rate_hertz,
-        proton_frequency_megahertz=settings.proton_frequency_megahertz,
-        sample=settings.sample,
+    return Conditions(
+        experiment=experiment_of(settings),
+        protein_molar=np.array(settings.protein_molar),
+        homonuclear=settings.homonuclear,
         keep_points=settings.keep_points,
     )
 
@@ -181,7 +181,10 @@ def judge_processes(
         prepared,
         groups,
         rng=rng,
-        options=TestOptions(descriptive=bool(grouped & set(prepared.quantities))),
+        options=TestOptions(
+            descriptive=bool(grouped & set(prepared.quantities)),
+            errors_trusted=settings.errors_trusted,
+        ),
         references=references,
     )
     if settings.reference != "clustered":

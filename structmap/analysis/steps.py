@@ -5,7 +5,12 @@ from dataclasses import replace
 from pathlib import Path
 
 from structmap.contacts import contact_cutoff
-from structmap.experiment import SPINNING_MODEL, convert_to_base, points_left_out
+from structmap.experiment import (
+    SPINNING_MODEL,
+    Experiment,
+    convert_to_base,
+    find_coherent_points,
+)
 from structmap.settings import Settings
 from structmap.sites import Sites, match_sites
 from structmap.structure import Structure
@@ -83,6 +88,29 @@ def cutoff_of(structure: Structure, settings: Settings) -> float:
     )
 
 
+def experiment_of(settings: Settings) -> Experiment:
+    """Return the conditions of the experiment that the settings name.
+
+    Parameters
+    ----------
+    settings : Settings
+        Every choice of the analysis.
+
+    Returns
+    -------
+    Experiment
+        Which points it can carry follows from it.
+    """
+    return Experiment(
+        mas_rate_hertz=settings.mas_rate_hertz,
+        proton_frequency_megahertz=settings.proton_frequency_megahertz,
+        sample=settings.sample,
+        nucleus=settings.nucleus,
+        lowest_field_hertz=settings.lowest_field_hertz,
+        largest_offset_hertz=settings.largest_offset_hertz,
+    )
+
+
 def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
     """Return why points of the profile cannot be carried.
 
@@ -111,13 +139,12 @@ def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
     profile = profiles[0]
     if settings.model != SPINNING_MODEL or settings.keep_points:
         return ("",) * len(profile.x)
-    return points_left_out(
-        convert_to_base(profile.x, profile.x_unit, quantity=profile.x_name, base="Hz"),
-        model_name=settings.model,
-        mas_rate_hertz=settings.mas_rate_hertz,
-        proton_frequency_megahertz=settings.proton_frequency_megahertz,
-        sample=settings.sample,
+    field = convert_to_base(
+        profile.x, profile.x_unit, quantity=profile.x_name, base="Hz"
     )
+    if not settings.mas_rate_hertz > 0:
+        return ("",) * len(profile.x)
+    return find_coherent_points(field, experiment_of(settings))
 
 
 def kept_points_note(table: ValueTable, settings: Settings) -> tuple[str, ...]:

@@ -41,7 +41,9 @@ _MATCH_SETTINGS = (
 )
 _PROCESS_SETTINGS = (
     *("model", "mas_rate_hertz", "proton_frequency_megahertz", "sample", "quantity"),
-    *("process_quantity", "keep_points", "columns", "seed"),
+    *("nucleus", "homonuclear", "lowest_field_hertz", "largest_offset_hertz"),
+    *("protein_molar", "errors_trusted", "process_quantity", "keep_points"),
+    *("columns", "seed"),
 )
 
 
