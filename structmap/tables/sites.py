@@ -51,7 +51,9 @@ def sites_table(record: AnalysisRecord) -> Table:
         ),
     )
     partners = _lattice_partners(record)
-    gaps = find_gaps(record)
+    unit_of = record.unit_of_site()
+    gaps = {s: near for s, near in find_gaps(record).items() if unit_of[s] >= 0}
+    compared = frozenset(record.measurements.site.tolist())
     found = _found_columns(record)
     rows = tuple(
         (
@@ -61,7 +63,7 @@ def sites_table(record: AnalysisRecord) -> Table:
             bool(partners[site]),
             " ".join(partners[site]),
             _exposure(record, site),
-            _note(record, site, gaps),
+            _note(record, site, compared=compared, gaps=gaps),
         )
         for site in range(len(record.sites.name))
     )
@@ -123,7 +125,11 @@ def _exposure(record: AnalysisRecord, site: int) -> float | None:
 
 
 def _note(
-    record: AnalysisRecord, site: int, gaps: Mapping[int, tuple[int, ...]]
+    record: AnalysisRecord,
+    site: int,
+    *,
+    compared: frozenset[int],
+    gaps: Mapping[int, tuple[int, ...]],
 ) -> str:
     sites, table = record.sites, record.table
     row, residue = int(sites.row[site]), int(sites.residue[site])
@@ -136,10 +142,10 @@ def _note(
     )
     if number != here:
         notes.append(f"{number} in the table")
-    if site not in set(record.measurements.site.tolist()):
+    if site not in compared:
         notes.append("too few values to compare")
     fringe = [unit.name for unit in record.units if site in unit.fringe]
     notes += [f"fringe of {name}" for name in fringe]
-    if site in gaps and any(site in unit.members for unit in record.units):
+    if site in gaps:
         notes.append(plain(gap_note(record, gaps[site])))
     return "; ".join(filter(None, (*notes, confidence_note(record, residue))))
