@@ -72,6 +72,7 @@ def test_the_words_of_the_link_count_each_of_its_contacts_once(example):
     hold, _, _ = example
     counted = sum(count for _, count in hold.link_kinds)
     assert counted == hold.weakest.n_residue_contacts > 0
+    assert set(hold.link_images) <= set(example[1].operators)
     assert hold.link_images
     assert hold.link_chains == ()
 

@@ -16,6 +16,7 @@ from structmap.contacts import (
     contacts_where,
     find_contacts,
     make_site_graph,
+    operator_text,
 )
 from structmap.exposure import find_interfaces
 from structmap.holding.disorder import find_deciding_side_chains
@@ -212,9 +213,13 @@ def _kinds(link: WeakestLink, chemistry: Chemistry) -> tuple[tuple[str, int], ..
 
 
 def _images(link: WeakestLink, held: Held) -> tuple[str, ...]:
-    numbered = number_crystal_contacts(held.structure, held.contacts)
-    places = np.unique(numbered.of_contact[link.contacts])
-    return tuple(numbered.crystal_contacts[p].text for p in places if p >= 0)
+    """Return the image that one contact of the link with each neighbour leads to."""
+    structure, contacts = held.structure, held.contacts
+    numbered = number_crystal_contacts(structure, contacts)
+    lattice = link.contacts[numbered.of_contact[link.contacts] >= 0]
+    first = np.unique(numbered.of_contact[lattice], return_index=True)[1]
+    texts = (operator_text(structure, contacts, int(i)) for i in lattice[first])
+    return tuple(text or "x,y,z [0 0 0]" for text in texts)
 
 
 def _chains(link: WeakestLink, held: Held) -> tuple[str, ...]:

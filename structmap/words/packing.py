@@ -16,6 +16,8 @@ from structmap.structure import (
 from structmap.words.holding import directions, loose_sentences
 from structmap.words.names import listing, number_in_words
 
+UNSTATED = "of unstated origin"
+
 
 def sample_sentence(record: AnalysisRecord) -> str:
     """Return that the sample is another crystal.
@@ -66,7 +68,7 @@ def _by(chosen: tuple[Assembly, ...]) -> str:
         return "by the authors"
     if all(item.by_software for item in chosen):
         return "by software"
-    return "by whom the file does not say"
+    return UNSTATED
 
 
 def assembly_paragraph(record: AnalysisRecord) -> str:
@@ -192,7 +194,8 @@ def no_assembly_sentence(record: AnalysisRecord) -> str:
 def _assembly_sentence(record: AnalysisRecord) -> str:
     chosen = record.packing.assemblies
     named = listing(_described(record, item) for item in chosen)
-    named += f", determined {_by(chosen)},"
+    by = _by(chosen)
+    named += f", {by}," if by == UNSTATED else f", determined {by},"
     noun, verb = ("assembly", "is") if len(chosen) == 1 else ("assemblies", "are")
     others = len(record.structure.assemblies) - len(chosen)
     left = f" Of {others + len(chosen)} that the file lists" if others else ""
