@@ -17,7 +17,7 @@ import pytest
 
 from structmap.analysis import analyse
 from structmap.errors import MissingTemplateError
-from structmap.page import assemble, page_html
+from structmap.page import assemble, page_html, templates
 from structmap.page.listing import list_entries
 from structmap.page.markup import (
     mark_text,
@@ -154,7 +154,7 @@ def test_licence_of_the_library_is_in_the_page(page):
 
 
 def test_missing_library_says_how_to_get_it(record, monkeypatch, tmp_path):
-    monkeypatch.setattr(assemble, "_folder", lambda: tmp_path)
+    monkeypatch.setattr(templates, "template_folder", lambda: tmp_path)
     with pytest.raises(
         MissingTemplateError, match=r"3Dmol-min\.js.*missing.*pip install"
     ):

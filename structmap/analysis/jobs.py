@@ -39,6 +39,7 @@ from structmap.one_process import (
     whole_rows,
     whole_words,
 )
+from structmap.page import forms_html
 from structmap.settings import Settings
 from structmap.shifts import (
     compare_shifts,
@@ -328,7 +329,7 @@ def compare_analyses(folders: Sequence[Path], output: Path) -> tuple[str, ...]:
     folders : sequence of Path
         Folders of analyses; the form that was measured first.
     output : Path
-        Folder for ``forms.csv`` and ``contacts_between_forms.csv``.
+        Folder for ``forms.csv``, ``contacts_between_forms.csv`` and ``page.html``.
 
     Returns
     -------
@@ -346,6 +347,7 @@ def compare_analyses(folders: Sequence[Path], output: Path) -> tuple[str, ...]:
         {
             "forms.csv": table_text(found.forms_table),
             "contacts_between_forms.csv": table_text(found.contacts_table),
+            "page.html": forms_html(found),
         },
     )
     return tuple(

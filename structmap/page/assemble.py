@@ -2,19 +2,17 @@
 
 import base64
 import gzip
-import hashlib
 import json
 import re
 from dataclasses import fields
 from html import escape
-from pathlib import Path
 from string import Template
 
 from structmap import words
-from structmap.errors import MissingTemplateError
 from structmap.page import markup
 from structmap.page.listing import Listing, list_entries
 from structmap.page.payload import page_payload
+from structmap.page.templates import policy_source, read_template
 from structmap.result import AnalysisRecord
 from structmap.settings import Settings
 from structmap.tables import library_versions
@@ -60,8 +58,8 @@ def page_html(record: AnalysisRecord) -> str:
         If a file that the page is made from is not there.
     """
     listing = list_entries(record)
-    library = _template("built/3Dmol-min.js")
-    styles, scripts = _template("page.css"), _joined_scripts()
+    library = read_template("built/3Dmol-min.js")
+    styles, scripts = read_template("page.css"), _joined_scripts()
     parts = {
         "policy": _policy(styles, (library, scripts)),
         "styles": styles,
@@ -71,39 +69,20 @@ def page_html(record: AnalysisRecord) -> str:
         **_texts(record, listing),
         **_foot(record),
     }
-    return Template(_template("page.html")).substitute(parts)
-
-
-def _folder() -> Path:
-    package = Path(__file__).resolve().parent.parent
-    inside = package / "html_templates"
-    return inside if inside.is_dir() else package.parent / "html_templates"
-
-
-def _template(name: str) -> str:
-    path = _folder() / name
-    try:
-        return path.read_text(encoding="utf-8")
-    except OSError as error:
-        raise MissingTemplateError(path) from error
+    return Template(read_template("page.html")).substitute(parts)
 
 
 def _joined_scripts() -> str:
-    body = "\n".join(_template(name) for name in SCRIPTS)
+    body = "\n".join(read_template(name) for name in SCRIPTS)
     return f'"use strict";\n(() => {{\n{body}\n}})();\n'
 
 
 def _policy(styles: str, scripts: tuple[str, ...]) -> str:
-    sources = " ".join(_source(script) for script in scripts)
+    sources = " ".join(policy_source(script) for script in scripts)
     return (
-        f"default-src 'none'; script-src {sources}; style-src {_source(styles)}; "
+        f"default-src 'none'; script-src {sources}; style-src {policy_source(styles)}; "
         "img-src data: blob:; base-uri 'none'; form-action 'none'"
     )
-
-
-def _source(text: str) -> str:
-    digest = hashlib.sha256(text.encode("utf-8")).digest()
-    return f"'sha256-{base64.b64encode(digest).decode()}'"
 
 
 def _data_block(payload: dict[str, object]) -> str:
@@ -210,7 +189,7 @@ def _figure(value: float) -> str:
 
 
 def _foot(record: AnalysisRecord) -> dict[str, str]:
-    library = _template("built/3Dmol-min.js")
+    library = read_template("built/3Dmol-min.js")
     found = re.search(r"3dmol v([0-9.]+)", library[:400])
     versions = " · ".join(f"{n} {v}" for n, v in library_versions().items())
     name = f"3Dmol.js {found.group(1)}" if found else "3Dmol.js"
@@ -223,7 +202,7 @@ def _foot(record: AnalysisRecord) -> dict[str, str]:
             f"structmap {__version__} · {versions} · {name} (BSD-3-Clause) · "
             "page under MIT. No network is used."
         ),
-        "licence": escape(_template("built/3Dmol-LICENSE.txt")),
+        "licence": escape(read_template("built/3Dmol-LICENSE.txt")),
         "hashes": "".join(
             f"<span>{escape(n)}<br>sha256 <code>{escape(h)}</code></span>"
             for n, h in pairs
