@@ -187,3 +187,23 @@ def test_impossible_images_are_a_mistake_of_the_caller():
     np.testing.assert_array_equal(
         image_matrix(without_crystal(structure), 0, (0, 0, 0)), np.eye(4)
     )
+
+
+def test_mates_that_are_all_out_of_reach_make_no_contacts():
+    """Three residues of 4CUP lie far from the twofold axis of its dimer."""
+    structure = without_crystal(read_structure(DATA / "4cup.cif.gz"))
+    contacts = contacts_of(structure)
+    near = np.unique(contacts.residue_2[contacts.kind == COMPLEX])
+    far = np.array([r for r in range(60) if np.abs(near - r).min() > 10])[:3]
+    keep = np.isin(structure.residue_of_atom, far)
+    columns = ("position", "residue_of_atom", "model_of_atom", "atom_name", "element")
+    few = dataclasses.replace(
+        structure,
+        **{
+            name: getattr(structure, name)[keep]
+            for name in (*columns, "altloc", "occupancy", "b_iso")
+        },
+    )
+    found = contacts_of(few)
+    assert len(found.kind) > 0
+    assert set(found.kind.tolist()) == {CHAIN}

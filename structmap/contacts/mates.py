@@ -139,7 +139,7 @@ def _landmarks(
     structure: Structure, matrices: NDArray[np.float64]
 ) -> NDArray[np.float64]:
     places = np.einsum("mij,cj->mci", matrices, corners_of(structure))[..., :3]
-    return np.asarray(places.reshape(len(matrices), -1))
+    return np.asarray(places.reshape(len(matrices), 3 * places.shape[1]))
 
 
 def _groups(places: NDArray[np.float64]) -> list[list[int]]:
