@@ -10,6 +10,7 @@ from structmap.forms.units import UnitInForm
 from structmap.page.markup import pretty_operator
 from structmap.page.templates import policy_source, read_template
 from structmap.version import __version__
+from structmap.words import number_in_words
 
 CHANGES_SHOWN = 200
 COLOURS = 6
@@ -22,7 +23,7 @@ HELD_BY = {
 }
 STYLES = (
     ".forms { overflow-x: auto; } .forms td span { display: block; } "
-    ".forms td.here { background: var(--wash); } .forms a { color: inherit; }"
+    ".forms td.here { background: var(--wash); } .forms a, .result a { color: inherit; }"
 )
 
 
@@ -46,7 +47,7 @@ def forms_html(found: Comparison) -> str:
     """
     styles = read_template("page.css") + STYLES
     names = _names(found)
-    title = f"{len(names)} forms of one protein"
+    title = f"{number_in_words(len(names)).capitalize()} forms of one protein"
     policy = f"default-src 'none'; style-src {policy_source(styles)}; base-uri 'none'"
     sections = (
         _section("a", "Units in each form", _units_table(found, names)),

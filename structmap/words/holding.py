@@ -211,9 +211,11 @@ def _link_sentence(unit: MotionalUnit, hold: Hold) -> str:
     if hold.weakest is None or not hold.link_kinds:
         return f"What holds {unit.name}: no contact"
     sizes = [number_in_words(len(side)) for side in hold.weakest.sides]
+    single = hold.weakest.n_residue_contacts == 1
+    fewest, verb = ("the contact", "is") if single else ("the fewest contacts", "are")
     return (
-        f"What holds {unit.name}: the fewest contacts without which it falls into "
-        f"{' and '.join(sizes)} residues are {link_phrase(hold)}"
+        f"What holds {unit.name}: {fewest} without which it falls into "
+        f"{' and '.join(sizes)} residues {verb} {link_phrase(hold)}"
     )
 
 
