@@ -256,14 +256,8 @@ def compare(name, seed):
 
 
 @pytest.mark.parametrize("seed", range(10))
-@pytest.mark.parametrize("name", ["mas-r1rho", "exponential", "binding", "model-free"])
+@pytest.mark.parametrize("name", PROBLEMS)
 def test_a_general_library_agrees_on_random_problems(name, seed):
-    compare(name, seed)
-
-
-@pytest.mark.parametrize("seed", range(2))
-@pytest.mark.parametrize("name", ["melting", "cpmg", "exchange-r1rho"])
-def test_a_general_library_agrees_where_sites_have_parameters_of_their_own(name, seed):
     compare(name, seed)
 
 
