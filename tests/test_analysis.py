@@ -152,7 +152,7 @@ def test_mapped_coordinates_carry_the_values(example):
             assert mapped[residue.seqid.num][0] == pytest.approx(expected, rel=1e-5)
 
 
-def test_library_use(example, tmp_path):
+def test_library_use(tmp_path):
     result = structmap.analyse(
         EXAMPLES / "4cup.cif.gz",
         EXAMPLES / "invented_values.csv",
@@ -180,7 +180,7 @@ def test_coordinates_that_changed_since_are_not_mapped(tmp_path):
 
 
 def made_up_values(structure, path):
-    """Write values for every polymer residue of a file; return whether there are any."""
+    """Write values for every polymer residue of a file; tell whether there are any."""
     rng = np.random.default_rng(11)
     seen, rows = set(), []
     for chain in structure[0]:

@@ -10,7 +10,8 @@ NAMED_AT_MOST = 5
 
 
 LEVEL = 0.05
-# A score that no placement fails to reach is none: what likeness earns, unlikeness takes.
+# A score that no placement fails to reach is none: unlikeness takes what likeness
+# earns.
 NEVER_LESS = 0.995
 
 
