@@ -63,7 +63,8 @@ def test_tables_have_the_columns_of_the_design(example):
     assert heads["sites.csv"] == (
         "site,auth_asym_id,auth_seq_id,pdbx_PDB_ins_code,auth_comp_id,atom,copies,value,"
         "value_error,deviation,moves,motional_unit,membership_probability,edge_filter_unit,"
-        "touches_lattice,lattice_partners,relative_exposure,note"
+        "touches_lattice,lattice_partners,relative_exposure,contact_number,"
+        "mate_distance_angstrom,secondary_structure,note"
     )
     assert heads["motional_units.csv"] == (
         "motional_unit,n_sites,sites,energy,verdict,p_any,p_place,p_smooth,stability,contrast,"
@@ -76,6 +77,14 @@ def test_tables_have_the_columns_of_the_design(example):
         "auth_seq_id_2,pdbx_PDB_ins_code_2,auth_comp_id_2,kind,operator,shift_a,shift_b,shift_c,"
         "assembly_operator,ncs_1,ncs_2,distance_angstrom,atom_1,atom_2,chemistry"
     )
+
+
+def test_sites_that_touch_a_neighbour_lie_within_the_cutoff_of_one(example):
+    sites = pd.read_csv(example[1] / "sites.csv")
+    near = sites["mate_distance_angstrom"] <= 4.5
+    assert (near == (sites["touches_lattice"] == "yes")).all()
+    assert (sites["contact_number"] > 0).all()
+    assert {"H"} <= set(sites["secondary_structure"].dropna()) <= {"H", "E"}
 
 
 def test_the_planted_loop_is_found_inside_the_molecule(example):

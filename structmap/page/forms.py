@@ -23,7 +23,8 @@ HELD_BY = {
 }
 STYLES = (
     ".forms { overflow-x: auto; } .forms td span { display: block; } "
-    ".forms td.here { background: var(--wash); } .forms a, .result a { color: inherit; }"
+    ".forms td.here { background: var(--wash); } "
+    ".forms a, .result a { color: inherit; }"
 )
 
 

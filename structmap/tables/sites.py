@@ -47,6 +47,9 @@ def sites_table(record: AnalysisRecord) -> Table:
             "touches_lattice",
             "lattice_partners",
             "relative_exposure",
+            "contact_number",
+            "mate_distance_angstrom",
+            "secondary_structure",
             "note",
         ),
     )
@@ -62,7 +65,7 @@ def sites_table(record: AnalysisRecord) -> Table:
             *(column[site] for column in found),
             bool(partners[site]),
             " ".join(partners[site]),
-            _exposure(record, site),
+            *_surroundings(record, site),
             _note(record, site, compared=compared, gaps=gaps),
         )
         for site in range(len(record.sites.name))
@@ -118,10 +121,21 @@ def _lattice_partners(record: AnalysisRecord) -> list[list[str]]:
     return [list(dict.fromkeys(found)) for found in partners]
 
 
-def _exposure(record: AnalysisRecord, site: int) -> float | None:
-    """Return the accessible share of a residue in its assembly."""
-    residue = int(record.sites.residue[site])
-    return None if residue < 0 else float(record.exposure.relative_in_assembly[residue])
+def _surroundings(record: AnalysisRecord, site: int) -> tuple[Cell, ...]:
+    """Return accessible share, contacts, nearest mate, and helix or strand of a site.
+
+    The accessible share is that in the assembly; contacts are residues touched within
+    chain, assembly and lattice; the mate is the nearest molecule of the lattice.
+    """
+    residue, exposure = int(record.sites.residue[site]), record.exposure
+    if residue < 0:
+        return (None,) * 4
+    return (
+        float(exposure.relative_in_assembly[residue]),
+        int(exposure.contact_number[residue].sum()),
+        float(exposure.mate_distance_angstrom[residue]),
+        str(record.structure.secondary_structure[residue]),
+    )
 
 
 def _note(
