@@ -32,7 +32,7 @@ from structmap.one_process.search import (
 from structmap.one_process.simple import State
 
 _STARTS = 5
-_FIXED_ROUNDS, _QUICK_ROUNDS = 20, 8
+_FIXED_ROUNDS, _QUICK_ROUNDS, _POLISHING_ROUNDS = 20, 8, 400
 _NODES, _REPLICATES = 1e-6, 1e-4
 _CROSSING = 1e-5
 _CHUNK = 150_000
@@ -395,7 +395,9 @@ def _fit_group_best(model: Model, profiles: Profiles, coarse: _Coarse) -> Proble
         profiles.x,
         _group_problems(profiles, *start),
     )
-    return take(found, np.array([int(found.chi2.argmin())]))
+    best = take(found, np.array([int(found.chi2.argmin())]))
+    # A valley towards equal populations is flat: the winner alone may go on.
+    return iterate(model, profiles.x, best, rounds=_POLISHING_ROUNDS)
 
 
 def _fit_group_nodes(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:

@@ -261,6 +261,16 @@ def test_a_general_library_agrees_on_random_problems(name, seed):
     compare(name, seed)
 
 
+def test_a_flat_valley_of_populations_is_followed_to_its_end():
+    rng = np.random.default_rng(6)
+    _, *problem = draw_problem("exchange-r1rho", rng, n_sites=2)
+    fit = fit_group(*problem, exchange_r1rho_model())
+    value, chi2 = refit_everything(fit)
+    assert fit.chi2_shared == pytest.approx(chi2, rel=1e-9)
+    # So flat that at this chi-square the rate is known to five digits.
+    assert fit.best == pytest.approx(value, rel=1e-5)
+
+
 # --- limits, signs, robustness --------------------------------------------------------
 
 
