@@ -284,7 +284,7 @@ function overviewText(group, x) {
   }
   const unit = data.units[group.unit];
   const untested = unit.process.length === 1 && unit.process[0] === "not tested";
-  const lines = untested ? ["one process: not tested"] : unit.process.flatMap((line) => line.split(/ \((?=.*\)$)/).map((piece) => piece.replace(/\)$/, "")));
+  const lines = untested ? ["one process: not tested"] : unit.process.filter((line) => !line.startsWith("describes only")).flatMap((line) => line.split(/ \((?=.*\)$)/).map((piece) => piece.replace(/\)$/, "")));
   return [
     markAt(group.unit, x + 5, 20, 4.6),
     svgText(`${unit.name}, ${count}`, x + 15, 24, "strong"),
