@@ -335,7 +335,7 @@ def test_edge_filter_stands_beside_it():
     [
         (np.zeros((0, 1)), "no site has enough values"),
         (np.ones((1, 1)), "only one site"),
-        (np.array([[1.0], [2.0]]), "only 2 sites"),
+        (np.array([[1.0], [2.0]]), "only two sites"),
         (np.full((30, 2), 7.0), "all values are equal"),
     ],
 )
