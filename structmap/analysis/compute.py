@@ -35,6 +35,9 @@ from structmap.sites import Sites, site_centres
 from structmap.structure import Structure, read_structure
 from structmap.values import ValueTable
 
+# Threads for the tests of chance; the result does not depend on their number.
+WORKERS = 2
+
 
 def analyse_table(
     coordinates: Path,
@@ -90,7 +93,9 @@ def analyse_table(
             rng=random_of_judging,
             progress=lambda step, share: tell(step, 0.5 + 0.4 * share),
             effort=Effort(
-                most_permutations=settings.most_permutations, repeats=settings.repeats
+                most_permutations=settings.most_permutations,
+                repeats=settings.repeats,
+                workers=WORKERS,
             ),
         )
     tell("asking what holds the units together", 0.9)
