@@ -92,11 +92,7 @@ def analyse_table(
             graphs,
             rng=random_of_judging,
             progress=lambda step, share: tell(step, 0.5 + 0.4 * share),
-            effort=Effort(
-                most_permutations=settings.most_permutations,
-                repeats=settings.repeats,
-                workers=WORKERS,
-            ),
+            effort=_effort(settings),
         )
     tell("asking what holds the units together", 0.9)
     units = describe_units(search, judgement, crystal)
@@ -175,4 +171,12 @@ def _surround(
             assemblies=assemblies,
         ),
         cutoff,
+    )
+
+
+def _effort(settings: Settings) -> Effort:
+    return Effort(
+        most_permutations=settings.most_permutations,
+        repeats=settings.repeats,
+        workers=WORKERS,
     )
