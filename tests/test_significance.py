@@ -58,10 +58,18 @@ def steady(values):
 
 def test_p_value_counts_the_data_among_the_permutations():
     # Phipson and Smyth (2010), equation 2: (b + 1)/(m + 1); never 0.
-    none = find_chance(5.0, steady([0.0] * 999), batch=250)
-    assert (none.p, none.hits, none.tries) == (1 / 1000, 0, 999)
     some = find_chance(5.0, steady([9.0] * 9 + [0.0] * 990), batch=250)
-    assert some.p == pytest.approx(10 / 1000)
+    assert (some.p, some.hits, some.tries) == (pytest.approx(10 / 1000), 9, 999)
+
+
+def test_stops_early_without_a_hit_where_the_answer_is_clear():
+    none = find_chance(5.0, steady([0.0] * 999), batch=250)
+    assert (none.p, none.hits, none.tries) == (1 / 300, 0, 299)
+    # Chances of 3 % or more show no hit so long once in a thousand times.
+    assert binom.pmf(0, none.tries, 0.03) < 0.001
+    late = find_chance(5.0, steady([0.0] * 298 + [9.0] + [0.0] * 700), batch=250)
+    assert (late.p, late.tries) == (2 / 1000, 999)
+    assert find_chance(5.0, steady([0.0] * 99), batch=250, most=99).p == 1 / 100
 
 
 def test_value_equal_to_the_observed_one_is_a_hit():

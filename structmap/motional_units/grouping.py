@@ -82,13 +82,60 @@ def screen_pairs(field: Field, links: Links) -> PassingPairs:
     PassingPairs
         In the order of the edges.
     """
-    limits = chi2_limits(1 - PAIR_CHANCE, field.value.shape[1])
-    enough = field.power[links.first] + field.power[links.second]
-    loud = (
-        enough
-        >= limits[np.minimum(field.freedom[links.first], field.freedom[links.second])]
+    return _screen(field, links.first, links.second)
+
+
+def screen_all_pairs(field: Field) -> Floats:
+    """Return how unlike all pairs of rows are, in contact or not.
+
+    Parameters
+    ----------
+    field : Field
+        Deviations.
+
+    Returns
+    -------
+    ndarray of float, shape (n_rows, n_rows)
+        Symmetric; infinite for pairs that do not deviate together and alike.
+    """
+    n_rows = len(field.power)
+    passing = _screen(field, *np.triu_indices(n_rows, 1))
+    table = np.full((n_rows, n_rows), np.inf)
+    table[passing.first, passing.second] = passing.cost
+    table[passing.second, passing.first] = passing.cost
+    return table
+
+
+def look_up_pairs(table: Floats, orders: Integers, tiled: Links) -> PassingPairs:
+    """Return the alike pairs in contact where rows sit at other places.
+
+    Parameters
+    ----------
+    table : ndarray of float, shape (n_rows, n_rows)
+        From `screen_all_pairs`.
+    orders : ndarray of int, shape (n_orders, n_rows)
+        Row that comes to each place.
+    tiled : Links
+        Contacts of that many copies laid side by side.
+
+    Returns
+    -------
+    PassingPairs
+        In the order of the edges.
+    """
+    flat = orders.ravel()
+    cost = table[flat[tiled.first], flat[tiled.second]]
+    alike = np.flatnonzero(np.isfinite(cost))
+    return PassingPairs(
+        first=tiled.first[alike], second=tiled.second[alike], cost=cost[alike]
     )
-    first, second = links.first[loud], links.second[loud]
+
+
+def _screen(field: Field, first: Integers, second: Integers) -> PassingPairs:
+    limits = chi2_limits(1 - PAIR_CHANCE, field.value.shape[1])
+    enough = field.power[first] + field.power[second]
+    loud = enough >= limits[np.minimum(field.freedom[first], field.freedom[second])]
+    first, second = first[loud], second[loud]
     moved = field.weight * field.value if len(first) else field.value
     total = field.weight[first] + field.weight[second]
     push = moved[first] + moved[second]

@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.sparse import coo_array
+from scipy.sparse import csr_array
 from scipy.sparse.csgraph import connected_components
 
 from structmap.motional_units.field import (
@@ -16,6 +16,7 @@ from structmap.motional_units.field import (
 )
 from structmap.motional_units.grouping import (
     AMPLITUDE_SCATTER,
+    PassingPairs,
     grow_seeds,
     screen_pairs,
     unlikeness,
@@ -35,6 +36,8 @@ MOST_PASSES = 10
 GAIN_CAP = 8.0
 COMPACT_EDGE_WORTH = 4.0
 MISFIT_CHARGE = 1.5
+# Beyond this squared deviation differences of squares lose what tells sites apart.
+MOST_POWER = 1e10
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -91,7 +94,27 @@ def find_groups(field: Field, links: Links) -> Grouping:
     Grouping
         The units that pay.
     """
-    label = grow_seeds(field, screen_pairs(field, links))
+    return extend_pairs(field, links, screen_pairs(field, links))
+
+
+def extend_pairs(field: Field, links: Links, pairs: PassingPairs) -> Grouping:
+    """Find units in one field whose alike pairs in contact are known.
+
+    Parameters
+    ----------
+    field : Field
+        Deviations from the background.
+    links : Links
+        Who touches whom.
+    pairs : PassingPairs
+        Pairs in contact that deviate alike.
+
+    Returns
+    -------
+    Grouping
+        The units that pay.
+    """
+    label = grow_seeds(field, pairs)
     return gate_groups(field, links, refine_groups(field, links, label))
 
 
@@ -134,6 +157,10 @@ def _reassign(field: Field, links: Links, root: Integers, rows: Integers) -> Boo
         member_unit[position] * links.n_rows + site, return_counts=True
     )
     unit, site = np.divmod(key, links.n_rows)
+    worth = EDGE_WORTH * links.factor * n_inside - MEMBER_PRICE
+    # No site can gain more than half its own squared deviation.
+    able = np.flatnonzero(0.5 * field.power[site] + worth > 0)
+    unit, site, worth = unit[able], site[able], worth[able]
     found = weigh_belonging(
         field,
         _sum_members(field, rows, member_unit),
@@ -141,7 +168,7 @@ def _reassign(field: Field, links: Links, root: Integers, rows: Integers) -> Boo
         unit=unit,
         inside=root[site] == roots[unit],
     )
-    score = found.gain - MEMBER_PRICE + EDGE_WORTH * links.factor * n_inside
+    score = found.gain + worth
     paying = np.flatnonzero(score > 0)
     unit, site, score = unit[paying], site[paying], score[paying]
     order = np.lexsort((unit, -score, site))
@@ -165,9 +192,12 @@ def _split_roots(links: Links, rows: Integers, label: Integers) -> Integers:
     same = label[other] == label[rows][position]
     number = np.full(links.n_rows, -1)
     number[rows] = np.arange(len(rows))
-    ends = (position[same], number[other[same]])
-    shape = (len(rows), len(rows))
-    graph = coo_array((np.ones(len(ends[0]), np.int8), ends), shape=shape)
+    start = np.zeros(len(rows) + 1, np.int64)
+    np.cumsum(np.bincount(position[same], minlength=len(rows)), out=start[1:])
+    ends = number[other[same]]
+    graph = csr_array(
+        (np.ones(len(ends)), ends, start), shape=(len(rows), len(rows))
+    )
     part = connected_components(graph, directed=False)[1]
     first = np.full(int(part.max()) + 1, links.n_rows)
     np.minimum.at(first, part, rows)
@@ -278,6 +308,8 @@ def weigh_belonging(
     Belonging
         Gains and misfits.
     """
+    if field.weight.shape[1] == 1 and field.power.max(initial=0) < MOST_POWER:
+        return _weigh_whole(field, profiles, site=site, unit=unit, inside=inside)
     value, weight = field.value[site], field.weight[site]
     own = weight * inside[:, None]
     total = profiles.weight[unit] - own
@@ -293,6 +325,38 @@ def weigh_belonging(
     charge = _charge(np.log1p(relative), field.freedom[site])
     charge = charge + np.log1p(AMPLITUDE_SCATTER**2 * spread)
     return Belonging(gain=0.5 * (rest - misfit - charge), misfit=misfit)
+
+
+def _weigh_whole(
+    field: Field,
+    profiles: Profiles,
+    *,
+    site: Integers,
+    unit: Integers,
+    inside: Booleans,
+) -> Belonging:
+    """Weigh rows without gaps, through products of site and profile alone."""
+    weight = field.weight[site, 0]
+    own = weight * inside
+    total = profiles.weight[unit, 0] - own
+    known = total > 1e-9 * weight
+    safe = np.where(known, total, 1.0)
+    squares = field.power[site] / weight
+    push_squares = np.einsum("ij,ij->i", profiles.push, profiles.push)[unit]
+    product = np.einsum("ij,ij->i", field.value[site], profiles.push[unit])
+    to_mean = np.where(known, (product - own * squares) / safe, 0.0)
+    rest = push_squares - 2 * own * product + own**2 * squares
+    mean_squares = np.where(known, np.maximum(rest, 0.0) / safe**2, 0.0)
+    relative = np.where(known, weight / safe, 0.0)
+    precision = np.where(known, weight / (1 + relative), 0.0)
+    scatter = AMPLITUDE_SCATTER**2
+    apart = np.maximum(squares - 2 * to_mean + mean_squares, 0.0)
+    spread = 1 + scatter * precision * mean_squares
+    along = precision * (to_mean - mean_squares)
+    misfit = np.maximum(precision * apart - scatter * along**2 / spread, 0.0)
+    charge = field.freedom[site] * np.log1p(relative) + np.log(spread)
+    gain = 0.5 * (weight * known * squares - misfit - charge)
+    return Belonging(gain=gain, misfit=misfit)
 
 
 def _sum_columns(squares: Floats, weight: Floats) -> Floats:

@@ -11,6 +11,8 @@ PERMUTATIONS, MOST_PERMUTATIONS = 999, 9999
 # Beyond this many hits above the border the answer is clear.
 CLEAR_HITS = 20
 BORDER = (0.03, 0.08)
+# Without a single hit in so many the chance is below the border at 99.9 % confidence.
+CLEAR_TRIES = 299
 # The first draws are few, since many answers are clear after some dozens.
 FIRST_BATCH = 40
 # Rows laid side by side in one call: large enough for numpy, small enough for caches.
@@ -58,8 +60,8 @@ def find_chance(
     -------
     Chance
         ``(1 + hits) / (1 + tries)``; drawing ends early where 20 hits show a p above
-        the border (then ``hits / tries``), and goes on from 999 to `most` permutations
-        at the border.
+        the border (then ``hits / tries``) or 299 tries show no hit, and goes on from
+        999 to `most` permutations at the border.
 
     References
     ----------
@@ -67,7 +69,7 @@ def find_chance(
     .. [2] Besag and Clifford, Biometrika 78, 301-304 (1991).
     """
     hits = tries = 0
-    goal = min(PERMUTATIONS, most)
+    goal = min(CLEAR_TRIES, most)
     while tries < goal:
         size = min(batch, max(FIRST_BATCH, tries), goal - tries)
         drawn = draw(size) >= observed
@@ -75,9 +77,17 @@ def find_chance(
         if clear is not None:
             return Chance(p=CLEAR_HITS / clear, hits=CLEAR_HITS, tries=clear)
         hits, tries = hits + int(drawn.sum()), tries + len(drawn)
-        if tries == goal and BORDER[0] <= (1 + hits) / (1 + tries) <= BORDER[1]:
-            goal = most
+        if tries == goal:
+            goal = _next_goal(hits, tries, most)
     return Chance(p=(1 + hits) / (1 + tries), hits=hits, tries=tries)
+
+
+def _next_goal(hits: int, tries: int, most: int) -> int:
+    """Return how many tries to go on to; no more than made where the answer is clear."""
+    if tries < PERMUTATIONS:
+        return min(PERMUTATIONS, most) if hits else tries
+    at_border = BORDER[0] <= (1 + hits) / (1 + tries) <= BORDER[1]
+    return most if at_border else tries
 
 
 def _clear_at(drawn: np.ndarray, hits: int, tries: int) -> int | None:

@@ -27,7 +27,7 @@ from structmap.significance.chance import (
     batch_size,
     find_chance,
 )
-from structmap.significance.placement import Scores, random_orders, score_orders
+from structmap.significance.placement import Scores, order_scorer, random_orders
 from structmap.significance.stability import REPEATS, Recurrence, find_recurrence
 from structmap.significance.surrogates import smooth_orders
 from structmap.significance.verdict import Verdict, choose_verdict
@@ -244,9 +244,10 @@ def _capped(search: UnitSearch) -> Floats:
 def _chance_any(search: UnitSearch, rng: np.random.Generator, most: int) -> Chance:
     observed = float(np.maximum(_capped(search), 0).sum())
     source = random_orders(search.links.n_rows, rng)
+    score = order_scorer(search.field, search.links)
     return find_chance(
         observed,
-        lambda count: score_orders(search.field, search.links, source(count)).total,
+        lambda count: score(source(count)).total,
         batch=batch_size(search.links.n_rows),
         most=most,
     )
@@ -275,9 +276,10 @@ def _chance_of_largest(
     source: Callable[[int], Integers],
     most: int,
 ) -> Chance:
+    score = order_scorer(*pool)
     return find_chance(
         float(_capped(search)[unit]),
-        lambda count: score_orders(*pool, source(count)).largest,
+        lambda count: score(source(count)).largest,
         batch=batch_size(pool[1].n_rows),
         most=most,
     )
@@ -320,10 +322,11 @@ def _shared_chances(
 
 def _draw_null(search: UnitSearch, source: Callable[[int], Integers]) -> Scores:
     size = batch_size(search.links.n_rows)
+    score = order_scorer(search.field, search.links)
     parts = []
     for start in range(0, PERMUTATIONS, size):
         orders = source(min(size, PERMUTATIONS - start))
-        parts.append(score_orders(search.field, search.links, orders))
+        parts.append(score(orders))
     return Scores(
         total=np.concatenate([part.total for part in parts]),
         largest=np.concatenate([part.largest for part in parts]),

@@ -13,7 +13,11 @@ from structmap.motional_units.field import (
     take_rows,
     tile_links,
 )
-from structmap.motional_units.refinement import find_groups
+from structmap.motional_units.grouping import look_up_pairs, screen_all_pairs
+from structmap.motional_units.refinement import Grouping, extend_pairs, find_groups
+
+# Rows up to which all pairs are screened at once.
+MOST_TABLED = 800
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -29,6 +33,41 @@ class Scores:
 
     total: Floats
     largest: Floats
+
+
+def order_scorer(field: Field, links: Links) -> Callable[[Integers], Scores]:
+    """Return what scores placements of the rows of one field on one graph.
+
+    Whether two rows deviate alike does not depend on where they sit, so all pairs are
+    screened once, unless there are too many.
+
+    Parameters
+    ----------
+    field : Field
+        Deviations.
+    links : Links
+        Who touches whom.
+
+    Returns
+    -------
+    callable
+        From placements, shape (n_orders, n_rows), to their scores; see `score_orders`.
+    """
+    table = screen_all_pairs(field) if links.n_rows <= MOST_TABLED else None
+    tiled = links
+
+    def score(orders: Integers) -> Scores:
+        nonlocal tiled
+        n_orders = len(orders)
+        if tiled.n_rows != n_orders * links.n_rows:
+            tiled = tile_links(links, n_orders)
+        placed = take_rows(field, orders.ravel())
+        if table is None:
+            return _score(find_groups(placed, tiled), *orders.shape)
+        pairs = look_up_pairs(table, orders, tiled)
+        return _score(extend_pairs(placed, tiled, pairs), *orders.shape)
+
+    return score
 
 
 def score_orders(field: Field, links: Links, orders: Integers) -> Scores:
@@ -48,8 +87,10 @@ def score_orders(field: Field, links: Links, orders: Integers) -> Scores:
     Scores
         Of each placement.
     """
-    n_orders, n_rows = orders.shape
-    group = find_groups(take_rows(field, orders.ravel()), tile_links(links, n_orders))
+    return order_scorer(field, links)(orders)
+
+
+def _score(group: Grouping, n_orders: int, n_rows: int) -> Scores:
     block = group.first_row // n_rows
     energy = np.maximum(group.capped_energy, 0.0)
     largest = np.zeros(n_orders)
