@@ -2,7 +2,7 @@ import warnings
 
 import numpy as np
 import pytest
-from scipy.stats import binom
+from scipy.stats import binom, binomtest
 
 from structmap.motional_units import find_motional_units
 from structmap.motional_units.field import make_links
@@ -58,18 +58,26 @@ def steady(values):
 
 def test_p_value_counts_the_data_among_the_permutations():
     # Phipson and Smyth (2010), equation 2: (b + 1)/(m + 1); never 0.
+    none = find_chance(5.0, steady([0.0] * 99), batch=250, most=99)
+    assert (none.p, none.hits, none.tries) == (1 / 100, 0, 99)
     some = find_chance(5.0, steady([9.0] * 9 + [0.0] * 990), batch=250)
     assert (some.p, some.hits, some.tries) == (pytest.approx(10 / 1000), 9, 999)
 
 
-def test_stops_early_without_a_hit_where_the_answer_is_clear():
-    none = find_chance(5.0, steady([0.0] * 999), batch=250)
-    assert (none.p, none.hits, none.tries) == (1 / 300, 0, 299)
-    # Chances of 3 % or more show no hit so long once in a thousand times.
-    assert binom.pmf(0, none.tries, 0.03) < 0.001
-    late = find_chance(5.0, steady([0.0] * 298 + [9.0] + [0.0] * 700), batch=250)
-    assert (late.p, late.tries) == (2 / 1000, 999)
-    assert find_chance(5.0, steady([0.0] * 99), batch=250, most=99).p == 1 / 100
+@pytest.mark.parametrize(
+    ("n_hits", "within", "tries"),
+    [(0, 299, 299), (3, 299, 299), (4, 299, 999), (28, 999, 999), (29, 999, 2499)],
+)
+def test_ends_at_a_look_only_where_the_level_is_ruled_out(n_hits, within, tries):
+    numbers = np.zeros(9999)
+    numbers[np.linspace(0, within - 1, n_hits).astype(int)] = 9.0
+    found = find_chance(5.0, steady(numbers.tolist()), batch=250)
+    assert (found.hits, found.tries) == (n_hits, tries)
+    assert found.p == (1 + n_hits) / (1 + tries)
+    # With a chance of 0.05 so few hits come less than once in 2,000 times.
+    assert binomtest(n_hits, tries, 0.05, alternative="less").pvalue < 0.0005
+    if tries > within:
+        assert binomtest(n_hits, within, 0.05, alternative="less").pvalue >= 0.0005
 
 
 def test_value_equal_to_the_observed_one_is_a_hit():

@@ -4,15 +4,16 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from scipy.stats import binom
 
 from structmap.motional_units.field import Floats
 
 PERMUTATIONS, MOST_PERMUTATIONS = 999, 9999
-# Beyond this many hits above the border the answer is clear.
-CLEAR_HITS = 20
-BORDER = (0.03, 0.08)
-# Without a single hit in so many the chance is below the border at 99.9 % confidence.
-CLEAR_TRIES = 299
+LEVEL = 0.05
+# Looks at whether a chance of exactly the level may be ruled out, at this risk each.
+LOOKS, RISK = (299, PERMUTATIONS, 2499, 4999), 0.001
+# Between looks so many hits are enough where they put p above this.
+CLEAR_HITS, CLEARLY_ABOVE = 20, 0.08
 # The first draws are few, since many answers are clear after some dozens.
 FIRST_BATCH = 40
 # Rows laid side by side in one call: large enough for numpy, small enough for caches.
@@ -59,9 +60,10 @@ def find_chance(
     Returns
     -------
     Chance
-        ``(1 + hits) / (1 + tries)``; drawing ends early where 20 hits show a p above
-        the border (then ``hits / tries``) or 299 tries show no hit, and goes on from
-        999 to `most` permutations at the border.
+        ``(1 + hits) / (1 + tries)``. Drawing ends where 20 hits show a p above 0.08
+        (then ``hits / tries``), after 299, 999, 2,499 or 4,999 tries where so many
+        hits, or so few, would come from a chance of 0.05 less than once in a thousand
+        times, else after `most`.
 
     References
     ----------
@@ -69,25 +71,22 @@ def find_chance(
     .. [2] Besag and Clifford, Biometrika 78, 301-304 (1991).
     """
     hits = tries = 0
-    goal = min(CLEAR_TRIES, most)
-    while tries < goal:
-        size = min(batch, max(FIRST_BATCH, tries), goal - tries)
-        drawn = draw(size) >= observed
-        clear = _clear_at(drawn, hits, tries)
-        if clear is not None:
-            return Chance(p=CLEAR_HITS / clear, hits=CLEAR_HITS, tries=clear)
-        hits, tries = hits + int(drawn.sum()), tries + len(drawn)
-        if tries == goal:
-            goal = _next_goal(hits, tries, most)
+    for goal in (*(look for look in LOOKS if look < most), most):
+        while tries < goal:
+            size = min(batch, max(FIRST_BATCH, tries), goal - tries)
+            drawn = draw(size) >= observed
+            clear = _clear_at(drawn, hits, tries)
+            if clear is not None:
+                return Chance(p=CLEAR_HITS / clear, hits=CLEAR_HITS, tries=clear)
+            hits, tries = hits + int(drawn.sum()), tries + len(drawn)
+        if _rules_out_level(hits, tries):
+            break
     return Chance(p=(1 + hits) / (1 + tries), hits=hits, tries=tries)
 
 
-def _next_goal(hits: int, tries: int, most: int) -> int:
-    """Return how many tries to go on to; no more than made where the answer is clear."""
-    if tries < PERMUTATIONS:
-        return min(PERMUTATIONS, most) if hits else tries
-    at_border = BORDER[0] <= (1 + hits) / (1 + tries) <= BORDER[1]
-    return most if at_border else tries
+def _rules_out_level(hits: int, tries: int) -> bool:
+    fewer, more = binom.cdf(hits, tries, LEVEL), binom.sf(hits - 1, tries, LEVEL)
+    return bool(2 * min(fewer, more) < RISK)
 
 
 def _clear_at(drawn: np.ndarray, hits: int, tries: int) -> int | None:
@@ -97,7 +96,7 @@ def _clear_at(drawn: np.ndarray, hits: int, tries: int) -> int | None:
     if hits >= CLEAR_HITS or reached == len(drawn):
         return None
     at = tries + reached + 1
-    return at if CLEAR_HITS / at > BORDER[1] else None
+    return at if CLEAR_HITS / at > CLEARLY_ABOVE else None
 
 
 def batch_size(n_rows: int) -> int:
