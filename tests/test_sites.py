@@ -10,6 +10,7 @@ import pytest
 from Bio import Align
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from scipy.stats import hypergeom
 
 from structmap.sites import match_rows, match_sites, site_centres
 from structmap.sites.alignment import (
@@ -28,6 +29,7 @@ from structmap.sites.errors import (
     UnknownChainError,
     UnknownSiteError,
 )
+from structmap.sites.offsets import _chance_of_so_few
 from structmap.structure import read_structure
 from structmap.tables import Table, table_text
 from structmap.values import read_mapping, read_values
@@ -313,6 +315,15 @@ def test_order_of_rows_does_not_matter(tmp_path_factory, shuffler, shift):
         measured = values.quantities[0].value[sites.row, 0].tolist()
         found.append((sites.name.tolist(), sites.residue.tolist(), measured))
     assert found[0] == found[1]
+
+
+@given(st.integers(1, 300), st.data())
+def test_chance_of_so_few_prolines_is_the_hypergeometric_law(size, data):
+    n_marked = data.draw(st.integers(0, size))
+    n_drawn = data.draw(st.integers(0, size))
+    few = data.draw(st.integers(0, n_drawn))
+    told = _chance_of_so_few(few, size, n_marked, n_drawn)
+    assert told == pytest.approx(hypergeom.cdf(few, size, n_marked, n_drawn), abs=1e-10)
 
 
 # --- names ----------------------------------------------------------------------------

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from scipy.linalg import qr
 from scipy.sparse import csr_array
-from scipy.stats import chi2
+from scipy.special import gammaincinv
 
 from structmap.motional_units.apart import predict_apart
 from structmap.motional_units.field import Booleans, Floats, Integers
@@ -223,8 +223,9 @@ def _iterate(
 ) -> tuple[Floats, Floats]:
     """Return the weights of the last step and the trend that they gave."""
     freedom = samples.freedom()
-    middle = np.sqrt(chi2.ppf(0.5, freedom))
-    far = np.sqrt(chi2.ppf(0.99, freedom))
+    # Quantiles of chi-square.
+    middle = np.sqrt(2 * gammaincinv(freedom / 2, 0.5))
+    far = np.sqrt(2 * gammaincinv(freedom / 2, 0.99))
     for step in range(STEPS):
         length = _lengths(samples, value)
         unit = masked_median(length / middle, resting)

@@ -9,7 +9,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import chi2
+from scipy.special import gammaincinv
 
 Floats = NDArray[np.float64]
 Integers = NDArray[np.int64]
@@ -275,5 +275,5 @@ def chi2_limits(probability: float, highest: int) -> Floats:
         The quantiles; 0 for no degree of freedom.
     """
     out = np.zeros(highest + 1)
-    out[1:] = chi2.ppf(probability, np.arange(1, highest + 1))
+    out[1:] = 2 * gammaincinv(np.arange(1, highest + 1) / 2, probability)
     return out

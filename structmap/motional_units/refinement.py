@@ -195,9 +195,7 @@ def _split_roots(links: Links, rows: Integers, label: Integers) -> Integers:
     start = np.zeros(len(rows) + 1, np.int64)
     np.cumsum(np.bincount(position[same], minlength=len(rows)), out=start[1:])
     ends = number[other[same]]
-    graph = csr_array(
-        (np.ones(len(ends)), ends, start), shape=(len(rows), len(rows))
-    )
+    graph = csr_array((np.ones(len(ends)), ends, start), shape=(len(rows), len(rows)))
     part = connected_components(graph, directed=False)[1]
     first = np.full(int(part.max()) + 1, links.n_rows)
     np.minimum.at(first, part, rows)

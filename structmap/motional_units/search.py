@@ -5,7 +5,7 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.stats import f as f_distribution
+from scipy.special import fdtrc
 
 from structmap.behaviour import (
     Behaviour,
@@ -313,8 +313,8 @@ def _chance_of_deviation(field: Field, resting: Booleans) -> Floats:
     n_rest = max(int(resting.sum()), 2)
     told = MEDIAN_EFFICIENCY * float(field.freedom[resting].sum())
     small = (n_rest / (n_rest - 0.8)) ** 2 * (1 + np.pi / (2 * n_rest))
-    out: Floats = f_distribution.sf(
-        field.power / field.freedom / small, field.freedom, max(told, 1.0)
+    out: Floats = fdtrc(
+        field.freedom, max(told, 1.0), field.power / field.freedom / small
     )
     return out
 

@@ -4,8 +4,8 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+import pandas as pd
 from numpy.typing import ArrayLike, NDArray
-from scipy.stats import rankdata
 
 from structmap.network.build import SURROUNDINGS, ElasticNetwork, laplacian_of
 from structmap.network.inversion import fluctuations_of
@@ -101,9 +101,16 @@ def correlate(first: ArrayLike, second: ArrayLike) -> Agreement:
         return Agreement(pearson=np.nan, rank=np.nan, n_values=n_values)
     return Agreement(
         pearson=_pearson(pairs),
-        rank=_pearson(rankdata(pairs, axis=1)),
+        rank=_pearson(_ranks(pairs)),
         n_values=n_values,
     )
+
+
+def _ranks(values: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Rank along the last axis; ties share their mean rank."""
+    flat = pd.DataFrame(values.reshape(-1, values.shape[-1]).T)
+    out: NDArray[np.float64] = flat.rank().to_numpy().T.reshape(values.shape)
+    return out
 
 
 def _pearson(pairs: NDArray[np.float64]) -> float:
@@ -214,7 +221,7 @@ def _rank_differences(tables: NDArray[np.float64]) -> NDArray[np.float64]:
 
     `tables` has shape (3, n_resamples, n_sites); NaN where a resample does not vary.
     """
-    ranks = rankdata(tables, axis=2)
+    ranks = _ranks(tables)
     ranks = ranks - ranks.mean(axis=2, keepdims=True)
     spread = np.sqrt((ranks**2).sum(axis=2))
     varies = (spread > 0).all(axis=0)

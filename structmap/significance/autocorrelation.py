@@ -1,9 +1,9 @@
 """Spatial autocorrelation over the contacts: Moran's I, join counts, local G."""
 
 import numpy as np
+import pandas as pd
 from scipy.sparse import csr_array, eye_array
 from scipy.special import ndtri
-from scipy.stats import rankdata
 
 from structmap.motional_units.field import Floats, Links
 
@@ -122,5 +122,6 @@ def normal_scores(values: Floats) -> Floats:
     ndarray of float, same shape
         ``quantile((rank - 1/2) / n)``; ties share their mean rank.
     """
-    out: Floats = ndtri((rankdata(values, axis=0) - 0.5) / max(len(values), 1))
+    rank = pd.DataFrame(values).rank().to_numpy().reshape(values.shape)
+    out: Floats = ndtri((rank - 0.5) / max(len(values), 1))
     return out

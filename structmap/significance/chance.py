@@ -4,7 +4,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.stats import binom
+from scipy.special import bdtr, bdtrc
 
 from structmap.motional_units.field import Floats
 
@@ -85,7 +85,8 @@ def find_chance(
 
 
 def _rules_out_level(hits: int, tries: int) -> bool:
-    fewer, more = binom.cdf(hits, tries, LEVEL), binom.sf(hits - 1, tries, LEVEL)
+    fewer = bdtr(hits, tries, LEVEL)
+    more = bdtrc(hits - 1, tries, LEVEL) if hits else 1.0
     return bool(2 * min(fewer, more) < RISK)
 
 

@@ -7,7 +7,7 @@ from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import hypergeom
+from scipy.special import betaln
 
 from structmap.records import store_read_only
 from structmap.sites.alignment import align_sequences
@@ -311,13 +311,33 @@ def avoid_prolines(layings: Sequence[Laying], chain: Chain) -> bool:
     placed = [laying.position[laying.position >= 0] for laying in full]
     start = np.array([position.min() for position in placed])
     stop = np.array([position.max() + 1 for position in placed])
-    chance = hypergeom.cdf(
-        [laying.n_proline for laying in full],
-        stop - start,
-        n_before[stop] - n_before[start],
-        [len(position) for position in placed],
-    )
+    chance = [
+        _chance_of_so_few(laying.n_proline, size, n_proline, len(position))
+        for laying, size, n_proline, position in zip(
+            full, stop - start, n_before[stop] - n_before[start], placed, strict=True
+        )
+    ]
     return bool(np.min(chance) * len(full) < _CHANCE_OF_AVOIDING)
+
+
+def _chance_of_so_few(few: int, size: int, n_marked: int, n_drawn: int) -> float:
+    """Chance of at most so many marked ones in a draw, by the hypergeometric law."""
+    count = np.arange(max(0, n_drawn - (size - n_marked)), few + 1)
+    if not len(count):
+        return 0.0
+    logs = (
+        _log_ways(n_marked, count)
+        + _log_ways(size - n_marked, n_drawn - count)
+        - _log_ways(size, n_drawn)
+    )
+    possible = (count <= n_marked) & (count <= n_drawn)
+    return float(np.exp(logs[possible]).sum())
+
+
+def _log_ways(n: int, chosen: NDArray[np.int64] | int) -> NDArray[np.float64]:
+    """Logarithm of the binomial coefficient."""
+    out: NDArray[np.float64] = -np.log1p(n) - betaln(n - chosen + 1, chosen + 1)
+    return out
 
 
 def full_enough(layings: Sequence[Laying]) -> list[Laying]:
