@@ -14,11 +14,17 @@ from numpy.typing import NDArray
 
 from structmap.contacts import (
     CHAIN,
+    COMPLEX,
+    LATTICE,
     SiteGraph,
     choose_assemblies,
+    contact_cutoff,
     find_contacts,
     make_site_graph,
 )
+from structmap.lattice import connected_pieces
+from structmap.settings import Settings
+from structmap.significance import cutoffs_to_vary
 from structmap.sites import Sites, match_sites, site_centres
 from structmap.structure import POLYMER, Structure, read_structure
 from structmap.values import ValueTable, read_values
@@ -27,18 +33,28 @@ BASELINE = 20.0
 MEMBER_SCATTER, ERROR_SCATTER = 0.15, 0.2
 SINGLES_SHARE, MISSING_SHARE = 0.04, 0.1
 FIELD_BUMPS, FIELD_WIDTH = 8, 0.7
-Kind = Literal["units", "null", "scatter"]
+SMALLEST_PATCH, LARGEST_PATCH = 3, 6
+TRIES = 300
+Kind = Literal["units", "null", "scatter", "lattice"]
+
+
+class NoRoomError(Exception):
+    """A structure has no place for units of a plan."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Plan:
-    """What to plant: points a site, effect in errors, a field or none, what kind."""
+    """What to plant: points a site, effect in errors, a field or none, what kind.
+
+    Errors are stated `misreport` times as large as they are.
+    """
 
     n_points: int
     effect: float
     field: bool
     kind: Kind = "units"
     n_units: int = 3
+    misreport: float = 1.0
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -55,7 +71,16 @@ class Ground:
     @property
     def graph(self) -> SiteGraph:
         """Contacts at the usual cutoff."""
-        return self.graphs[self.cutoffs.index(4.5)]
+        return self.graph_at(self.cutoff_angstrom)
+
+    @property
+    def cutoff_angstrom(self) -> float:
+        """The usual cutoff: between heavy atoms, or between CA atoms."""
+        return usual_cutoff(self.structure)
+
+    def graph_at(self, cutoff_angstrom: float) -> SiteGraph:
+        """Contacts at one of the cutoffs."""
+        return self.graphs[self.cutoffs.index(cutoff_angstrom)]
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -67,6 +92,16 @@ class Problem:
     value: NDArray[np.float64]
     error: NDArray[np.float64]
     unit: NDArray[np.int64]
+
+
+def usual_cutoff(structure: Structure) -> float:
+    """Return the cutoff that an analysis takes by itself."""
+    usual = Settings()
+    return contact_cutoff(
+        structure,
+        cutoff_angstrom=usual.cutoff_angstrom,
+        ca_cutoff_angstrom=usual.ca_cutoff_angstrom,
+    )
 
 
 def read_ground(path: Path, folder: Path) -> Ground:
@@ -84,7 +119,7 @@ def read_ground(path: Path, folder: Path) -> Ground:
     values.write_text("\n".join(["auth_asym_id,auth_seq_id,value", *rows]) + "\n")
     table: ValueTable = read_values(values)
     sites = match_sites(structure, table)
-    cutoffs = (4.0, 4.5, 5.0, 6.0)
+    cutoffs = cutoffs_to_vary(usual_cutoff(structure), ca_only=structure.ca_only)
     contacts = find_contacts(
         structure,
         reach_angstrom=max(cutoffs),
@@ -103,11 +138,11 @@ def read_ground(path: Path, folder: Path) -> Ground:
     )
 
 
-def neighbours(graph: SiteGraph, *, chain_only: bool) -> list[list[int]]:
-    """Return the sites that each site touches, sorted."""
+def neighbours(graph: SiteGraph, highest_kind: int) -> list[list[int]]:
+    """Return the sites that each site touches by such kinds, sorted."""
     out: list[list[int]] = [[] for _ in range(graph.n_sites)]
     for one, two, kind in zip(graph.site_1, graph.site_2, graph.kind, strict=True):
-        if kind == CHAIN or not chain_only:
+        if kind <= highest_kind:
             out[one].append(int(two))
             out[two].append(int(one))
     return [sorted(each) for each in out]
@@ -125,9 +160,19 @@ def decay(x: NDArray[np.float64], rng: np.random.Generator) -> NDArray[np.float6
 def grow_patch(
     near: list[list[int]], taken: set[int], rng: np.random.Generator
 ) -> list[int]:
-    """Grow a patch of 4 to 12 sites, preferring sites that touch it more than once."""
+    """Grow a patch of 4 to 12 sites from anywhere."""
     size = int(rng.integers(4, 13))
-    start = int(rng.integers(len(near)))
+    return grow_from(int(rng.integers(len(near))), size, near, taken, rng)
+
+
+def grow_from(
+    start: int,
+    size: int,
+    near: list[list[int]],
+    taken: set[int],
+    rng: np.random.Generator,
+) -> list[int]:
+    """Grow a patch, preferring sites that touch it more than once; empty if stuck."""
     patch = [] if start in taken else [start]
     while patch and len(patch) < size:
         edge = [j for i in patch for j in near[i] if j not in taken and j not in patch]
@@ -138,7 +183,10 @@ def grow_patch(
 
 
 def plant(ground: Ground, plan: Plan, seed: int) -> Problem:
-    """Make one problem."""
+    """Make one problem.
+
+    Raises `NoRoomError` where no unit finds a place.
+    """
     rng = np.random.default_rng([seed, plan.n_points, int(10 * plan.effect)])
     n_sites = ground.graph.n_sites
     x = np.geomspace(1.0, 40.0, plan.n_points) if plan.n_points > 1 else np.zeros(1)
@@ -152,16 +200,39 @@ def plant(ground: Ground, plan: Plan, seed: int) -> Problem:
     if plan.kind == "scatter":
         order = rng.permutation(n_sites)
         value, error, unit = value[order], error[order], 0 * unit
-    measured = np.sort(
-        rng.choice(n_sites, n_sites - round(MISSING_SHARE * n_sites), replace=False)
-    )
+    measured = draw_measured(ground.graph, unit, plan, rng)
     return Problem(
         site=measured,
         x=x,
         value=value[measured],
-        error=error[measured],
+        error=plan.misreport * error[measured],
         unit=unit[measured],
     )
+
+
+def draw_measured(
+    graph: SiteGraph, unit: NDArray[np.int64], plan: Plan, rng: np.random.Generator
+) -> NDArray[np.int64]:
+    """Leave sites out at random; what joins a unit over the lattice stays measured."""
+    n_kept = graph.n_sites - round(MISSING_SHARE * graph.n_sites)
+    for _ in range(TRIES):
+        measured = np.sort(rng.choice(graph.n_sites, n_kept, replace=False))
+        if plan.kind != "lattice" or all(
+            needs_lattice(graph, measured[unit[measured] == u])
+            for u in range(1, unit.max() + 1)
+        ):
+            return measured
+    raise NoRoomError("units fall apart when sites are left out")
+
+
+def needs_lattice(graph: SiteGraph, members: NDArray[np.int64]) -> bool:
+    """Tell whether members are two patches that only lattice contacts join."""
+    if len(members) < 2 * SMALLEST_PATCH:
+        return False
+    patches = connected_pieces(members, graph, highest_kind=COMPLEX)
+    whole = connected_pieces(members, graph, highest_kind=LATTICE)
+    sizes = [len(patch) for patch in patches]
+    return len(whole) == 1 and len(sizes) == 2 and min(sizes) >= SMALLEST_PATCH
 
 
 def plant_units(
@@ -170,20 +241,55 @@ def plant_units(
     """Place the units, apart from each other, and shift their members."""
     unit = np.zeros(graph.n_sites, np.int64)
     shift = np.zeros((graph.n_sites, len(x)))
-    chain, every = (neighbours(graph, chain_only=only) for only in (True, False))
+    wanted = 0 if plan.kind == "null" else plan.n_units
+    chain = neighbours(graph, CHAIN)
+    rest, every = neighbours(graph, COMPLEX), neighbours(graph, LATTICE)
+    bridges = lattice_bridges(graph) if plan.kind == "lattice" and wanted else None
     planted = 0
-    for _ in range(300 if plan.kind != "null" else 0):
-        if planted == plan.n_units:
+    for _ in range(TRIES):
+        if planted == wanted:
             break
         inside = set(np.flatnonzero(unit).tolist())
         taken = inside | {j for i in inside for j in every[i]}
-        patch = grow_patch(chain, taken, rng)
+        if bridges is None:
+            patch = grow_patch(chain, taken, rng)
+        else:
+            patch = grow_pair(rest, bridges, taken, rng)
         if patch and len(inside) + len(patch) <= 0.35 * graph.n_sites:
             planted += 1
             profile = plan.effect * rng.uniform(1, 1.5) * decay(x, rng)
             scatter = np.exp(MEMBER_SCATTER * rng.standard_normal((len(patch), 1)))
             unit[patch], shift[patch] = planted, profile * scatter
+    if wanted and not planted:
+        raise NoRoomError("no unit of this kind has a place")
     return unit, shift
+
+
+def lattice_bridges(graph: SiteGraph) -> list[tuple[int, int]]:
+    """Return the pairs of sites that touch through the lattice alone."""
+    between = graph.kind == LATTICE
+    pairs = zip(graph.site_1[between], graph.site_2[between], strict=True)
+    found = [(int(one), int(two)) for one, two in pairs]
+    if not found:
+        raise NoRoomError("no two sites touch through the lattice alone")
+    return found
+
+
+def grow_pair(
+    near: list[list[int]],
+    bridges: list[tuple[int, int]],
+    taken: set[int],
+    rng: np.random.Generator,
+) -> list[int]:
+    """Grow two patches of 3 to 6 sites, apart but for one bridge at least."""
+    one, two = bridges[int(rng.integers(len(bridges)))]
+    sizes = rng.integers(SMALLEST_PATCH, LARGEST_PATCH + 1, 2).tolist()
+    first = grow_from(one, sizes[0], near, taken | {two}, rng)
+    beside = {j for i in first for j in near[i]}
+    if not first or two in beside:
+        return []
+    second = grow_from(two, sizes[1], near, taken | beside | set(first), rng)
+    return first + second if second else []
 
 
 def smooth_field(
@@ -209,7 +315,7 @@ def add_singles(
 ) -> None:
     """Let some sites move alone, away from units and from each other."""
     x, effect = curve
-    near = neighbours(graph, chain_only=False)
+    near = neighbours(graph, LATTICE)
     blocked = set(np.flatnonzero(unit).tolist())
     wanted = max(1, round(SINGLES_SHARE * graph.n_sites))
     for site in rng.permutation(graph.n_sites).tolist():
