@@ -187,7 +187,7 @@ def lattice_rows() -> list[Row]:
         Row(
             name=name_of(plan),
             plan=plan,
-            bounds=least(0.85 if plan.n_points > 1 else 0.80, "lattice"),
+            bounds=least(0.90 if plan.n_points > 1 else 0.85, "lattice"),
         )
         for plan in plans
     ]
