@@ -4,17 +4,19 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.stats import f as f_law
 
 from structmap.one_process.compound import CompoundSolver, make_compound_solver
 from structmap.one_process.model import FloatArray, Model
-from structmap.one_process.profiles import GroupFit, Profiles, make_profiles
+from structmap.one_process.profiles import (
+    STATED_LIMIT,
+    GroupFit,
+    Profiles,
+    interval_rise,
+    make_profiles,
+)
 from structmap.one_process.search import from_axis
 from structmap.one_process.simple import SimpleSolver, State, make_simple_solver
 
-STATED_LIMIT = 3.841458820694124
-"""95 % point of chi-square with one degree of freedom."""
-_CONFIDENCE = 0.95
 _CURVE_POINTS = 121
 _STEP = 1e-4
 _ROBUST_LIMIT, _ROBUST_ROUNDS = 2.5, 8
@@ -106,10 +108,11 @@ def describe_fit(solver: Solver) -> GroupFit:
     position, chi2_shared = solver.fit_shared()
     sites, chi2_sites = solver.fit_sites()
     state = solver.state(position)
-    freedom = profiles.present.sum() - model.n_own * len(sites) - model.n_shared
+    points = int(profiles.present.sum())
+    freedom = points - model.n_own * len(sites) - model.n_shared
     scale = chi2_shared / freedom if freedom > 0 else 1.0
-    width = float(f_law.ppf(_CONFIDENCE, 1, freedom)) if freedom > 0 else STATED_LIMIT
-    scaled = solver.interval(position, chi2_shared + max(width * scale, 1e-9))
+    rise = interval_rise(chi2_shared, freedom)
+    scaled = solver.interval(position, chi2_shared + rise)
     stated = solver.interval(position, chi2_shared + STATED_LIMIT)
     ranges = solver.site_intervals(sites, chi2_sites + STATED_LIMIT)
     fitted = fitted_values(state, state.kernel)
@@ -133,6 +136,7 @@ def describe_fit(solver: Solver) -> GroupFit:
         free_high=from_axis(ranges[:, 1], axis),
         grid=from_axis(solver.nodes, axis),
         grid_chi2=solver.site_profile,
+        grid_shared=solver.shared_profile,
         baseline=state.part.baseline,
         amplitude=state.part.amplitude,
         local=state.local,

@@ -5,11 +5,15 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.stats import chi2 as chi2_law
+from scipy.stats import f as f_law
 
 from structmap.one_process.model import FloatArray, Model
 from structmap.records import store_read_only
 
 FLAT_QUANTILE = 0.99
+STATED_LIMIT = 3.841458820694124
+"""95 % point of chi-square with one degree of freedom."""
+_CONFIDENCE = 0.95
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -178,6 +182,27 @@ def find_flat_sites(profiles: Profiles) -> NDArray[np.bool_]:
     return np.asarray(misfit < chi2_law.ppf(FLAT_QUANTILE, freedom))
 
 
+def interval_rise(chi2: float, freedom: int) -> float:
+    """Return how far misfit may rise above its lowest within an interval of 95 %.
+
+    Parameters
+    ----------
+    chi2 : float
+        Lowest misfit.
+    freedom : int
+        Its degrees of freedom; with none the errors are taken as stated.
+
+    Returns
+    -------
+    float
+        The error scale, `chi2` over `freedom`, times the 95 % point of F with 1 and
+        `freedom` degrees of freedom.
+    """
+    if freedom < 1:
+        return STATED_LIMIT
+    return max(float(f_law.ppf(_CONFIDENCE, 1, freedom)) * (chi2 / freedom), 1e-9)
+
+
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class GroupFit:
     """One shared value, and a value for each site, fitted to a group.
@@ -209,6 +234,9 @@ class GroupFit:
         Values of the shared parameter.
     grid_chi2 : ndarray of float, shape (n_sites, n_nodes)
         Misfit of each site over them, for the plot; companions are at their best.
+    grid_shared : ndarray of float, shape (n_nodes,)
+        Misfit of all sites together over them: with one companion for all, so that it
+        can lie above the sum over the sites.
     baseline, amplitude, local : ndarray of float, shape (n_sites,)
         Of the shared fit; `local` is NaN for models without.
     fitted, residual, leverage : ndarray of float, shape (n_sites, n_points)
@@ -235,6 +263,7 @@ class GroupFit:
     free_high: NDArray[np.float64]
     grid: NDArray[np.float64]
     grid_chi2: NDArray[np.float64]
+    grid_shared: NDArray[np.float64]
     baseline: NDArray[np.float64]
     amplitude: NDArray[np.float64]
     local: NDArray[np.float64]
@@ -254,6 +283,7 @@ class GroupFit:
         for name in ("fitted", "residual", "leverage"):
             store_read_only(self, name, np.float64, (n_sites, n_points))
         store_read_only(self, "grid_chi2", np.float64, (n_sites, len(self.grid)))
+        store_read_only(self, "grid_shared", np.float64, self.grid.shape)
         for name in ("curve", "curve_error"):
             store_read_only(self, name, np.float64, (n_sites, len(self.curve_x)))
 
@@ -293,6 +323,31 @@ class GroupFit:
             Parameters that the sites alone have more than the shared fit.
         """
         return self.model.n_shared * (len(self.profiles.name) - 1)
+
+    @property
+    def interval_limit(self) -> float:
+        """Return the misfit at the ends of the interval `low` to `high`.
+
+        Returns
+        -------
+        float
+            The misfit at the ends of the interval `low` to `high`.
+        """
+        return self.chi2_shared + interval_rise(self.chi2_shared, self.freedom_shared)
+
+    @property
+    def band(self) -> FloatArray:
+        """Return half the width of the 95 % band at each point of the curves.
+
+        Returns
+        -------
+        ndarray of float
+            Half the width of the 95 % band at each point of the curves: the standard
+            error times the root of the quantile that makes the interval.
+        """
+        freedom = self.freedom_shared
+        width = STATED_LIMIT if freedom < 1 else f_law.ppf(_CONFIDENCE, 1, freedom)
+        return np.asarray(np.sqrt(width) * self.curve_error)
 
     @property
     def f_statistic(self) -> float:

@@ -58,7 +58,7 @@ def parabola_minimum(table: FloatArray) -> FloatArray:
     Parameters
     ----------
     table : ndarray, shape (..., n_nodes, n_sets)
-        Values at even nodes, three or more.
+        Values at even nodes; below three of them none is sought between.
 
     Returns
     -------
@@ -66,8 +66,10 @@ def parabola_minimum(table: FloatArray) -> FloatArray:
         Lowest point of the parabola through the lowest node and its neighbours; on
         the first and last node the value there.
     """
-    lowest = np.expand_dims(table.argmin(axis=-2), -2)
     n_nodes = table.shape[-2]
+    if n_nodes < 3:
+        return np.asarray(table.min(axis=-2))
+    lowest = np.expand_dims(table.argmin(axis=-2), -2)
     inner = np.clip(lowest, 1, n_nodes - 2)
     left, centre, right = (
         np.take_along_axis(table, inner + shift, axis=-2) for shift in (-1, 0, 1)

@@ -82,6 +82,8 @@ class OneProcess:
     fit : GroupFit or None
         Of the informative sites (of all where none is); None where nothing could be
         fitted.
+    kept_fit : GroupFit or None
+        Fit of the sites that share one value where others are set apart.
     value, low, high : float
         Shared value with its 95 % interval, NaN at an open end. For a subset it is
         the subset's.
@@ -122,6 +124,7 @@ class OneProcess:
     parameter: str
     unit: str
     fit: GroupFit | None
+    kept_fit: GroupFit | None = None
     value: float = float("nan")
     low: float = float("nan")
     high: float = float("nan")
@@ -404,6 +407,7 @@ def _find_subset(
                 verdict="shared by a subset",
                 reason="",
                 apart=apart,
+                kept_fit=fit,
                 value=rest.value,
                 low=rest.low,
                 high=rest.high,

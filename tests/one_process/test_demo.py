@@ -90,6 +90,8 @@ def test_one_odd_site_is_named():
     found = judge(join(BLOCKS["Q"], BLOCKS["P"].take([0])))
     assert found.statistic == pytest.approx(7.614, abs=5e-4)
     assert (found.verdict, found.apart) == ("shared by a subset", ("P1",))
+    assert found.kept_fit.profiles.name == BLOCKS["Q"].name
+    assert found.kept_fit.shared == found.value
     assert found.value == pytest.approx(1.846e-5, rel=5e-4)
     assert "all but P1" in plain_words(found)[0]
 

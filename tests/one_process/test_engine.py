@@ -1,5 +1,6 @@
 """Shared fits against worked figures, certified sets and a general optimiser."""
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -71,6 +72,50 @@ def test_bands_are_those_of_the_full_covariance():
     fine = slopes(fit.curve_x)
     expected = np.sqrt(np.einsum("sxi,ij,sxj->sx", fine, covariance, fine))
     np.testing.assert_allclose(fit.curve_error, expected, rtol=0.02)
+
+
+def test_band_of_the_page_covers_95_percent_by_students_t():
+    """t(0.975) with 11 degrees of freedom is 2.2010 (tables of Student's t)."""
+    fit = fit_group(TIMES, DECAYS, ERRORS, exponential_model())
+    np.testing.assert_allclose(fit.band, 2.2010 * fit.curve_error, rtol=1e-4)
+
+
+def test_misfit_over_the_grid_crosses_its_limit_at_the_ends_of_the_interval():
+    fit = fit_group(TIMES, DECAYS, ERRORS, exponential_model())
+    np.testing.assert_allclose(fit.grid_shared, fit.grid_chi2.sum(axis=0))
+    inside = fit.grid_shared <= fit.interval_limit
+    np.testing.assert_array_equal(inside, (fit.grid > fit.low) & (fit.grid < fit.high))
+    for end in (fit.low, fit.high):
+        one = fit_group(TIMES, DECAYS, ERRORS, pinned(end))
+        assert one.chi2_shared == pytest.approx(fit.interval_limit, rel=1e-6)
+
+
+def pinned(rate):
+    """The model whose rate can hardly move."""
+    bounds = lambda _: (rate * (1 - 1e-9), rate * (1 + 1e-9))  # noqa: E731
+    narrow = Parameter(name="k", unit="s-1", bounds=bounds)
+    return replace(exponential_model(), shared=narrow)
+
+
+def test_one_companion_for_all_costs_more_than_one_each():
+    """Sites of different populations: the shared misfit lies above the sum of theirs."""
+    model = Model(
+        name="two",
+        describes="decay to a common share",
+        function=lambda x, rate, share: share + (1 - share) * np.exp(-rate * x),
+        shared=Parameter(name="k", unit="s-1", bounds=lambda _: (0.05, 3.0)),
+        companion=Parameter(
+            name="s", unit="", bounds=lambda _: (0.01, 0.9), scale="linear", nodes=9
+        ),
+        baseline="none",
+    )
+    shares = np.array([[0.1], [0.5]])
+    values = shares + (1 - shares) * np.exp(-0.4 * TIMES)
+    fit = fit_group(TIMES, values, np.full_like(values, 0.02), model)
+    at = np.abs(np.log(fit.grid / 0.4)).argmin()
+    assert fit.grid_chi2[:, at].sum() < 1
+    assert fit.grid_shared[at] > 100
+    assert fit.grid_shared.min() == pytest.approx(fit.chi2_shared, rel=0.1)
 
 
 # --- certified values -----------------------------------------------------------------
