@@ -158,12 +158,12 @@ def _reassign(field: Field, links: Links, root: Integers, rows: Integers) -> Boo
     )
     unit, site = np.divmod(key, links.n_rows)
     worth = EDGE_WORTH * links.factor * n_inside - MEMBER_PRICE
-    # No site can gain more than half its own squared deviation.
-    able = np.flatnonzero(0.5 * field.power[site] + worth > 0)
+    sums = _sum_members(field, rows, member_unit)
+    able = np.flatnonzero(_most_gain(field, sums, site=site, unit=unit) + worth > 0)
     unit, site, worth = unit[able], site[able], worth[able]
     found = weigh_belonging(
         field,
-        _sum_members(field, rows, member_unit),
+        sums,
         site=site,
         unit=unit,
         inside=root[site] == roots[unit],
@@ -181,6 +181,17 @@ def _reassign(field: Field, links: Links, root: Integers, rows: Integers) -> Boo
     root[affected] = new[affected]
     touched[different // links.n_copy] = True
     return touched
+
+
+def _most_gain(
+    field: Field, sums: Profiles, *, site: Integers, unit: Integers
+) -> Floats:
+    """Return what sites gain by belonging at most, when they fit without misfit."""
+    most: Floats = 0.5 * field.power[site]
+    if field.weight.shape[1] == 1:
+        relative = field.weight[site, 0] / sums.weight[unit, 0]
+        most -= 0.5 * field.freedom[site] * np.log1p(relative)
+    return most
 
 
 def _split_roots(links: Links, rows: Integers, label: Integers) -> Integers:
