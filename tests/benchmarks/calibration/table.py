@@ -37,7 +37,8 @@ or beyond-gradient; false: false units a problem; any: problems with a unit;
 shown!: problems in which a false unit is called so; internl, lattice: matched units
 with such a lattice verdict; brier, ece: of the membership of sites in matched units;
 change: of ARI from the row above on the same seeds."""
-WIDTH = 33
+WIDTH = 41
+NEEDS_TESTS = ("power", "false_shown", "brier", "ece")
 
 
 def lines_of(
@@ -80,6 +81,8 @@ def row_line(
     """Return one line of the table and whether its bounds are kept."""
     outcomes = outcomes_of(done)
     figures = summarise(outcomes) | {"change": change_of(row, done, by_job)}
+    if row.against:
+        figures |= dict.fromkeys(NEEDS_TESTS, float("nan"))
     cells = " ".join(cell(figures[name]) for name in COLUMNS)
     seconds = sum(one.seconds for one in done) / len(done)
     name = f"{row.name} ({generator})" if generator == "own" else f"  {generator}"
