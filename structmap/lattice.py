@@ -276,7 +276,7 @@ def _covering_distance(
     nodes, node_of_copy = np.unique(residues, return_inverse=True)
     first = np.searchsorted(nodes, found.residue_1)
     second = np.searchsorted(nodes, found.residue_2)
-    allowed = found.kind <= highest_kind
+    allowed = (found.kind <= highest_kind) & found.joins
     steps = np.unique(found.distance_angstrom[allowed])
     low, high = 0, len(steps)
     while low < high:

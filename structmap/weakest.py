@@ -58,7 +58,8 @@ def find_weakest_link(
     sites : Sites
         The measured sites.
     contacts : Contacts
-        Within the cutoff; those between any copies of two members count.
+        Within the cutoff; those between any copies of two members count that may join
+        them, see `Contacts.joins`.
     apart : sequence of sequence of int, optional
         Groups of members of which two must come apart, such as what is left of the
         unit without lattice contacts; without them any split counts, also that of a
@@ -141,6 +142,7 @@ def _contacts_of_members(
             of_residue.setdefault(int(residue), []).append(place)
     own = np.array(sorted(of_residue), dtype=np.int64)
     inside = np.isin(contacts.residue_1, own) & np.isin(contacts.residue_2, own)
+    inside &= contacts.joins
     rows = [
         (contact, first, second)
         for contact in np.flatnonzero(inside).tolist()

@@ -236,7 +236,9 @@ def test_low_confidence_is_marked_in_table_and_words(tmp_path):
     said = [t for t in care_sentences(result.record) if "predicted model:" in t]
     assert said == [
         "The coordinates are a predicted model: five residues have a confidence below "
-        "70; contacts to them are weak evidence."
+        "70; contacts to them are weak, but for the bonds of the chain. They are below "
+        "50, where a prediction is not to be interpreted: nothing but the chain joins "
+        "such residues to a unit."
     ]
     result.save(tmp_path / "out")
     with (tmp_path / "out" / "sites.csv").open(encoding="utf-8") as handle:

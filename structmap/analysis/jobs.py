@@ -50,7 +50,7 @@ from structmap.shifts import (
     profile_rows,
 )
 from structmap.sites import Sites, match_rows
-from structmap.structure import read_structure
+from structmap.structure import LOW_CONFIDENCE, read_structure
 from structmap.tables import Table, contacts_table, table_text
 from structmap.values import read_values
 
@@ -158,6 +158,11 @@ def list_contacts(
     notes = [f"{len(found.kind)} residue contacts: {counts}"]
     if structure.crystal is None:
         notes.append(f"no lattice contacts, because {structure.no_crystal_reason}")
+    if found.weak.any():
+        notes.append(
+            f"{found.weak.sum()} contacts are weak: a residue was predicted with a "
+            f"confidence below {LOW_CONFIDENCE:g}"
+        )
     names = ", ".join(
         f"{a.name} ({a.oligomer})" if a.oligomer else a.name for a in assemblies
     )

@@ -13,13 +13,15 @@ from structmap.contacts.kinds import kinds_of_contacts
 from structmap.contacts.mates import Mate, mates_of_assemblies
 from structmap.contacts.record import Contacts
 from structmap.contacts.search import (
+    LONGEST_BOND_ANGSTROM,
+    LONGEST_CA_STEP_ANGSTROM,
     Molecule,
     ResiduePairs,
     join_pairs,
     no_pairs,
     polymer_atoms,
 )
-from structmap.structure import Assembly, Structure
+from structmap.structure import Assembly, Structure, residue_confidence
 
 Progress = Callable[[float], object]
 
@@ -119,7 +121,7 @@ def find_contacts(
         frames=frames,
         table=table,
     )
-    return _sorted_contacts(found, kind, reach_angstrom)
+    return _sorted_contacts(structure, found, kind, reach_angstrom)
 
 
 def _crystal_images(
@@ -241,7 +243,24 @@ def _over_models(
 
 
 def _sorted_contacts(
-    found: _Found, kind: NDArray[np.int64], reach_angstrom: float
+    structure: Structure,
+    found: _Found,
+    kind: NDArray[np.int64],
+    reach_angstrom: float,
+def _confidence(structure: Structure, found: _Found) -> NDArray[np.float64]:
+    """Return the lower confidence of each pair; NaN where a bond joins the two."""
+    first, second = found.pairs.first, found.pairs.second
+    if not structure.is_predicted:
+        return np.full(len(first), np.nan)
+    each = residue_confidence(structure)
+    longest = LONGEST_CA_STEP_ANGSTROM if structure.ca_only else LONGEST_BOND_ANGSTROM
+    copy = structure.copy_of_residue
+    bonded = (second == first + 1) & (copy[first] == copy[second])
+    bonded &= found.place == found.names.index(IDENTITY)
+    bonded &= found.pairs.distance_angstrom <= longest
+    return np.where(bonded, np.nan, np.minimum(each[first], each[second]))
+
+
 ) -> Contacts:
     pairs = found.pairs
     order = np.lexsort((found.place, pairs.second, pairs.first))
@@ -262,3 +281,4 @@ def _sorted_contacts(
         n_atom_pairs=pairs.n_atom_pairs[order],
         share_of_models=found.share[order],
     )
+        confidence=_confidence(structure, found)[order],

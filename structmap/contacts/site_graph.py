@@ -31,19 +31,23 @@ def make_site_graph(
     Returns
     -------
     SiteGraph
-        Contacts of a site with its own images are no edges.
+        Contacts of a site with its own images are no edges, nor are contacts with a
+        residue whose prediction is not to be interpreted.
     """
-    keep = np.flatnonzero(contacts.distance_angstrom <= cutoff_angstrom)
+    near = contacts.distance_angstrom <= cutoff_angstrom
+    keep = np.flatnonzero(near & contacts.joins)
     pairs = _site_pairs(sites, contacts.residue_1[keep], contacts.residue_2[keep])
     contact, first, second = pairs
     kind = contacts.kind[keep][contact]
     distance = contacts.distance_angstrom[keep][contact]
+    weak = contacts.weak[keep][contact]
     n_residues = int(max(sites.copy_residue.max(initial=-1), -1)) + 1
     every = np.arange(n_residues)
     _, one, other = _site_pairs(sites, every, every)
     first, second = np.concatenate([first, one]), np.concatenate([second, other])
     kind = np.concatenate([kind, np.full(len(one), CHAIN)])
     distance = np.concatenate([distance, np.zeros(len(one))])
+    weak = np.concatenate([weak, np.zeros(len(one), dtype=np.bool_)])
     edge = first != second
     return _collapsed(
         int(np.count_nonzero(sites.residue >= 0)),
@@ -51,6 +55,7 @@ def make_site_graph(
         np.maximum(first, second)[edge],
         kind=kind[edge],
         distance=distance[edge],
+        weak=weak[edge],
     )
 
 
@@ -82,20 +87,23 @@ def _collapsed(
     *,
     kind: NDArray[np.int64],
     distance: NDArray[np.float64],
+    weak: NDArray[np.bool_],
 ) -> SiteGraph:
     order = np.lexsort((second, first))
     first, second = first[order], second[order]
     new = (np.diff(first, prepend=-1) != 0) | (np.diff(second, prepend=-1) != 0)
     start = np.flatnonzero(new)
     if not start.size:
-        kind, distance = kind[:0], distance[:0]
+        kind, distance, weak = kind[:0], distance[:0], weak[:0]
     else:
         kind = np.minimum.reduceat(kind[order], start)
         distance = np.minimum.reduceat(distance[order], start)
+        weak = np.logical_and.reduceat(weak[order], start)
     return SiteGraph(
         n_sites=n_sites,
         site_1=first[start],
         site_2=second[start],
         kind=kind,
         distance_angstrom=distance,
+        weak=weak,
     )

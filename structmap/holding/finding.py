@@ -1,7 +1,7 @@
 """Asking of a motional unit what holds it, how weakly, and what that rests on."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -180,7 +180,24 @@ def describe_hold(
         loose_residues=find_deciding_side_chains(
             members, held.structure, sites=held.sites, contacts=held.contacts
         ),
+        firm_pieces=_firm_pieces(members, held.graph),
     )
+
+
+def _firm_pieces(
+    members: NDArray[np.int64], graph: SiteGraph
+) -> tuple[tuple[int, ...], ...]:
+    firm = replace(
+        graph,
+        site_1=graph.site_1[~graph.weak],
+        site_2=graph.site_2[~graph.weak],
+        kind=graph.kind[~graph.weak],
+        distance_angstrom=graph.distance_angstrom[~graph.weak],
+        weak=graph.weak[~graph.weak],
+    )
+    pieces = connected_pieces(members, firm, highest_kind=LATTICE)
+    whole = connected_pieces(members, graph, highest_kind=LATTICE)
+    return pieces if len(pieces) > len(whole) else ()
 
 
 def _weakest(members: NDArray[np.int64], held: Held) -> WeakestLink | None:

@@ -52,6 +52,9 @@ class Hold:
         Whether contacts of a closer kind would hold it within 1 Å more.
     loose_residues : tuple of int
         Residues of which a single poorly ordered side chain decides that it holds.
+    firm_pieces : tuple of tuple of int
+        In a predicted model the pieces, largest first, into which it falls without
+        contacts to residues of low confidence; empty where it stays whole.
     """
 
     unit: str
@@ -68,6 +71,7 @@ class Hold:
     verdict_at: tuple[tuple[float, str], ...]
     is_marginal: bool
     loose_residues: tuple[int, ...]
+    firm_pieces: tuple[tuple[int, ...], ...]
 
     def __post_init__(self) -> None:
         store_read_only(self, "periods", np.float64, (None, 3))

@@ -183,7 +183,7 @@ def _copies_of(
     ends = np.searchsorted(
         residue[by_residue], [contacts.residue_1, contacts.residue_2], side="right"
     )
-    inside = np.flatnonzero((ends > bounds).all(axis=0))
+    inside = np.flatnonzero((ends > bounds).all(axis=0) & contacts.joins)
     pairs = _node_pairs(by_residue, bounds[:, inside], ends[:, inside])
     elements = make_elements(structure, contacts)
     label = elements_of_contacts(structure, contacts, elements=elements, indices=inside)

@@ -2,6 +2,7 @@
 
 from structmap.structure.confidence import (
     LOW_CONFIDENCE,
+    VERY_LOW_CONFIDENCE,
     is_low_confidence,
     residue_confidence,
 )
@@ -24,6 +25,7 @@ __all__ = [
     "WATER",
     "Assembly",
     "ChainCopy",
+    "VERY_LOW_CONFIDENCE",
     "Crystal",
     "Structure",
     "is_low_confidence",

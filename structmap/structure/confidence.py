@@ -1,12 +1,22 @@
-"""Confidence in the residues of a predicted model."""
+"""Confidence in the residues of a predicted model (pLDDT, 0 to 100).
+
+Levels are those of the AlphaFold Protein Structure Database [1]_, drawn from how
+predictions fare against experiment [2]_: below 70 the backbone is often wrong, below 50
+the coordinates are not to be interpreted, and such residues are mostly disordered.
+
+References
+----------
+.. [1] Frequently asked questions, alphafold.ebi.ac.uk (cited from memory).
+.. [2] Tunyasuvunakool et al., Nature 596, 590 (2021; cited from memory).
+"""
 
 import numpy as np
 from numpy.typing import NDArray
 
 from structmap.structure.record import POLYMER, Structure
 
-# pLDDT below 70 is called low by those who predict (common practice, no source).
 LOW_CONFIDENCE = 70.0
+VERY_LOW_CONFIDENCE = 50.0
 
 
 def residue_confidence(structure: Structure) -> NDArray[np.float64]:

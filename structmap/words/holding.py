@@ -6,7 +6,7 @@ import numpy as np
 
 from structmap.holding import Hold
 from structmap.result import AnalysisRecord, MotionalUnit
-from structmap.structure import one_letter
+from structmap.structure import LOW_CONFIDENCE, one_letter
 from structmap.words.names import listing, number_in_words
 
 NOUNS = {
@@ -52,7 +52,57 @@ def hold_lines(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
         lines.append(f"at other cutoffs: {_other_cutoffs(unit, hold)}")
     if hold.loose_residues:
         lines.append(f"rests on {_loose(record, hold)}")
+    if hold.firm_pieces:
+        lines.append(weak_phrase(unit, hold))
     return tuple(lines)
+
+
+def weak_phrase(unit: MotionalUnit, hold: Hold) -> str:
+    """Return that a unit hangs on residues predicted with low confidence.
+
+    Parameters
+    ----------
+    unit : MotionalUnit
+        The motional unit.
+    hold : Hold
+        What holds it.
+
+    Returns
+    -------
+    str
+        ``hangs together only by weak contacts, to residues predicted with low
+        confidence: without them three of its five residues stay together``; blank when
+        it does not.
+    """
+    if not hold.firm_pieces:
+        return ""
+    count, kept = len(unit.members), len(hold.firm_pieces[0])
+    left = f"{number_in_words(kept)} of its {number_in_words(count)} residues stay"
+    if kept == 1:
+        left = f"none of its {number_in_words(count)} residues stay"
+    return (
+        "hangs together only by weak contacts, to residues predicted with low "
+        f"confidence: without them {left} together"
+    )
+
+
+def closing_line(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return that a unit closes on itself or goes on without end.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+    unit : MotionalUnit
+        The motional unit.
+
+    Returns
+    -------
+    str
+        ``closes to a ring of three``; blank when it ends.
+    """
+    hold = record.hold_of(unit)
+    return "" if hold.closes == "finite" else _closing(hold)
 
 
 def link_phrase(hold: Hold) -> str:
@@ -200,11 +250,16 @@ def _paragraph(record: AnalysisRecord, unit: MotionalUnit) -> str:
         sentences.append(_ablation(unit, hold))
     sentences.append(_distances(record, unit))
     if hold.loose_residues:
-        sentences.append(
-            f"It rests on {_loose(record, hold)} (B factor above twice the median of "
-            "the chain, or occupancy below one half)"
-        )
+        sentences.append(f"It rests on {_loose(record, hold)} ({_poor(record)})")
+    if hold.firm_pieces:
+        sentences.append(f"It {weak_phrase(unit, hold)}")
     return " ".join(f"{sentence}." for sentence in sentences)
+
+
+def _poor(record: AnalysisRecord) -> str:
+    if record.structure.is_predicted:
+        return f"predicted with a confidence below {LOW_CONFIDENCE:g}"
+    return "B factor above twice the median of the chain, or occupancy below one half"
 
 
 def _link_sentence(unit: MotionalUnit, hold: Hold) -> str:

@@ -9,6 +9,7 @@ from structmap.holding import NetworkEvidence
 from structmap.result import AnalysisRecord
 from structmap.structure import (
     LOW_CONFIDENCE,
+    VERY_LOW_CONFIDENCE,
     Assembly,
     is_low_confidence,
     residue_confidence,
@@ -141,8 +142,25 @@ def _confidence_sentence(record: AnalysisRecord) -> str:
     inside = f", {number_in_words(n_inside)} of them in units" if n_inside else ""
     return (
         f"The coordinates are a predicted model: {number_in_words(count)} {noun} a "
-        f"confidence below {LOW_CONFIDENCE:g}{inside}; contacts to them are weak "
-        "evidence."
+        f"confidence below {LOW_CONFIDENCE:g}{inside}; contacts to them are weak, but "
+        f"for the bonds of the chain.{_unreadable(record)}"
+    )
+
+
+def _unreadable(record: AnalysisRecord) -> str:
+    """Say which residues are too uncertain to join units."""
+    low = is_low_confidence(record.structure)
+    very = low & (residue_confidence(record.structure) < VERY_LOW_CONFIDENCE)
+    if not very.any():
+        return ""
+    count = int(very.sum())
+    which = f"{number_in_words(count).capitalize()} of them"
+    if (very == low).all():
+        which = "It" if count == 1 else "They"
+    verb = "is" if count == 1 else "are"
+    return (
+        f" {which} {verb} below {VERY_LOW_CONFIDENCE:g}, where a prediction is not to "
+        "be interpreted: nothing but the chain joins such residues to a unit."
     )
 
 

@@ -5,7 +5,7 @@ import numpy as np
 from structmap.one_process import OneProcess, show_interval
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.words.direction import direction_phrase
-from structmap.words.holding import hold_lines
+from structmap.words.holding import hold_lines, weak_phrase
 from structmap.words.phrases import (
     across_phrase,
     bridged_chains,
@@ -133,7 +133,7 @@ def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     if process is None:
         return ("not tested",)
     lines = [_process_word(process)]
-    if process.verdict in ("shared", "shared by a subset"):
+    if process.verdict != "distinct" and process.fit is not None:
         lines.append(show_interval(process))
     if process.verdict != "undetermined":
         lines.append(f"p\u00a0{p_text(process.p_distinct)}")
@@ -170,6 +170,8 @@ def unit_sentence(record: AnalysisRecord, unit: MotionalUnit) -> str:
     head = (
         f"{unit.name}, {members_phrase(record, unit)}, {lattice_phrase(record, unit)}"
     )
+    weak = weak_phrase(unit, record.hold_of(unit))
+    head += f"; it {weak}" if weak else ""
     way = direction_phrase(record, unit)
     head += f"; {way}" if way else ""
     return f"{head}; {_sure_phrase(unit)}{_process_clause(record, unit)}."
