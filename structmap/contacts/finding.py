@@ -242,11 +242,6 @@ def _over_models(
     return kept, count[often] / len(per_model)
 
 
-def _sorted_contacts(
-    structure: Structure,
-    found: _Found,
-    kind: NDArray[np.int64],
-    reach_angstrom: float,
 def _confidence(structure: Structure, found: _Found) -> NDArray[np.float64]:
     """Return the lower confidence of each pair; NaN where a bond joins the two."""
     first, second = found.pairs.first, found.pairs.second
@@ -261,6 +256,11 @@ def _confidence(structure: Structure, found: _Found) -> NDArray[np.float64]:
     return np.where(bonded, np.nan, np.minimum(each[first], each[second]))
 
 
+def _sorted_contacts(
+    structure: Structure,
+    found: _Found,
+    kind: NDArray[np.int64],
+    reach_angstrom: float,
 ) -> Contacts:
     pairs = found.pairs
     order = np.lexsort((found.place, pairs.second, pairs.first))
@@ -280,5 +280,5 @@ def _confidence(structure: Structure, found: _Found) -> NDArray[np.float64]:
         atom_2=pairs.atom_2[order],
         n_atom_pairs=pairs.n_atom_pairs[order],
         share_of_models=found.share[order],
-    )
         confidence=_confidence(structure, found)[order],
+    )
