@@ -9,6 +9,7 @@ import pytest
 
 from structmap.analysis import analyse
 from structmap.contacts import (
+    CHAIN,
     LATTICE,
     choose_assemblies,
     find_contacts,
@@ -87,25 +88,108 @@ def test_listed_operators_that_are_no_group_are_completed_and_named(tmp_path):
     assert len(contacts_of(structure).kind) == len(contacts_of(complete).kind)
 
 
-def test_operators_that_generate_too_much_are_refused(tmp_path):
-    """A shift by 1/24 of x beside the screw axes makes 96; one more axis makes more."""
+def listed_instead(tmp_path, triplets):
+    """1ORC with these operators beside the identity, and no name of a group."""
     text = unnamed_group(tmp_path, [2, 3, 4]).read_text().splitlines()
     first = next(
         i
         for i, line in enumerate(text)
         if line.startswith("REMARK 290") and "555" in line
     )
-    many = ["x+1/24,y,z", "x,y+1/24,z"]
     text[first + 1 : first + 1] = [
-        f"REMARK 290{n:>8}555   {triplet}" for n, triplet in enumerate(many, 2)
+        f"REMARK 290{n:>8}555   {triplet}" for n, triplet in enumerate(triplets, 2)
     ]
-    with pytest.raises(UnknownSymmetryError):
-        read_structure(made(tmp_path, text))
+    return made(tmp_path, text)
 
 
-def test_an_assembly_of_chains_that_are_missing_is_named_and_used(tmp_path):
+@pytest.mark.parametrize(
+    "triplets",
+    [
+        ["x+1/24,y,z", "x,y+1/24,z"],  # 576 translations
+        ["y,x+y,z"],  # of no finite order
+    ],
+)
+def test_operators_that_no_group_holds_leave_the_crystal_out(tmp_path, triplets):
+    path = listed_instead(tmp_path, triplets)
+    structure = read_structure(path)
+    assert structure.crystal is None
+    assert structure.warnings == (
+        f"The {len(triplets) + 1} operators listed in the file are no group: together "
+        "they generate more than 192. The crystal is left out: contacts are those of "
+        "the molecule and its assemblies alone, and what the crystal does cannot be "
+        "told.",
+    )
+    answered_without_crystal(tmp_path, path, "the operators that the file lists are no")
+
+
+def answered_without_crystal(tmp_path, path, reason):
+    """The molecule is answered for as if there were no crystal, and it is said."""
+    whole = contacts_of(read_structure(DATA / "1orc.pdb"))
+    chain = whole.kind == CHAIN
+    result = analysed(tmp_path, path)
+    found = result.record.contacts
+    np.testing.assert_array_equal(found.residue_1, whole.residue_1[chain])
+    np.testing.assert_array_equal(found.residue_2, whole.residue_2[chain])
+    said = " ".join(care_sentences(result.record))
+    assert result.record.structure.warnings[0] in said
+    assert f"no crystal to ask about, because {reason}" in said
+
+
+def test_triplets_that_cannot_be_read_are_no_operators(tmp_path):
+    with pytest.raises(UnknownSymmetryError, match="no operators are listed"):
+        read_structure(listed_instead(tmp_path, ["x,y,q"]))
+
+
+@pytest.mark.parametrize("lengths", [(5.0, 5.0, 5.0), (0.5, 400.0, 400.0)])
+def test_a_cell_too_small_for_the_molecule_is_named_and_left_out(tmp_path, lengths):
+    """1 Å³ for each of the 2,236 atoms, and a translation of half an Å."""
+    lines = [line for line in ORC.splitlines() if not line.startswith("SCALE")]
+    place = next(i for i, line in enumerate(lines) if line.startswith("CRYST1"))
+    cell = "".join(f"{length:9.3f}" for length in lengths)
+    lines[place] = lines[place][:6] + cell + lines[place][33:]
+    path = made(tmp_path, lines)
+    structure = read_structure(path)
+    assert structure.crystal is None
+    stated = " ".join(f"{length:g}" for length in lengths)
+    assert structure.warnings == (
+        f"The unit cell {stated} 90 90 90 with 4 operators is too small for the "
+        "molecule, which would overlap with its own images. The crystal is left out: "
+        "contacts are those of the molecule and its assemblies alone, and what the "
+        "crystal does cannot be told.",
+    )
+    answered_without_crystal(tmp_path, path, "the unit cell is too small for the")
+
+
+@pytest.mark.parametrize("factor", [0.66, 0.5])
+def test_an_overlapping_crystal_gives_a_whole_analysis(tmp_path, factor):
+    """Half the cell has room for the atoms, but not for the molecules."""
+    lines = [line for line in ORC.splitlines() if not line.startswith("SCALE")]
+    place = next(i for i, line in enumerate(lines) if line.startswith("CRYST1"))
+    short = "".join(
+        f"{factor * float(lines[place][k : k + 9]):9.3f}" for k in (6, 15, 24)
+    )
+    lines[place] = lines[place][:6] + short + lines[place][33:]
+    result = analysed(tmp_path, made(tmp_path, lines))
+    assert any(
+        text.startswith("Molecules overlap with their images: ")
+        for text in care_sentences(result.record)
+    )
+    whole = contacts_of(read_structure(DATA / "1orc.pdb"))
+    found = result.record.contacts
+    assert (found.kind == CHAIN).sum() == (whole.kind == CHAIN).sum()
+    result.save(tmp_path / "out")
+    assert (tmp_path / "out" / "page.html").exists()
+
+
+@pytest.mark.parametrize(
+    ("chains", "rest"),
+    [("A, Q", ""), ("Q", ", and nothing is left of assembly 1")],
+)
+def test_an_assembly_of_chains_that_are_missing_is_named_and_used(
+    tmp_path, chains, rest
+):
     lines = [
-        line.replace("CHAINS: A", "CHAINS: A, Q")
+        line.replace("CHAINS: A", f"CHAINS: {chains}")
         if line.startswith("REMARK 350")
         else line
         for line in ORC.splitlines()
@@ -114,7 +198,7 @@ def test_an_assembly_of_chains_that_are_missing_is_named_and_used(tmp_path):
     said = [text for text in structure.warnings if "does not hold" in text]
     assert said == [
         "Assemblies name chains that the file does not hold (1: Q); the others of "
-        "each make up the assembly."
+        f"each make up the assembly{rest}."
     ]
     whole = contacts_of(read_structure(DATA / "1orc.pdb"))
     assert contacts_of(structure).kind.tolist() == whole.kind.tolist()

@@ -525,7 +525,6 @@ BAD_CELLS = {
     "      nan   39.170   48.310  90.00  90.00  90.00": "has a length that is not",
     "   34.770   39.170   48.310  90.00 190.00  90.00": "has an angle that is not",
     "   34.770   39.170   48.310  90.00  30.00  30.00": "has angles that do not close",
-    "    5.000    5.000    5.000  90.00  90.00  90.00": "with 4 operators is too small",
 }
 
 

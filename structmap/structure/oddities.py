@@ -100,6 +100,7 @@ def _missing_chains(parsed: ParsedFile) -> str:
         for span in chain.subchains()
     }
     missing: dict[str, list[str]] = {}
+    empty = []
     for assembly in parsed.content.assemblies:
         lacking = {
             name
@@ -113,13 +114,16 @@ def _missing_chains(parsed: ParsedFile) -> str:
         }
         if lacking:
             missing[assembly.name] = sorted(lacking)
+        named = {n for g in assembly.generators for n in (*g.chains, *g.subchains)}
+        if named and named == lacking:
+            empty.append(assembly.name)
     if not missing:
         return ""
     told = "; ".join(f"{name}: {' '.join(own)}" for name, own in missing.items())
-    return (
-        f"Assemblies name chains that the file does not hold ({told}); the others of "
-        "each make up the assembly."
-    )
+    rest = "the others of each make up the assembly"
+    if empty:
+        rest += f", and nothing is left of assembly {', '.join(empty)}"
+    return f"Assemblies name chains that the file does not hold ({told}); {rest}."
 
 
 def is_predicted(

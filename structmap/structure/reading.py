@@ -7,7 +7,7 @@ import gemmi
 import numpy as np
 from numpy.typing import NDArray
 
-from structmap.errors import NonsenseCellError, NoPolymerError
+from structmap.errors import NoPolymerError
 from structmap.structure.chains import (
     make_chain_copies,
     matrix_of,
@@ -20,14 +20,21 @@ from structmap.structure.expansion import atom_columns, make_layout, residue_col
 from structmap.structure.files import ParsedFile, find_model, parse_file
 from structmap.structure.oddities import find_oddities, is_predicted
 from structmap.structure.record import POLYMER, ChainCopy, Crystal, Structure
-from structmap.structure.symmetry import check_cell_against_group, find_crystal
+from structmap.structure.symmetry import (
+    MOST_OPERATORS,
+    NO_GROUP_REASON,
+    check_cell_against_group,
+    find_crystal,
+    is_too_small,
+    stated_operators,
+)
 
 CA_ONLY_ATOMS_PER_RESIDUE = 1.5
 # Å^3/Da. Dry protein fills 1.23 (0.74 cm^3/g); Matthews, J. Mol. Biol. 33, 491 (1968)
 # found 1.6 to 3.5 in crystals of proteins, and peptides pack more tightly.
 USUAL_VOLUME_PER_DALTON = (1.2, 6.0)
 PREDICTED_REASON = "the coordinates are a predicted model"
-LEAST_VOLUME_PER_ATOM = 3.0  # Å^3; diamond has 5.7
+CROWDED_REASON = "the unit cell is too small for the molecule"
 
 
 def read_structure(path: Path | str, *, model: int = 0) -> Structure:
@@ -47,6 +54,8 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
         All alternate conformations, no hydrogens, no atoms of zero occupancy; copies
         that strict NCS operators of the file make are residues of their own. Without a
         crystal the assemblies of the file, if it lists any, make these copies instead.
+        A crystal whose cell is too small for the molecule, or whose operators are no
+        group, is left out with a warning.
 
     Raises
     ------
@@ -57,7 +66,7 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     NoPolymerError
         If it holds no atoms or no polymer residues.
     NonsenseCellError
-        If no crystal can have its cell, or the molecule does not fit into it.
+        If no crystal can have its cell.
     UnknownSymmetryError
         If it has a cell but neither a known space group nor listed operators.
     UnknownModelError
@@ -69,19 +78,21 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
     """
     parsed = parse_file(Path(path))
     crystal, reason = find_crystal(parsed)
-    models = _choose_models(parsed, crystal, model)
+    was_crystal = crystal is not None or reason == NO_GROUP_REASON
+    models = _choose_models(parsed, model, only_first=was_crystal)
     parsed.content.assign_label_seq_id()
     entries, atoms = collect_entries(parsed, models)
     if not any(entry.kind == POLYMER for entry in entries):
         raise NoPolymerError(parsed.path, "polymer residues")
+    warnings = _left_out(parsed, crystal, reason, len(atoms.entry))
+    if crystal is not None and warnings:
+        crystal, reason = None, CROWDED_REASON
     in_assembly = crystal is None and len(parsed.content.assemblies) > 0
     ncs = [np.eye(4)] if in_assembly else _ncs_matrices(parsed.content)
     chains = make_chain_copies(parsed, entries, ncs)
-    if crystal is not None:
-        _refuse_crowded_cell(parsed, crystal, len(ncs) * len(atoms.entry))
-    warnings = _warnings(parsed, crystal, entries, chains)
+    warnings += _warnings(parsed, crystal, entries, chains)
     warnings += find_oddities(parsed, entries, atoms)
-    if crystal is not None and not model and len(parsed.content) > 1:
+    if was_crystal and not model and len(parsed.content) > 1:
         count = len(parsed.content)
         warnings.append(
             f"The file holds {count} models of a crystal; the first is used."
@@ -90,12 +101,12 @@ def read_structure(path: Path | str, *, model: int = 0) -> Structure:
 
 
 def _choose_models(
-    parsed: ParsedFile, crystal: Crystal | None, model: int
+    parsed: ParsedFile, model: int, *, only_first: bool
 ) -> list[gemmi.Model]:
     if model:
         return [find_model(parsed, model)]
     filled = [item for item in parsed.content if item.count_atom_sites()]
-    return filled[:1] if crystal is not None else filled
+    return filled[:1] if only_first else filled
 
 
 def _ncs_matrices(content: gemmi.Structure) -> list[NDArray[np.float64]]:
@@ -107,12 +118,29 @@ def _ncs_matrices(content: gemmi.Structure) -> list[NDArray[np.float64]]:
     return matrices
 
 
-def _refuse_crowded_cell(parsed: ParsedFile, crystal: Crystal, n_atoms: int) -> None:
-    n_operators = len(crystal.triplets)
-    if parsed.content.cell.volume < LEAST_VOLUME_PER_ATOM * n_operators * n_atoms:
+def _left_out(
+    parsed: ParsedFile, crystal: Crystal | None, reason: str, n_atoms: int
+) -> list[str]:
+    """Say that the crystal is left out where the file's own cannot be."""
+    if reason == NO_GROUP_REASON:
+        what = (
+            f"The {len(stated_operators(parsed))} operators listed in the file are no "
+            f"group: together they generate more than {MOST_OPERATORS}"
+        )
+    elif crystal is not None and is_too_small(
+        parsed, crystal, n_atoms * len(_ncs_matrices(parsed.content))
+    ):
         cell = " ".join(f"{number:g}" for number in crystal.cell)
-        problem = f"with {n_operators} operators is too small for the molecule"
-        raise NonsenseCellError(parsed.path, cell, problem)
+        what = (
+            f"The unit cell {cell} with {len(crystal.triplets)} operators is too small "
+            "for the molecule, which would overlap with its own images"
+        )
+    else:
+        return []
+    return [
+        f"{what}. The crystal is left out: contacts are those of the molecule and its "
+        "assemblies alone, and what the crystal does cannot be told."
+    ]
 
 
 def _warnings(

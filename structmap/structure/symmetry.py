@@ -12,7 +12,10 @@ from structmap.structure.files import ParsedFile
 from structmap.structure.record import Crystal
 
 TWENTY_FOURTHS = 24
+LEAST_VOLUME_PER_ATOM = 3.0  # Å^3
+LEAST_TRANSLATION_ANGSTROM = 1.0
 MOST_OPERATORS = 192  # of F m -3 m, with centring
+NO_GROUP_REASON = "the operators that the file lists are no group"
 SYMMETRY_LOOPS = (
     "_symmetry_equiv.pos_as_xyz",
     "_symmetry_equiv_pos_as_xyz",
@@ -34,7 +37,9 @@ def find_crystal(parsed: ParsedFile) -> tuple[Crystal | None, str]:
     crystal : Crystal or None
         Cell and operators.
     reason : str
-        Words that can follow "because"; blank for a crystal.
+        Words that can follow "because"; blank for a crystal. Operators of a file
+        without a known space group that generate more than any group has make no
+        crystal.
 
     Raises
     ------
@@ -55,7 +60,8 @@ def find_crystal(parsed: ParsedFile) -> tuple[Crystal | None, str]:
     if _states_no_cell(cell):
         return None, "the file states no unit cell"
     _check_cell(parsed)
-    return _make_crystal(parsed), ""
+    crystal = _make_crystal(parsed)
+    return crystal, "" if crystal is not None else NO_GROUP_REASON
 
 
 def stated_operators(parsed: ParsedFile) -> list[gemmi.Op]:
@@ -133,13 +139,15 @@ def _check_cell(parsed: ParsedFile) -> None:
         raise NonsenseCellError(parsed.path, text, problem)
 
 
-def _make_crystal(parsed: ParsedFile) -> Crystal:
+def _make_crystal(parsed: ParsedFile) -> Crystal | None:
     structure = parsed.content
     group = structure.find_spacegroup()
     operators = list(group.operations()) if group else stated_operators(parsed)
-    operators = _closed([operator.wrap() for operator in operators])
     if not operators:
         raise UnknownSymmetryError(parsed.path, structure.spacegroup_hm)
+    operators = _closed([operator.wrap() for operator in operators])
+    if not operators:
+        return None
     group = group or gemmi.find_spacegroup_by_ops(gemmi.GroupOps(operators))
     operators.sort(key=lambda operator: operator != gemmi.Op())
     cell = structure.cell
@@ -169,13 +177,11 @@ def _rotations(operators: list[gemmi.Op]) -> NDArray[np.int64]:
 
 
 def _closed(operators: list[gemmi.Op]) -> list[gemmi.Op]:
-    """Return the group that operators generate; empty when they generate none.
+    """Return the group that operators generate; empty when it is too large for one.
 
     Files with an unusual name list every operator; where one was lost, the others give
     it back.
     """
-    if not operators:
-        return []
     group = {operator.triplet(): operator for operator in (gemmi.Op(), *operators)}
     waiting = list(group.values())
     while waiting:
@@ -188,6 +194,33 @@ def _closed(operators: list[gemmi.Op]) -> list[gemmi.Op]:
         if len(group) > MOST_OPERATORS:
             return []
     return list(group.values())
+
+
+def is_too_small(parsed: ParsedFile, crystal: Crystal, n_atoms: int) -> bool:
+    """Tell whether a molecule in a cell must overlap with its own images.
+
+    Parameters
+    ----------
+    parsed : ParsedFile
+        The file after parsing.
+    crystal : Crystal
+        Cell and operators.
+    n_atoms : int
+        Atoms that each operator moves.
+
+    Returns
+    -------
+    bool
+        Less than 3 Å³ for each atom (diamond has 5.7), or a translation of the lattice
+        that is shorter than 1 Å.
+    """
+    cell = parsed.content.cell
+    if cell.volume < LEAST_VOLUME_PER_ATOM * len(crystal.triplets) * n_atoms:
+        return True
+    group = parsed.content.find_spacegroup() or gemmi.SpaceGroup("P 1")
+    reduced = gemmi.GruberVector(cell, group)
+    reduced.niggli_reduce()
+    return bool(reduced.get_cell().a < LEAST_TRANSLATION_ANGSTROM)
 
 
 def check_cell_against_group(parsed: ParsedFile, crystal: Crystal) -> list[str]:
