@@ -31,7 +31,7 @@ from structmap.result import AnalysisRecord
 from structmap.secondary import assign_secondary_structure
 from structmap.settings import Settings
 from structmap.significance import Effort, judge_units, list_cautions
-from structmap.sites import Sites, site_centres
+from structmap.sites import Sites, part_ligands, site_centres
 from structmap.structure import Structure, read_structure
 from structmap.values import ValueTable
 
@@ -157,7 +157,8 @@ def _surround(
         read_structure(coordinates, model=settings.coordinate_model)
     )
     tell("matching the numbering", 0.1)
-    sites = match_by_settings(structure, table, settings)
+    parted = part_ligands(structure, match_by_settings(structure, table, settings))
+    structure, sites = parted.structure, parted.sites
     tell("finding contacts over the crystal", 0.2)
     cutoff = cutoff_of(structure, settings)
     assemblies = choose_assemblies(structure, settings.assembly)

@@ -62,6 +62,8 @@ def find_contacts(
 ) -> Contacts:
     """Find every contact of polymer residues, in the molecule and over the crystal.
 
+    Measured parts of ligands take part as residues do; see `part_residues`.
+
     Parameters
     ----------
     structure : Structure

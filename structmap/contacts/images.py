@@ -5,7 +5,7 @@ from numpy.typing import NDArray
 
 from structmap.contacts.group import TWENTY_FOURTHS, GroupTable
 from structmap.errors import CrowdedCellError
-from structmap.structure import POLYMER, Crystal, Structure
+from structmap.structure import LIGAND_PART, POLYMER, Crystal, Structure
 
 MOST_IMAGES = 1_000_000
 
@@ -47,9 +47,10 @@ def candidate_images(
     axis. This is complete for any cell and wherever the molecule lies; a fixed range
     of -1 to 1 is not.
     """
-    polymer = structure.kind_of_residue[structure.residue_of_atom] == POLYMER
+    kind = structure.kind_of_residue[structure.residue_of_atom]
+    touching = np.isin(kind, (POLYMER, LIGAND_PART))
     fractional = (
-        structure.position[polymer] @ crystal.fractionalisation.T
+        structure.position[touching] @ crystal.fractionalisation.T
         + crystal.fractionalisation_shift
     )
     low, high = fractional.min(axis=0), fractional.max(axis=0)

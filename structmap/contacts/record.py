@@ -33,8 +33,8 @@ class Contacts:
     reach_angstrom : float
         Every contact up to this distance is here.
     residue_1, residue_2 : ndarray of int, shape (n_contacts,)
-        Indices of residues of the structure (polymer; NCS copies are residues of their
-        own).
+        Indices of residues of the structure: of the polymer and measured parts of
+        ligands; NCS copies are residues of their own.
     operator : ndarray of int, shape (n_contacts,)
         Index of the crystal's operator, 0 for the identity; -1 for a mate that only an
         assembly makes.

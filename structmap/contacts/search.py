@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 
-from structmap.structure import POLYMER, Structure
+from structmap.structure import LIGAND_PART, POLYMER, Structure
 
 SPECIAL_ANGSTROM = 0.8  # an atom this close to its own image is one atom on an axis
 LARGEST_GRID = 20_000_000
@@ -165,7 +165,7 @@ class AtomPairs:
 def polymer_atoms(
     structure: Structure, model: int, *, residues: NDArray[np.bool_]
 ) -> NDArray[np.int64]:
-    """Return the atoms of some polymer residues in one model.
+    """Return the atoms of some polymer residues and parts of ligands in one model.
 
     Parameters
     ----------
@@ -174,14 +174,14 @@ def polymer_atoms(
     model : int
         Rank of the model.
     residues : ndarray of bool, shape (n_residues,)
-        Residues that take part; others than those of polymers do not.
+        Residues that take part; whole ligands and waters do not.
 
     Returns
     -------
     ndarray of int, shape (n,)
         Rising indices of atoms.
     """
-    taken = residues & (structure.kind_of_residue == POLYMER)
+    taken = residues & np.isin(structure.kind_of_residue, (POLYMER, LIGAND_PART))
     of_model = structure.model_of_atom == model
     return np.flatnonzero(of_model & taken[structure.residue_of_atom])
 

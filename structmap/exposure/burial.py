@@ -18,7 +18,7 @@ from structmap.exposure.surroundings import (
     touching_distance,
 )
 from structmap.records import store_read_only
-from structmap.structure import Assembly, Structure, one_letter
+from structmap.structure import POLYMER, Assembly, Structure, one_letter
 
 # Largest accessible area of a residue X in Gly-X-Gly, in Å², over the conformations
 # that the Ramachandran plot allows: Tien, Meyer, Sydykova, Spielman and Wilke, PLoS ONE
@@ -199,9 +199,12 @@ def _largest_areas(structure: Structure) -> NDArray[np.float64]:
 
 
 def _contact_numbers(structure: Structure, contacts: Contacts) -> NDArray[np.int64]:
-    touch = contacts.distance_angstrom <= touching_distance(structure)
+    """Count the residues of the polymer that each residue touches, by kind."""
+    near = contacts.distance_angstrom <= touching_distance(structure)
     out = np.zeros((len(structure.kind_of_residue), 3), dtype=np.int64)
-    for end in (contacts.residue_1, contacts.residue_2):
+    ends = contacts.residue_1, contacts.residue_2
+    for end, other in (ends, ends[::-1]):
+        touch = near & (structure.kind_of_residue[other] == POLYMER)
         np.add.at(out, (end[touch], contacts.kind[touch]), 1)
     return out
 

@@ -17,7 +17,7 @@ from structmap.exposure.surroundings import (
     touching_distance,
 )
 from structmap.records import store_read_only
-from structmap.structure import Assembly, Structure
+from structmap.structure import POLYMER, Assembly, Structure
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -140,7 +140,9 @@ def find_interfaces(
 
 def _group(around: Surroundings, residues: NDArray[np.bool_] | None) -> _Grouping:
     contacts, images = around.contacts, around.images
+    polymer = around.structure.kind_of_residue == POLYMER
     kept = contacts.kind != CHAIN
+    kept &= polymer[contacts.residue_1] & polymer[contacts.residue_2]
     if residues is not None:
         kept &= residues[contacts.residue_1] & residues[contacts.residue_2]
     index = np.flatnonzero(kept)

@@ -7,7 +7,13 @@ from numpy.typing import NDArray
 
 from structmap.records import store_read_only
 from structmap.result import AnalysisRecord
-from structmap.structure import POLYMER, Structure, one_letter
+from structmap.structure import (
+    LIGAND_PART,
+    POLYMER,
+    Structure,
+    one_letter,
+    part_atom,
+)
 from structmap.words import confidence_note, measured_chains
 
 
@@ -24,7 +30,8 @@ class Listing:
     measured : ndarray of int, shape (n_entries,)
         Its row of the measurements, -1 where it has none.
     first : ndarray of int, shape (n_drawn,)
-        For each polymer residue the listed residue that it is or is a copy of, else -1.
+        For each residue of the polymer and part of a ligand the listed one that it is
+        or is a copy of, else -1.
     """
 
     residue: NDArray[np.int64]
@@ -52,7 +59,8 @@ def list_entries(record: AnalysisRecord) -> Listing:
         Residues of the measured chains in the order of the coordinates.
     """
     structure = record.structure
-    polymer = np.flatnonzero(structure.kind_of_residue == POLYMER)
+    drawn = np.isin(structure.kind_of_residue, (POLYMER, LIGAND_PART))
+    polymer = np.flatnonzero(drawn)
     listed = np.isin(structure.auth_asym_id[polymer], measured_chains(record))
     listed &= structure.original_residue[polymer] == polymer
     sites_at: dict[int, list[int]] = {}
@@ -121,7 +129,7 @@ def residue_names(record: AnalysisRecord, n_drawn: int) -> list[str]:
     record : AnalysisRecord
         What the analysis found.
     n_drawn : int
-        Number of polymer residues, which come first.
+        Number of polymer residues and parts of ligands, which come first.
 
     Returns
     -------
@@ -132,8 +140,11 @@ def residue_names(record: AnalysisRecord, n_drawn: int) -> list[str]:
     several = len(measured_chains(record)) > 1
     names = []
     for r in range(n_drawn):
-        letter = one_letter(str(structure.auth_comp_id[r]))
-        text = f"{letter}{structure.auth_seq_id[r]}{structure.ins_code[r]}"
+        of_ligand = structure.kind_of_residue[r] == LIGAND_PART
+        component, atom = str(structure.auth_comp_id[r]), part_atom(structure, r)
+        text = component if of_ligand else one_letter(component)
+        text += f"{structure.auth_seq_id[r]}{structure.ins_code[r]}"
+        text += f"\u00a0{atom}" if atom else ""
         names.append(f"{structure.auth_asym_id[r]}\u00a0{text}" if several else text)
     return names
 
@@ -158,8 +169,9 @@ def entry_names(record: AnalysisRecord, listing: Listing) -> list[str]:
     if len(set(residues)) == len(residues):
         return [names[r] for r in residues]
     atoms = [str(record.sites.atom[s]) if s >= 0 else "" for s in listing.site.tolist()]
+    kind = record.structure.kind_of_residue
     return [
-        f"{names[r]}\u00a0{a}" if a else names[r]
+        f"{names[r]}\u00a0{a}" if a and kind[r] == POLYMER else names[r]
         for r, a in zip(residues, atoms, strict=True)
     ]
 

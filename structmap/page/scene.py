@@ -10,11 +10,17 @@ import py3Dmol
 from numpy.typing import NDArray
 from scipy.spatial import cKDTree
 
-from structmap.contacts import COMPLEX, LATTICE, Contacts, image_matrix, mate_matrix
-from structmap.lattice import inverse_element, number_crystal_contacts
+from structmap.contacts import (
+    COMPLEX,
+    LATTICE,
+    Contacts,
+    image_matrix,
+    inverse_elements,
+    mate_matrix,
+)
 from structmap.page.listing import Listing
 from structmap.result import AnalysisRecord
-from structmap.structure import POLYMER, Structure
+from structmap.structure import LIGAND_PART, POLYMER, Structure
 
 WHOLE_UP_TO_ATOMS = 5000
 NEIGHBOUR_REACH_ANGSTROM = 20.0
@@ -60,8 +66,8 @@ def choose_atoms(record: AnalysisRecord, listing: Listing) -> DrawnAtoms:
         and the side chains of unit members and of what touches them across the crystal.
     """
     structure, n_drawn = record.structure, len(listing.first)
-    polymer = structure.kind_of_residue == POLYMER
-    wanted = polymer[structure.residue_of_atom] & (
+    kind = structure.kind_of_residue[structure.residue_of_atom]
+    wanted = np.isin(kind, (POLYMER, LIGAND_PART)) & (
         structure.model_of_atom == _model(structure)
     )
     wanted &= _first_conformation(structure)
@@ -70,7 +76,7 @@ def choose_atoms(record: AnalysisRecord, listing: Listing) -> DrawnAtoms:
         whole |= np.isin(
             structure.atom_name, sorted({str(a) for a in record.sites.atom} - {""})
         )
-        wanted &= np.isin(structure.atom_name, BACKBONE) | whole
+        wanted &= np.isin(structure.atom_name, BACKBONE) | whole | (kind != POLYMER)
     atom = np.flatnonzero(wanted)
     return DrawnAtoms(atom=atom, anchor=_anchors(structure, atom, n_drawn))
 
@@ -165,9 +171,11 @@ def _as_pdb(structure: Structure, atoms: DrawnAtoms) -> str:
             c for c in str(structure.atom_name[atom]) if c.isalnum() or c in "'*"
         )
         element = "".join(c for c in str(structure.element[atom]) if c.isalpha())[:2]
+        of_ligand = structure.kind_of_residue[residue] == LIGAND_PART
+        record = "HETATM" if of_ligand else "ATOM  "
         x, y, z = structure.position[atom]
         lines.append(
-            f"ATOM  {serial % 100000:5d} {name[:4]:>4s} RES "
+            f"{record}{serial % 100000:5d} {name[:4]:>4s} RES "
             f"{_letter(chain)}{residue % 10000:4d}    {x:8.3f}{y:8.3f}{z:8.3f}"
             f"{'':22s}{element:>2s}"
         )
@@ -219,7 +227,7 @@ def find_images(structure: Structure, contacts: Contacts) -> Images:
     """
     keys = _contact_keys(contacts)
     elsewhere = {key for key in keys if key != (0, 0, 0, 0, "")}
-    both = sorted(elsewhere | {_inverse(structure, key) for key in elsewhere})
+    both = sorted(elsewhere | _inverses(structure, elsewhere))
     place = {key: index for index, key in enumerate(both)}
     matrices = np.array([_matrix(structure, key) for key in both]).reshape(-1, 4, 4)
     inverse = _inverse_places(matrices)
@@ -243,11 +251,13 @@ def _contact_keys(contacts: Contacts) -> list[ImageKey]:
     ]
 
 
-def _inverse(structure: Structure, key: ImageKey) -> ImageKey:
-    if structure.crystal is None or key[0] < 0:
-        return key
-    a, b, c, d = inverse_element(structure.crystal, np.array(key[:4]))
-    return (a, b, c, d, key[4])
+def _inverses(structure: Structure, keys: set[ImageKey]) -> set[ImageKey]:
+    """Return the inverses of the images that the crystal makes."""
+    rows = np.array([key[:4] for key in keys if key[0] >= 0], dtype=np.int64)
+    if structure.crystal is None or not len(rows):
+        return set()
+    inverse = inverse_elements(structure.crystal, rows).tolist()
+    return {(k, a, b, c, "") for k, a, b, c in inverse}
 
 
 def _inverse_places(matrices: NDArray[np.float64]) -> tuple[int, ...]:
@@ -377,7 +387,7 @@ def images_payload(
 
 
 def _numeral_of_image(record: AnalysisRecord, images: Images) -> dict[int, str]:
-    numbered = number_crystal_contacts(record.structure, record.contacts)
+    numbered = record.packing.numbered
     found: dict[int, str] = {}
     for contact in np.flatnonzero(numbered.of_contact >= 0):
         numeral = numbered.crystal_contacts[numbered.of_contact[contact]].numeral
@@ -402,7 +412,7 @@ def contacts_payload(record: AnalysisRecord, images: Images) -> dict[str, Any]:
         Residues, kind, distance, image, numeral and closest atoms of each contact.
     """
     contacts, structure = record.contacts, record.structure
-    numbered = number_crystal_contacts(structure, contacts)
+    numbered = record.packing.numbered
     numerals = [c.numeral for c in numbered.crystal_contacts]
     return {
         "a": contacts.residue_1.tolist(),

@@ -9,6 +9,7 @@ import numpy as np
 
 from structmap.sites.errors import RepeatedSiteError, UnknownSiteError
 from structmap.sites.families import Chain, find_families
+from structmap.sites.ligands import LigandRow, find_ligand_rows, say_ligands
 from structmap.sites.mapped import place_by_mapping
 from structmap.sites.placing import (
     Context,
@@ -54,6 +55,9 @@ def match_sites(
     proline, then the one with most rows inside the full sequence, offset 0 if it is
     among the best. Chains of the same sequence without rows of their own are copies.
 
+    Rows that name a ligand, or an atom of one, lie on that residue, by its number as it
+    stands; `part_ligands` then makes each of them a residue of its own.
+
     Parameters
     ----------
     structure : Structure
@@ -94,15 +98,21 @@ def match_sites(
         If a site to leave out is not among the measured ones.
     """
     context = Context(table, find_families(structure), structure.name)
-    parts, notes = split_parts(table), list[str]()
-    if mapping is not None:
+    ligands = find_ligand_rows(
+        structure, table, context.families, named_chains_only=named_chains_only
+    )
+    parts, notes = split_parts(table, ligands), list[str]()
+    placements: list[Placement] = []
+    if parts and mapping is not None:
         placements = place_by_mapping(context, parts, mapping)
-    else:
+    elif parts:
         placements, notes = place_parts(context, parts, offset=offset)
     found, chains = _gather(structure, context, parts, placements, named_chains_only)
+    found = _with_ligands(structure, context, found, ligands)
     _refuse_repeated(structure, context, found)
     mismatches = [text for one in placements for text in disagreements(context, one)]
     notes += _say_copies(chains) + _say_uneven(context, placements)
+    notes += say_ligands(structure, list(ligands.values()))
     kept = _without_excluded(structure, found, exclude)
     if len(kept) < len(found):
         left = sorted({site.label for site in found} - {site.label for site in kept})
@@ -129,7 +139,7 @@ def _gather(
             sites[row].copies = [r for one in own for r in (one, *ncs_copies[one])]
             named = targets[0].auth_asym_id
             sites[row].reason = f"in the sequence of chain {named}, without coordinates"
-    if not any(site.copies for site in sites.values()):
+    if parts and not any(site.copies for site in sites.values()):
         raise no_match(context, parts)
     for site in sites.values():
         if site.copies:
@@ -141,6 +151,26 @@ def _gather(
         for n, chain in enumerate(targets)
     ]
     return [sites[row] for row in sorted(sites)], matches
+
+
+def _with_ligands(
+    structure: Structure,
+    context: Context,
+    found: Sequence[_Site],
+    ligands: dict[int, LigandRow],
+) -> list[_Site]:
+    """Return the sites with those on ligands, in the order of the table."""
+    table, ncs_copies = context.table, _ncs_copies(structure)
+    sites = {site.row: site for site in found}
+    for row, one in ligands.items():
+        copies = [r for own in one.residues for r in (own, *ncs_copies[own])]
+        chain = str(table.auth_asym_id[row])
+        number = f"{table.auth_seq_id[row]}{table.ins_code[row]}"
+        label = residue_label(structure, copies[0]) if copies else ""
+        label = label or "/".join(filter(None, (chain, number)))
+        label = f"{label}/{one.atom}" if one.atom else label
+        sites[row] = _Site(row, one.atom, label, one.reason, copies)
+    return [sites[row] for row in sorted(sites)]
 
 
 def _laid_rows(placement: Placement) -> Iterator[tuple[int, int]]:

@@ -1,6 +1,6 @@
 """Laying the rows of a value table on chains of the coordinates."""
 
-from collections.abc import Sequence
+from collections.abc import Container, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -114,13 +114,15 @@ class Context:
         ]
 
 
-def split_parts(table: ValueTable) -> list[Part]:
+def split_parts(table: ValueTable, without: Container[int] = frozenset()) -> list[Part]:
     """Return the rows of a table by the chain that they name.
 
     Parameters
     ----------
     table : ValueTable
         The measured values.
+    without : container of int
+        Rows that no chain of the polymer is sought for.
 
     Returns
     -------
@@ -131,7 +133,10 @@ def split_parts(table: ValueTable) -> list[Part]:
     names.sort(key=lambda name: name == "")
     parts: list[Part] = []
     for name in names:
-        rows = np.flatnonzero(table.auth_asym_id == name).tolist()
+        every = np.flatnonzero(table.auth_asym_id == name).tolist()
+        rows = [row for row in every if row not in without]
+        if not rows:
+            continue
         residues: dict[tuple[int, str], MeasuredResidue] = {}
         for row in rows:
             key = int(table.auth_seq_id[row]), str(table.ins_code[row])

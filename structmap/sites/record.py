@@ -52,7 +52,8 @@ class Sites:
     row : ndarray of int, shape (n_sites,)
         Row of the value table.
     residue : ndarray of int, shape (n_sites,)
-        First copy: index of a residue of the structure, -1 for a row without one.
+        First copy: index of a residue of the structure, -1 for a row without one; a
+        ligand, until `part_ligands` made the measured part of it a residue.
     atom : ndarray of str, shape (n_sites,)
         Atom that the values belong to; blank for the residue.
     copy_site, copy_residue : ndarray of int, shape (n_copies,)

@@ -7,9 +7,11 @@ from structmap.structure.confidence import (
     residue_confidence,
 )
 from structmap.structure.names import one_letter, residue_label
+from structmap.structure.parting import LigandPart, part_atom, part_residues
 from structmap.structure.reading import read_structure
 from structmap.structure.record import (
     LIGAND,
+    LIGAND_PART,
     POLYMER,
     WATER,
     Assembly,
@@ -20,6 +22,7 @@ from structmap.structure.record import (
 
 __all__ = [
     "LIGAND",
+    "LIGAND_PART",
     "LOW_CONFIDENCE",
     "POLYMER",
     "VERY_LOW_CONFIDENCE",
@@ -27,9 +30,12 @@ __all__ = [
     "Assembly",
     "ChainCopy",
     "Crystal",
+    "LigandPart",
     "Structure",
     "is_low_confidence",
     "one_letter",
+    "part_atom",
+    "part_residues",
     "read_structure",
     "residue_confidence",
     "residue_label",

@@ -2,6 +2,7 @@
 
 import gemmi
 
+from structmap.structure.parting import part_atom
 from structmap.structure.record import Structure
 
 
@@ -41,8 +42,11 @@ def residue_label(structure: Structure, residue_index: int) -> str:
     Returns
     -------
     str
-        ``A/56A``; a copy made by an NCS operator has the name of its original.
+        ``A/56A``, for an atom of a ligand ``A/401/FE``; a copy made by an NCS operator
+        has the name of its original.
     """
     chain = structure.auth_asym_id[residue_index]
     number = structure.auth_seq_id[residue_index]
-    return f"{chain}/{number}{structure.ins_code[residue_index]}"
+    text = f"{chain}/{number}{structure.ins_code[residue_index]}"
+    atom = part_atom(structure, residue_index)
+    return f"{text}/{atom}" if atom else text

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from structmap.records import store_read_only
 
-POLYMER, LIGAND, WATER = 0, 1, 2
+POLYMER, LIGAND, WATER, LIGAND_PART = 0, 1, 2, 3
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -118,7 +118,8 @@ class Structure:
 
     Residues of NCS copies are residues of their own; ``original_residue`` leads back.
     Polymer residues come first, in the order of the chain copies; after them ligand
-    residues and waters, one an entry.
+    residues and waters, one an entry. `part_residues` puts measured parts of ligands
+    between the polymer and the ligands.
 
     Attributes
     ----------
@@ -148,9 +149,11 @@ class Structure:
     warnings : tuple of str
         What is odd about the file, one sentence each.
     kind_of_residue : ndarray of int, shape (n_residues,)
-        ``POLYMER``, ``LIGAND`` or ``WATER``.
+        ``POLYMER``, ``LIGAND``, ``WATER`` or ``LIGAND_PART``, an atom of a ligand or
+        the whole of it that contacts are found for as for a residue of the polymer.
     copy_of_residue : ndarray of int, shape (n_residues,)
-        Index into ``chain_copies``, -1 for ligands and waters.
+        Index into ``chain_copies``, -1 for ligands and waters; for a part of a ligand
+        the chain that it belongs to.
     original_residue : ndarray of int, shape (n_residues,)
         The residue that this one is an NCS copy of; itself when it is none.
     auth_asym_id, label_asym_id, auth_comp_id, ins_code : ndarray of str

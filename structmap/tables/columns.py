@@ -5,7 +5,7 @@ from typing import Any
 import numpy as np
 
 from structmap.result import AnalysisRecord
-from structmap.structure import Structure
+from structmap.structure import Structure, residue_label
 from structmap.tables.text import Cell
 
 
@@ -60,10 +60,9 @@ def residue_text(structure: Structure, residue: int) -> str:
     Returns
     -------
     str
-        For tables.
+        For tables; an atom of a ligand ends it, ``A/401/FE``.
     """
-    number = f"{structure.auth_seq_id[residue]}{structure.ins_code[residue]}"
-    return f"{structure.auth_asym_id[residue]}/{number}"
+    return residue_label(structure, residue)
 
 
 def spread_over_sites(

@@ -9,6 +9,7 @@ import numpy as np
 
 from structmap.errors import FileProblemError
 from structmap.result import AnalysisRecord
+from structmap.structure import part_atom
 from structmap.tables.columns import site_identity, spread_over_sites
 from structmap.tables.text import cell_text
 
@@ -16,8 +17,9 @@ from structmap.tables.text import cell_text
 def mapped_coordinates(record: AnalysisRecord, coordinates: Path) -> str:
     """Return the coordinates with the value of each site in the B column, as mmCIF.
 
-    Atoms of residues that were not measured have B 0. The category ``_structmap_site``
-    holds value, error and unit of each site.
+    Atoms of residues that were not measured have B 0; of a ligand only the atoms that
+    were measured have their values. The category ``_structmap_site`` holds value, error
+    and unit of each site.
 
     Parameters
     ----------
@@ -43,7 +45,8 @@ def mapped_coordinates(record: AnalysisRecord, coordinates: Path) -> str:
             for residue in chain:
                 key = (chain.name, residue.seqid.num or 0, residue.seqid.icode.strip())
                 for atom in residue:
-                    atom.b_iso = value.get(key, 0.0)
+                    whole = value.get((*key, ""), 0.0)
+                    atom.b_iso = value.get((*key, atom.name), whole)
     document = structure.make_mmcif_document()
     block = document.sole_block()
     _add_category(block, record)
@@ -68,10 +71,13 @@ def _read_again(record: AnalysisRecord, coordinates: Path) -> gemmi.Structure:
     return structure
 
 
-def _value_of_residue(record: AnalysisRecord) -> dict[tuple[str, int, str], float]:
+def _value_of_residue(
+    record: AnalysisRecord,
+) -> dict[tuple[str, int, str, str], float]:
+    """Return values by chain, number, insertion code, and atom in ligands."""
     structure, sites = record.structure, record.sites
     summary = spread_over_sites(record, record.behaviour.summary)
-    out: dict[tuple[str, int, str], float] = {}
+    out: dict[tuple[str, int, str, str], float] = {}
     for site, residue in zip(sites.copy_site, sites.copy_residue, strict=True):
         value = summary[int(site)]
         if isinstance(value, float) and not np.isnan(value):
@@ -80,13 +86,17 @@ def _value_of_residue(record: AnalysisRecord) -> dict[tuple[str, int, str], floa
                 str(structure.auth_asym_id[residue]),
                 number,
                 str(structure.ins_code[residue]),
+                part_atom(structure, int(residue)),
             )
             out.setdefault(key, value)
     return out
 
 
 def _add_category(block: Any, record: AnalysisRecord) -> None:
-    names = ("auth_asym_id", "auth_seq_id", "pdbx_PDB_ins_code", "auth_comp_id")
+    names = (
+        *("auth_asym_id", "auth_seq_id", "pdbx_PDB_ins_code", "auth_comp_id"),
+        "auth_atom_id",
+    )
     more = ("quantity", "unit", "value", "value_error", "moves", "motional_unit")
     loop = block.init_loop("_structmap_site.", ["id", *names, *more])
     summary = spread_over_sites(record, record.behaviour.summary)
@@ -94,7 +104,7 @@ def _add_category(block: Any, record: AnalysisRecord) -> None:
     moves = spread_over_sites(record, record.behaviour.moves)
     unit = record.unit_of_site()
     for site in record.measurements.site.tolist():
-        _, *place, _, _ = site_identity(record, site)
+        _, *place, _ = site_identity(record, site)
         named = record.units[unit[site]].name if unit[site] >= 0 else None
         quantity = (record.behaviour.summary_name, record.behaviour.summary_unit)
         cells = [*place, *quantity, summary[site], error[site], moves[site], named]

@@ -7,6 +7,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import NamedTuple
 
+from structmap.structure import one_letter
 from structmap.values.errors import RepeatedRowError, UnreadableCellError
 from structmap.values.grid import Grid
 from structmap.values.headers import SiteRole
@@ -197,14 +198,23 @@ def _identify(grid: Grid, layout: Layout) -> Iterator[tuple[SiteKey, SiteFacts]]
             )
             cell, named = row[column], grid.header[column]
             raise UnreadableCellError(grid.path, line, named, cell, wanted)
+        comp = _said(grid, layout, row, line, ("auth_comp_id", number.comp)).upper()
         key = SiteKey(
             _said(grid, layout, row, line, ("auth_asym_id", number.chain)),
             number.number,
             _said(grid, layout, row, line, ("pdbx_PDB_ins_code", number.ins_code)),
-            _text(layout, row, "atom"),
+            _atom(layout, row, comp),
         )
-        comp = _said(grid, layout, row, line, ("auth_comp_id", number.comp)).upper()
         yield key, SiteFacts(comp, _text(layout, row, "group"), line)
+
+
+def _atom(layout: Layout, row: tuple[str, ...], comp: str) -> str:
+    """Return the atom; NA names one in a ligand (a haem has NA, NB, NC and ND)."""
+    column = layout.site.get("atom", -1)
+    of_ligand = len(comp) > 1 and one_letter(comp) == "X"
+    if column >= 0 and row[column] == "NA" and of_ligand:
+        return "NA"
+    return _text(layout, row, "atom")
 
 
 def _text(layout: Layout, row: tuple[str, ...], role: SiteRole) -> str:

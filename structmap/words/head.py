@@ -3,6 +3,7 @@
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.words.names import (
     listing,
+    measured_in_ligands,
     measured_residues,
     number_in_words,
     residues_in_view,
@@ -81,7 +82,7 @@ def result_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     """
     n_moving = int(record.behaviour.moves.sum())
     in_view, measured = residues_in_view(record), measured_residues(record)
-    counted = f"Of {in_view} residues {measured} were measured"
+    counted = f"Of {in_view} residues {measured}{_say_ligands(record)} were measured"
     if not n_moving and not record.units:
         return (
             f"{counted}.",
@@ -94,6 +95,15 @@ def result_sentences(record: AnalysisRecord) -> tuple[str, ...]:
     if not record.units:
         return (first, record.reason or _no_unit(record))
     return (first, *_unit_sentences(record))
+
+
+def _say_ligands(record: AnalysisRecord) -> str:
+    count = measured_in_ligands(record)
+    if not count:
+        return ""
+    return (
+        f" and {number_in_words(count)} {'site' if count == 1 else 'sites'} of ligands"
+    )
 
 
 def _no_unit(record: AnalysisRecord) -> str:

@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 from scipy.special import ndtri
 
 from structmap.result import AnalysisRecord
-from structmap.structure import POLYMER, one_letter
+from structmap.structure import LIGAND_PART, POLYMER, one_letter
 
 # Below it a chance cannot be told from 0 and the deviation itself is shown.
 SMALLEST_CHANCE = 1e-300
@@ -49,17 +49,21 @@ def site_name(record: AnalysisRecord, site: int) -> str:
     -------
     str
         One letter, number and insertion code; the chain in front when sites of several
-        chains were measured, the atom behind when one is named.
+        chains were measured, the atom behind when one is named. An atom of a ligand has
+        the component in place of the letter, ``HEM401 FE``.
     """
     structure, residue = record.structure, int(record.sites.residue[site])
     if residue < 0:
         return str(record.sites.name[site])
-    letter = one_letter(str(structure.auth_comp_id[residue]))
-    text = f"{letter}{structure.auth_seq_id[residue]}{structure.ins_code[residue]}"
+    of_ligand = structure.kind_of_residue[residue] == LIGAND_PART
+    component = str(structure.auth_comp_id[residue])
+    text = component if of_ligand else one_letter(component)
+    text += f"{structure.auth_seq_id[residue]}{structure.ins_code[residue]}"
     if len(measured_chains(record)) > 1:
         text = f"{structure.auth_asym_id[residue]}\u00a0{text}"
     atom = record.sites.atom[site]
-    return f"{text}\u00a0{atom}" if atom and _atoms_differ(record) else text
+    named = atom and (of_ligand or _atoms_differ(record))
+    return f"{text}\u00a0{atom}" if named else text
 
 
 def _atoms_differ(record: AnalysisRecord) -> bool:
@@ -127,7 +131,7 @@ def residues_in_view(record: AnalysisRecord) -> int:
 
 
 def measured_residues(record: AnalysisRecord) -> int:
-    """Count the residues whose values are compared.
+    """Count the residues of the polymer whose values are compared.
 
     Parameters
     ----------
@@ -139,8 +143,27 @@ def measured_residues(record: AnalysisRecord) -> int:
     int
         Equivalent chains count once.
     """
+    sites = np.unique(record.sites.residue[record.measurements.site])
+    kind = record.structure.kind_of_residue[sites[sites >= 0]]
+    return int(np.count_nonzero(kind == POLYMER))
+
+
+def measured_in_ligands(record: AnalysisRecord) -> int:
+    """Count the parts of ligands whose values are compared.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+
+    Returns
+    -------
+    int
+        Atoms, and ligands that were measured as a whole.
+    """
     sites = record.sites.residue[record.measurements.site]
-    return len(np.unique(sites[sites >= 0]))
+    kind = record.structure.kind_of_residue[sites[sites >= 0]]
+    return int(np.count_nonzero(kind == LIGAND_PART))
 
 
 def errors_off_baseline(record: AnalysisRecord) -> NDArray[np.float64]:

@@ -2,8 +2,9 @@
 
 import numpy as np
 
-from structmap.lattice import SMALLEST_PIECE, number_crystal_contacts
+from structmap.lattice import SMALLEST_PIECE
 from structmap.result import AnalysisRecord, MotionalUnit
+from structmap.structure import LIGAND_PART
 from structmap.words.names import listing, number_in_words, site_name
 
 NAMED_AT_MOST = 5
@@ -61,9 +62,18 @@ def members_phrase(record: AnalysisRecord, unit: MotionalUnit) -> str:
             " of a neighbour" if len(pieces) > 1 else ""
         )
     return (
-        f"{number_in_words(len(unit.members))} residues around "
+        f"{number_in_words(len(unit.members))} {_noun(record, unit)} around "
         f"{site_name(record, _centre(record, unit))}"
     )
+
+
+def _noun(record: AnalysisRecord, unit: MotionalUnit) -> str:
+    """Return what the members are: residues, atoms of ligands, or both."""
+    kind = record.structure.kind_of_residue[record.sites.residue[unit.members]]
+    of_ligand = kind == LIGAND_PART
+    if not of_ligand.any():
+        return "residues"
+    return "sites of ligands" if of_ligand.all() else "sites"
 
 
 def _centre(record: AnalysisRecord, unit: MotionalUnit) -> int:
@@ -173,7 +183,7 @@ def joining_numerals(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, .
     tuple of str
         Roman numerals in rising order; empty when none is needed.
     """
-    numbered = number_crystal_contacts(record.structure, record.contacts)
+    numbered = record.packing.numbered
     places = sorted(
         {int(numbered.of_contact[index]) for index in unit.lattice.contacts}
     )
