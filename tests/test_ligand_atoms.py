@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 import structmap
+from structmap.analysis import compare_analyses
 from structmap.contacts import (
     CHAIN,
     LATTICE,
@@ -15,6 +16,7 @@ from structmap.contacts import (
     find_contacts,
     make_site_graph,
 )
+from structmap.page.listing import entry_components, entry_letters, list_entries
 from structmap.sites import match_rows, match_sites, part_ligands, site_centres
 from structmap.structure import LIGAND_PART, POLYMER, read_structure
 from structmap.values import read_values
@@ -430,6 +432,23 @@ def test_mapped_coordinates_hold_the_values_of_the_atoms(analysed):
     block = gemmi.cif.read(str(folder / "mapped.cif")).sole_block()
     rows = block.find("_structmap_site.", ["auth_comp_id", "auth_atom_id"])
     assert sum(row[0] == "ZYB" and row[1] != "." for row in rows) == 11
+
+
+def test_the_chain_shows_the_element_of_each_atom(analysed):
+    result, _ = analysed
+    record = result.record
+    listing = list_entries(record)
+    letters = entry_letters(record, listing)[-11:]
+    assert letters == ["C"] * 7 + ["F", "N", "N", "O"]
+    assert set(entry_components(record, listing)[-11:]) == {"ZYB"}
+    assert entry_letters(record, listing)[0] == "S"
+    assert entry_components(record, listing)[0] == "Ser"
+
+
+def test_forms_are_compared_without_the_atoms_of_ligands(analysed, tmp_path):
+    _, folder = analysed
+    (line,) = compare_analyses([folder, folder], tmp_path)
+    assert line == "U1: cannot be told: no other form models it"
 
 
 def test_the_page_draws_and_names_the_atoms(analysed):

@@ -244,6 +244,7 @@ def _unit_of_place(
         int(reference_map.place[sites.residue[site]]): unit.name
         for unit in units
         for site in unit.members
+        if sites.residue[site] >= 0
     }
 
 

@@ -18,7 +18,13 @@ from structmap.contacts import (
 from structmap.errors import FileProblemError
 from structmap.records import store_read_only
 from structmap.sites import Sites
-from structmap.structure import Assembly, Structure, read_structure, residue_label
+from structmap.structure import (
+    LIGAND,
+    Assembly,
+    Structure,
+    read_structure,
+    residue_label,
+)
 
 MADE_ANGSTROM = 4.0
 BROKEN_ANGSTROM = 5.0
@@ -174,7 +180,8 @@ def read_units(
     Returns
     -------
     sites : Sites
-        From ``sites.csv``, those that have a residue.
+        From ``sites.csv``, those that have a residue. Atoms of ligands come without
+        one, as no sequence says where they are in another form.
     units : tuple of FormUnit
         From ``motional_units.csv``.
 
@@ -210,9 +217,13 @@ def _make_sites(path: Path, rows: list[dict[str, str]], structure: Structure) ->
     named: dict[str, list[int]] = {}
     for residue in np.flatnonzero(structure.copy_of_residue >= 0).tolist():
         named.setdefault(residue_label(structure, residue), []).append(residue)
-    copies = []
+    of_ligands = _ligand_labels(structure)
+    copies: list[list[int]] = []
     for row in rows:
         labels = row["copies"].split()
+        if all(label in of_ligands or _bare(label) in of_ligands for label in labels):
+            copies.append([])
+            continue
         if any(label not in named for label in labels):
             problem = f"site {row['site']} has a copy that mapped.cif lacks"
             raise FileProblemError(path, problem, REMEDY)
@@ -221,7 +232,7 @@ def _make_sites(path: Path, rows: list[dict[str, str]], structure: Structure) ->
     return Sites(
         name=np.array([row["site"] for row in rows], dtype=np.str_),
         row=np.arange(n_sites),
-        residue=np.array([own[0] for own in copies], dtype=np.int64),
+        residue=np.array([(*own, -1)[0] for own in copies], dtype=np.int64),
         atom=np.array([row.get("atom", "") for row in rows], dtype=np.str_),
         copy_site=np.repeat(np.arange(n_sites), [len(own) for own in copies]),
         copy_residue=np.array([r for own in copies for r in own], dtype=np.int64),
@@ -230,3 +241,13 @@ def _make_sites(path: Path, rows: list[dict[str, str]], structure: Structure) ->
         unmatched=(),
         notes=(),
     )
+
+
+def _ligand_labels(structure: Structure) -> frozenset[str]:
+    ligands = np.flatnonzero(structure.kind_of_residue == LIGAND).tolist()
+    return frozenset(residue_label(structure, ligand) for ligand in ligands)
+
+
+def _bare(label: str) -> str:
+    """Return the label of the residue of an atom."""
+    return label.rsplit("/", 1)[0]

@@ -176,6 +176,56 @@ def entry_names(record: AnalysisRecord, listing: Listing) -> list[str]:
     ]
 
 
+def entry_letters(record: AnalysisRecord, listing: Listing) -> list[str]:
+    """Return what stands for each entry along the chain.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+    listing : Listing
+        Residues that the page lists.
+
+    Returns
+    -------
+    list of str
+        One letter a residue; for an atom of a ligand its element.
+    """
+    structure = record.structure
+    letters = []
+    for residue in listing.residue.tolist():
+        if part_atom(structure, residue):
+            own = structure.residue_of_atom == residue
+            letters.append(str(structure.element[own][0]))
+        else:
+            letters.append(one_letter(str(structure.auth_comp_id[residue])))
+    return letters
+
+
+def entry_components(record: AnalysisRecord, listing: Listing) -> list[str]:
+    """Return the name of the component of each entry.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+    listing : Listing
+        Residues that the page lists.
+
+    Returns
+    -------
+    list of str
+        ``Lys`` for a residue, ``HEM`` for a ligand.
+    """
+    structure = record.structure
+    names = structure.auth_comp_id[listing.residue].tolist()
+    of_ligand = structure.kind_of_residue[listing.residue] == LIGAND_PART
+    return [
+        name if ligand else name.capitalize()
+        for name, ligand in zip(names, of_ligand.tolist(), strict=True)
+    ]
+
+
 def entry_notes(record: AnalysisRecord, listing: Listing) -> list[str]:
     """Return the note of each entry: why it has no value, what is odd about it.
 

@@ -9,11 +9,17 @@ from numpy.typing import NDArray
 from structmap import words
 from structmap.page import scene
 from structmap.page.curves import fitted_curves
-from structmap.page.listing import Listing, entry_names, entry_notes, residue_names
+from structmap.page.listing import (
+    Listing,
+    entry_components,
+    entry_letters,
+    entry_names,
+    entry_notes,
+    residue_names,
+)
 from structmap.page.markup import mark_text, mark_unit, pretty_operator
 from structmap.page.view import opening_view
 from structmap.result import AnalysisRecord, MotionalUnit
-from structmap.structure import one_letter
 from structmap.values import Quantity
 from structmap.version import __version__
 
@@ -112,13 +118,12 @@ def _entries(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
     residue, site = listing.residue, listing.site
     units = np.append(record.unit_of_site(), -1)
     membership = np.append(record.membership_probability, np.nan)
-    letters = [one_letter(str(n)) for n in structure.auth_comp_id[residue]]
     moves = behaviour.moves.tolist()
     return {
         "name": entry_names(record, listing),
         "residue": residue.tolist(),
-        "letter": letters,
-        "component": [str(n).capitalize() for n in structure.auth_comp_id[residue]],
+        "letter": entry_letters(record, listing),
+        "component": entry_components(record, listing),
         "number": structure.auth_seq_id[residue].tolist(),
         "insertion": structure.ins_code[residue].tolist(),
         "chain": structure.auth_asym_id[residue].tolist(),
