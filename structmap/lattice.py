@@ -16,6 +16,7 @@ from structmap.contacts import (
     Contacts,
     SiteGraph,
     find_contacts,
+    inverse_elements,
     operator_text,
 )
 from structmap.records import store_read_only
@@ -369,9 +370,9 @@ def number_crystal_contacts(
         return NumberedContacts(crystal_contacts=(), of_contact=of_contact)
     keys = np.column_stack([contacts.operator[indices], contacts.shift[indices]])
     distinct, which = np.unique(keys, axis=0, return_inverse=True)
-    either_way = np.array(
-        [min(tuple(key), inverse_element(crystal, key)) for key in distinct]
-    )
+    back = inverse_elements(crystal, distinct)
+    both_ways = zip(distinct.tolist(), back.tolist(), strict=True)
+    either_way = np.array([min(pair) for pair in both_ways])
     classes, class_of_key = np.unique(either_way, axis=0, return_inverse=True)
     class_of_contact = class_of_key.reshape(-1)[which.reshape(-1)]
     counts = np.bincount(class_of_contact)
@@ -390,40 +391,6 @@ def number_crystal_contacts(
         for place, c in enumerate(order)
     )
     return NumberedContacts(crystal_contacts=listed, of_contact=of_contact)
-
-
-def inverse_element(crystal: Crystal, key: NDArray[np.int64]) -> tuple[int, ...]:
-    """Return the inverse of a symmetry operator with its shift.
-
-    Parameters
-    ----------
-    crystal : Crystal
-        The cell and its symmetry.
-    key : ndarray of int, shape (4,)
-        Operator index and shift.
-
-    Returns
-    -------
-    tuple of int
-        Operator index and shift of the inverse.
-
-    Raises
-    ------
-    ValueError
-        If the operators are no group.
-    """
-    operator, shift = int(key[0]), key[1:]
-    rotation = crystal.rotations[operator]
-    inverse = np.rint(np.linalg.inv(rotation)).astype(np.int64)
-    translation = -inverse @ (crystal.translations[operator] + 24 * shift)
-    same = (crystal.rotations == inverse).all(axis=(1, 2))
-    same &= ((crystal.translations - translation) % 24 == 0).all(axis=1)
-    if not same.any():
-        raise ValueError(
-            f"operator {crystal.triplets[operator]} has no inverse in the list"
-        )
-    found = int(np.flatnonzero(same)[0])
-    return (found, *((translation - crystal.translations[found]) // 24).tolist())
 
 
 def element_text(crystal: Crystal, key: Sequence[int] | NDArray[np.int64]) -> str:

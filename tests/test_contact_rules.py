@@ -13,6 +13,7 @@ from structmap.contacts import (
     contact_cutoff,
     find_contacts,
     image_matrix,
+    inverse_elements,
     make_group_table,
 )
 from structmap.errors import CrowdedCellError
@@ -200,3 +201,21 @@ def test_products_and_inverses_are_those_of_the_matrices(name):
         np.testing.assert_allclose(first @ second, product, atol=1e-6)
         back = image_matrix(structure, back_k[i], back_n[i])
         np.testing.assert_allclose(first @ back, np.eye(4), atol=1e-6)
+
+
+@pytest.mark.parametrize(
+    "name", ["1orc.pdb", "4zhl.cif.gz", "1pfe.cif.gz", "3wup.json.gz", "4hhh_frag.pdb"]
+)
+def test_an_element_and_its_inverse_undo_each_other(name):
+    structure = read_structure(DATA / name)
+    n_operators = len(structure.crystal.triplets)
+    rng = np.random.default_rng(8)
+    elements = np.column_stack(
+        [rng.integers(0, n_operators, 60), rng.integers(-4, 5, (60, 3))]
+    )
+    back = inverse_elements(structure.crystal, elements)
+    for one, two in zip(elements, back, strict=True):
+        product = image_matrix(structure, int(one[0]), one[1:]) @ image_matrix(
+            structure, int(two[0]), two[1:]
+        )
+        np.testing.assert_allclose(product, np.eye(4), atol=1e-6)

@@ -1,11 +1,13 @@
 """What holds a unit together, how weakly, and what that rests on."""
 
 import dataclasses
+import sys
 from pathlib import Path
 
 import numpy as np
 import pytest
 
+from structmap.analysis import analyse
 from structmap.chemistry import find_chemistry
 from structmap.contacts import LATTICE, choose_assemblies, contacts_where, find_contacts
 from structmap.holding import (
@@ -14,7 +16,12 @@ from structmap.holding import (
     poorly_ordered_atoms,
     prepare_holding,
 )
-from structmap.lattice import judge_lattice, verdict_by_graph
+from structmap.lattice import (
+    judge_lattice,
+    number_crystal_contacts,
+    verdict_by_graph,
+)
+from structmap.settings import Settings
 from structmap.structure import POLYMER, read_structure
 from tests.quotient.cases import sites_of
 
@@ -33,6 +40,7 @@ def hold_of(structure, numbers, *, assembly="auto", reach=4.5):
         sites,
         contacts=contacts,
         chemistry=find_chemistry(structure, contacts, assemblies=assemblies),
+        numbered=number_crystal_contacts(structure, contacts),
         assemblies=assemblies,
     )
     members = np.arange(len(numbers))
@@ -195,3 +203,28 @@ def test_poor_order_is_asked_of_side_chains_alone():
     poor = poorly_ordered_atoms(dataclasses.replace(flat, occupancy=half))
     assert set(structure.residue_of_atom[poor]) == {7}
     assert (structure.kind_of_residue[structure.residue_of_atom[poor]] == POLYMER).all()
+
+
+def test_an_analysis_numbers_its_crystal_contacts_once(monkeypatch, tmp_path):
+    """Sentences, neighbours, page and tables all take the numerals of the record."""
+    calls = []
+
+    def counted(structure, contacts):
+        calls.append(contacts)
+        return number_crystal_contacts(structure, contacts)
+
+    for name, module in list(sys.modules.items()):
+        if name.startswith("structmap") and hasattr(module, "number_crystal_contacts"):
+            monkeypatch.setattr(module, "number_crystal_contacts", counted)
+    examples = Path(__file__).parent.parent / "examples"
+    result = analyse(
+        examples / "4cup.cif.gz",
+        [examples / "invented_values.csv"],
+        Settings(most_permutations=0),
+    )
+    result.save(tmp_path / "out")
+    assert len(calls) == 1
+    numbered = result.record.packing.numbered
+    assert [c.numeral for c in numbered.crystal_contacts] == [
+        neighbour.numeral for neighbour in result.record.packing.neighbours
+    ]

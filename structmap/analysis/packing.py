@@ -15,6 +15,7 @@ from structmap.holding import (
     list_neighbours,
     prepare_holding,
 )
+from structmap.lattice import NumberedContacts, number_crystal_contacts
 from structmap.motional_units import UnitSearch
 from structmap.quotient import assembly_extent
 from structmap.result import MotionalUnit
@@ -58,19 +59,26 @@ def describe_packing(
     """
     structure, assemblies = crystal.structure, crystal.assemblies
     chemistry = find_chemistry(structure, crystal.contacts, assemblies=assemblies)
+    numbered = number_crystal_contacts(structure, crystal.contacts)
     return Packing(
         assemblies=assemblies,
         chemistry=chemistry,
+        numbered=numbered,
         extent=assembly_extent(structure, crystal.contacts),
-        neighbours=list_neighbours(structure, crystal.contacts, assemblies=assemblies),
-        holds=_describe_holds(crystal, units, chemistry),
+        neighbours=list_neighbours(
+            structure, crystal.contacts, numbered=numbered, assemblies=assemblies
+        ),
+        holds=_describe_holds(crystal, units, chemistry, numbered),
         sample=compare_sample(structure, settings),
         network=_ask_network(crystal, units, search, rng) if settings.network else None,
     )
 
 
 def _describe_holds(
-    crystal: Surroundings, units: tuple[MotionalUnit, ...], chemistry: Chemistry
+    crystal: Surroundings,
+    units: tuple[MotionalUnit, ...],
+    chemistry: Chemistry,
+    numbered: NumberedContacts,
 ) -> tuple[Hold, ...]:
     if not units:
         return ()
@@ -79,6 +87,7 @@ def _describe_holds(
         crystal.sites,
         contacts=crystal.contacts,
         chemistry=chemistry,
+        numbered=numbered,
         assemblies=crystal.assemblies,
     )
     return tuple(

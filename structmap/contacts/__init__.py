@@ -12,7 +12,7 @@ from structmap.contacts.describing import (
     overlap_warning,
 )
 from structmap.contacts.finding import find_contacts
-from structmap.contacts.group import GroupTable, make_group_table
+from structmap.contacts.group import GroupTable, inverse_elements, make_group_table
 from structmap.contacts.record import (
     CHAIN,
     COMPLEX,
@@ -38,6 +38,7 @@ __all__ = [
     "contacts_within",
     "find_contacts",
     "image_matrix",
+    "inverse_elements",
     "make_group_table",
     "make_site_graph",
     "mate_matrix",

@@ -145,6 +145,32 @@ def _key(rotation: NDArray[np.int64], translation: NDArray[np.int64]) -> bytes:
     return rotation.tobytes() + (translation % TWENTY_FOURTHS).tobytes()
 
 
+def inverse_elements(
+    crystal: Crystal, elements: NDArray[np.int64]
+) -> NDArray[np.int64]:
+    """Return the inverses of operators with their shifts.
+
+    Parameters
+    ----------
+    crystal : Crystal
+        Cell and operators.
+    elements : ndarray of int, shape (n, 4)
+        Operator index and whole cell shifts.
+
+    Returns
+    -------
+    ndarray of int, shape (n, 4)
+        Operator index and shifts of the inverses.
+
+    Raises
+    ------
+    ValueError
+        If the operators of the crystal do not form a group.
+    """
+    table = make_group_table(crystal)
+    return np.column_stack(table.inverse(elements[:, 0], elements[:, 1:]))
+
+
 def element_matrix(
     crystal: Crystal, operator: int, shift: NDArray[np.int64]
 ) -> NDArray[np.float64]:

@@ -24,8 +24,8 @@ from structmap.holding.record import CLOSE_CONTACT, Hold
 from structmap.lattice import (
     SMALLEST_PIECE,
     LatticeVerdict,
+    NumberedContacts,
     connected_pieces,
-    number_crystal_contacts,
     verdict_by_graph,
 )
 from structmap.quotient import lay_out_unit
@@ -60,6 +60,8 @@ class Held:
         Which sites touch within it.
     chemistry : Chemistry
         Of those contacts.
+    numbered : NumberedContacts
+        Numerals of those contacts.
     assemblies : tuple of Assembly
         Those whose contacts are complex.
     graph_at : tuple of (float, SiteGraph)
@@ -73,6 +75,7 @@ class Held:
     contacts: Contacts
     graph: SiteGraph
     chemistry: Chemistry
+    numbered: NumberedContacts
     assemblies: tuple[Assembly, ...]
     graph_at: tuple[tuple[float, SiteGraph], ...]
     lattice_graph: SiteGraph
@@ -84,6 +87,7 @@ def prepare_holding(
     *,
     contacts: Contacts,
     chemistry: Chemistry,
+    numbered: NumberedContacts,
     assemblies: Sequence[Assembly],
 ) -> Held:
     """Return what units are held against.
@@ -98,6 +102,8 @@ def prepare_holding(
         Within the cutoff.
     chemistry : Chemistry
         Of those contacts.
+    numbered : NumberedContacts
+        Numerals of those contacts.
     assemblies : sequence of Assembly
         Assemblies whose contacts are complex.
 
@@ -116,6 +122,7 @@ def prepare_holding(
         contacts=contacts,
         graph=make_site_graph(contacts, sites, cutoff_angstrom=reach),
         chemistry=chemistry,
+        numbered=numbered,
         assemblies=tuple(assemblies),
         graph_at=tuple(
             (cutoff, make_site_graph(wide, sites, cutoff_angstrom=cutoff))
@@ -232,9 +239,9 @@ def _kinds(link: WeakestLink, chemistry: Chemistry) -> tuple[tuple[str, int], ..
 def _images(link: WeakestLink, held: Held) -> tuple[str, ...]:
     """Return the image that one contact of the link with each neighbour leads to."""
     structure, contacts = held.structure, held.contacts
-    numbered = number_crystal_contacts(structure, contacts)
-    lattice = link.contacts[numbered.of_contact[link.contacts] >= 0]
-    first = np.unique(numbered.of_contact[lattice], return_index=True)[1]
+    numeral = held.numbered.of_contact
+    lattice = link.contacts[numeral[link.contacts] >= 0]
+    first = np.unique(numeral[lattice], return_index=True)[1]
     texts = (operator_text(structure, contacts, int(i)) for i in lattice[first])
     return tuple(text or "x,y,z [0 0 0]" for text in texts)
 

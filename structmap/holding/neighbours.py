@@ -4,15 +4,19 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from structmap.contacts import LATTICE, Contacts
+from structmap.contacts import LATTICE, Contacts, inverse_elements
 from structmap.exposure import find_interfaces
 from structmap.holding.record import Neighbour
-from structmap.lattice import inverse_element, number_crystal_contacts
+from structmap.lattice import NumberedContacts
 from structmap.structure import Assembly, Structure
 
 
 def list_neighbours(
-    structure: Structure, contacts: Contacts, *, assemblies: Sequence[Assembly]
+    structure: Structure,
+    contacts: Contacts,
+    *,
+    numbered: NumberedContacts,
+    assemblies: Sequence[Assembly],
 ) -> tuple[Neighbour, ...]:
     """Return the neighbours in the crystal with what lies between.
 
@@ -22,6 +26,8 @@ def list_neighbours(
         The coordinates.
     contacts : Contacts
         Within the cutoff.
+    numbered : NumberedContacts
+        Numerals of those contacts.
     assemblies : sequence of Assembly
         Assemblies whose contacts are complex.
 
@@ -32,7 +38,6 @@ def list_neighbours(
         all pairs of chains that meet there, see `find_interfaces`.
     """
     crystal = structure.crystal
-    numbered = number_crystal_contacts(structure, contacts)
     if crystal is None or not numbered.crystal_contacts:
         return ()
     place: dict[tuple[int, ...], int] = {
@@ -41,13 +46,14 @@ def list_neighbours(
     area = np.full(len(place), np.nan if structure.ca_only else 0.0)
     if not structure.ca_only:
         found = find_interfaces(structure, assemblies=assemblies)
-        keys = np.column_stack([found.operator, found.shift])
-        for index in np.flatnonzero(found.kind == LATTICE):
-            key = tuple(keys[index].tolist())
-            either = place.get(key, place.get(inverse_element(crystal, keys[index])))
+        of_lattice = np.flatnonzero(found.kind == LATTICE)
+        keys = np.column_stack([found.operator, found.shift])[of_lattice]
+        back = inverse_elements(crystal, keys)
+        for index, *ways in zip(of_lattice, keys.tolist(), back.tolist(), strict=True):
+            known = [place[tuple(way)] for way in ways if tuple(way) in place]
             # Surfaces may meet where no atoms come within the cutoff.
-            if either is not None:
-                area[either] += found.area[index]
+            if known:
+                area[known[0]] += found.area[index]
     lattice = numbered.of_contact >= 0
     pairs = np.bincount(
         numbered.of_contact[lattice],

@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from structmap.cell import CellComparison
 from structmap.chemistry import Chemistry
 from structmap.holding.modelled import NetworkEvidence
+from structmap.lattice import NumberedContacts
 from structmap.quotient import AssemblyExtent
 from structmap.records import store_read_only
 from structmap.structure import Assembly
@@ -110,6 +111,8 @@ class Packing:
         Those whose contacts are complex.
     chemistry : Chemistry
         What the geometry of each contact is compatible with.
+    numbered : NumberedContacts
+        The crystal's neighbours by numeral, and the neighbour of each contact.
     extent : AssemblyExtent
         How far their contacts go.
     neighbours : tuple of Neighbour
@@ -124,6 +127,7 @@ class Packing:
 
     assemblies: tuple[Assembly, ...]
     chemistry: Chemistry
+    numbered: NumberedContacts
     extent: AssemblyExtent
     neighbours: tuple[Neighbour, ...]
     holds: tuple[Hold, ...]

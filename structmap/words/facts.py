@@ -4,7 +4,6 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from structmap.lattice import number_crystal_contacts
 from structmap.result import AnalysisRecord
 from structmap.words.direction import low_quantities
 from structmap.words.head import grouped_quantities
@@ -50,7 +49,7 @@ def _coordinate_lines(record: AnalysisRecord) -> tuple[str, ...]:
 
 
 def _neighbours(record: AnalysisRecord) -> str:
-    numbered = number_crystal_contacts(record.structure, record.contacts)
+    numbered = record.packing.numbered
     count = len(numbered.crystal_contacts)
     noun = "crystal contact" if count == 1 else "crystal contacts"
     return f"{number_in_words(count)} {noun}"
