@@ -50,7 +50,10 @@ function unitCaption(u) {
   const names = (/** @type {number[]} */ list) => list.map((e) => data.entries.name[e]).join(" ");
   /** @type {(Node|string)[]} */
   const words = [lead(`${unit.name} chosen.`), " "];
-  if (unit.lattice.startsWith("lattice")) {
+  const laid = laidOut();
+  if (laid) {
+    words.push(...laidCaption(laid));
+  } else if (unit.lattice.startsWith("lattice")) {
     const [first, ...rest] = unit.pieces;
     const image = shownImages(u)[0];
     const where = image ? `the neighbour at ${image.printed}` : "another molecule of the file";
@@ -63,7 +66,7 @@ function unitCaption(u) {
   const untested = unit.process.length === 1 && unit.process[0] === "not tested";
   words.push(...rich(untested ? "Whether one process explains them was not tested. " : `${capital(unit.process.join(", "))}. `));
   if (data.crystal) {
-    const left = unit.holds[unit.holds.length - 1];
+    const left = unit.holds.find((line) => / without /.test(line)) || unit.holds[unit.holds.length - 1];
     words.push(unit.lattice.startsWith("lattice") ? `Without neighbours: ${left.replace(/ without it/, "")}.` : `${capital(left)}.`);
   }
   return words;
@@ -93,8 +96,21 @@ function siteCaption(e) {
   } else {
     words.push("Not measured, which says nothing about its motion. ");
   }
-  words.push(...touchText(e));
+  words.push(...touchText(e), surroundingsText(e));
   return words;
+}
+
+/** Helix or strand, how open the residue lies, the nearest crystal mate. @param {number} e */
+function surroundingsText(e) {
+  const { exposed, mate } = data.entries;
+  const said = [];
+  const kind = secondaryName(e);
+  if (kind) said.push(`in a ${kind}`);
+  const share = exposed[e];
+  if (share !== null) said.push(`${fixed(percent(share), 0)}\u00a0% of its surface open`);
+  const gap = mate[e];
+  if (gap !== null) said.push(`${fixed(gap, 1)}\u00a0Å to the nearest crystal mate`);
+  return said.length ? ` ${capital(said.join(", "))}.` : "";
 }
 
 /** @param {number} e */

@@ -37,6 +37,11 @@ function readAtoms() {
   for (const count of data.residues.atoms) firstAtom.push(firstAtom[firstAtom.length - 1] + count);
 }
 
+/** An image by number: those that touch this molecule, then those beyond. @param {number} image */
+function imageOf(image) {
+  return data.images[image] || data.beyond[image - data.images.length];
+}
+
 /**
  * Position of an atom in an image.
  * @param {number} atom
@@ -46,7 +51,7 @@ function readAtoms() {
 function atomAt(atom, image = -1) {
   const p = [atomXyz[3 * atom], atomXyz[3 * atom + 1], atomXyz[3 * atom + 2]];
   if (image < 0) return p;
-  const m = data.images[image].matrix;
+  const m = imageOf(image).matrix;
   return [0, 4, 8].map((r) => m[r] * p[0] + m[r + 1] * p[1] + m[r + 2] * p[2] + m[r + 3]);
 }
 

@@ -8,6 +8,8 @@
  * @property {number[]} at
  * @property {number} radius
  * @property {string} colour
+ * @property {number} [laid] unit that it is laid out for, only drawn when that is chosen
+ * @property {boolean} [again] in another copy of the unit
  */
 
 /**
@@ -21,6 +23,9 @@
  * @property {number[][]} ends bead to bead
  * @property {number[][]} atoms atom to atom
  * @property {boolean} nearest of its residue and image
+ * @property {number} [from] image of the residue where a unit is laid out
+ * @property {number} [to] image of the other one
+ * @property {boolean} [onward] out to the next copy of a unit
  */
 
 const library = /** @type {any} */ (window).$3Dmol;
@@ -53,7 +58,8 @@ let lastView = "";
 function startPicture() {
   readAtoms();
   dashes = findDashes();
-  beads = findBeads();
+  beads = [...findBeads(), ...findLaidBeads()];
+  findLaidDashes();
   measurePicture();
   resetView();
   if (offersWebGl()) {
@@ -92,20 +98,20 @@ function makeViewer() {
     if (ALLOWED_CALLS.has(name)) viewer[name](...values);
   }
   moleculeModel = viewer.getModel(0);
-  data.images.forEach((image, i) => mateModels.push(imageModel(image, i)));
+  data.images.forEach((image, i) => mateModels.push(backboneModel(image.drawn, i)));
   beadModel = viewer.addModel();
   beadModel.addAtoms(beads.map(beadAtom));
 }
 
 /**
- * The backbone of a neighbour as a model of its own.
- * @param {Image} image
+ * The backbone of a neighbour, or of stretches of it, as a model of its own.
+ * @param {number[][]} ranges of residues
  * @param {number} index
  */
-function imageModel(image, index) {
+function backboneModel(ranges, index) {
   const own = moleculeModel.selectedAtoms({});
   const kept = [];
-  for (const [from, to] of image.drawn) {
+  for (const [from, to] of ranges) {
     for (let a = firstAtom[from]; a < firstAtom[to]; a++) {
       if (BACKBONE.has(atomNames[a])) kept.push(movedAtom(own[a], a, index));
     }
@@ -208,18 +214,19 @@ function findDashes() {
 
 // --- how things look now ---
 
+/** @param {string} color @param {number} width */
+function threadStyle(color, width) {
+  const style = atomNames.includes("O") || atomNames.includes("P") ? "oval" : "trace";
+  return { cartoon: { style, color, width, thickness: width, arrows: false, ribbon: false } };
+}
+
 /** Colours of the threads; they change with the theme alone. */
 function drawThreads() {
-  const style = atomNames.includes("O") || atomNames.includes("P") ? "oval" : "trace";
-  /** @param {string} color @param {number} width */
-  const tube = (color, width) => ({
-    cartoon: { style, color, width, thickness: width, arrows: false, ribbon: false },
-  });
   const backbone = { atom: [...BACKBONE] };
   moleculeModel.setStyle({}, {});
-  moleculeModel.setStyle(backbone, tube(tokens.thread, 0.3));
+  moleculeModel.setStyle(backbone, threadStyle(tokens.thread, 0.3));
   for (const model of mateModels) {
-    model.setStyle(backbone, tube(tokens.mate, 0.15));
+    model.setStyle(backbone, threadStyle(tokens.mate, 0.15));
     if (state.neighbours) model.show();
     else model.hide();
   }
@@ -242,11 +249,11 @@ function restyle() {
   if (!viewer) return;
   const atoms = beadModel.selectedAtoms({});
   beads.forEach((bead, i) => {
-    const shown = bead.image < 0 || state.neighbours;
-    atoms[i].style = shown ? { sphere: { radius: bead.radius, color: bead.colour } } : {};
+    atoms[i].style = beadShown(bead) ? { sphere: { radius: bead.radius, color: bead.colour } } : {};
   });
   // Setting one style through the library makes it draw the model anew.
   if (atoms.length) beadModel.setStyle({ serial: 0 }, atoms[0].style);
+  drawStretches();
   drawSideChains();
   drawDashes();
   sceneChanged = true;
@@ -257,7 +264,10 @@ function styleBeads() {
   for (const bead of beads) {
     bead.radius = beadRadius(bead.entry) * (state.sides ? 0.45 : 1);
     let colour = entryColour(bead.entry);
-    if (bead.image >= 0) colour = mix(colour, 0.45);
+    if (bead.again || standsElsewhere(bead)) {
+      colour = mix(colour, 0.64);
+      bead.radius *= 0.62;
+    } else if (bead.image >= 0 && bead.laid === undefined) colour = mix(colour, 0.45);
     if (state.chosen.size && !state.chosen.has(bead.entry)) {
       colour = mix(colour, kin.has(bead.entry) ? 0.3 : 0.64);
     }
@@ -305,6 +315,7 @@ function kinOfChosen() {
  */
 function shownDashes() {
   if (!state.contacts) return [];
+  if (laidOut()) return shownLaidDashes();
   const shown = [];
   const sites = state.unit < 0 && state.chosen.size > 0;
   const chosenResidues = new Set(Array.from(state.chosen, (e) => data.entries.residue[e]));
@@ -368,7 +379,9 @@ function sideResidues() {
   data.residues.first.forEach((r, residue) => {
     if (first.has(r)) wanted.set(`${residue}/-1`, [residue, -1]);
   });
-  for (const { dash } of shownDashes()) {
+  const laid = laidOut();
+  laid?.residues.forEach((r, i) => wanted.set(`${r}/${laid.images[i]}`, [r, laid.images[i]]));
+  for (const { dash } of laid ? [] : shownDashes()) {
     if (dash.unit >= 0 || state.chosen.size) {
       wanted.set(`${dash.other}/${dash.image}`, [dash.other, dash.image]);
     }
@@ -452,13 +465,15 @@ function drawFrame(withWriting) {
 /** Frame what is chosen; of a unit across the crystal one side. */
 function goCloser() {
   const points = [];
+  const laid = laidOut();
   for (const bead of beads) {
-    if (bead.image < 0 && state.chosen.has(bead.entry)) points.push(bead.at);
+    const wanted = laid ? beadStands(bead) : bead.image < 0;
+    if (wanted && state.chosen.has(bead.entry)) points.push(bead.at);
   }
   for (const e of state.chosen) {
     if (!isMeasured(e)) points.push(residueAt(data.entries.residue[e]));
   }
-  const joining = shownDashes().filter((s) => s.dash.unit >= 0 && s.dash.unit === state.unit);
+  const joining = laid ? [] : shownDashes().filter((s) => s.dash.unit >= 0 && s.dash.unit === state.unit);
   if (joining.length) {
     const image = joining[0].dash.image;
     const side = joining.filter((s) => s.dash.image === image);

@@ -71,7 +71,7 @@ function beadAt(clientX, clientY) {
   const [x, y] = [clientX - rect.left, clientY - rect.top];
   let best = { entry: -1, distance: 14, z: -Infinity };
   for (const bead of beads) {
-    if (bead.image >= 0 && !state.neighbours) continue;
+    if (!beadShown(bead) || standsElsewhere(bead)) continue;
     const p = project(bead.at);
     const gap = Math.max(0, Math.hypot(p.x - x, p.y - y) - bead.radius * pixelsPerAngstrom());
     if (gap > 14) continue;
@@ -560,6 +560,7 @@ async function start() {
 }
 
 function restylePicture() {
+  showAllOfLayout();
   restyle();
   showPicture();
 }

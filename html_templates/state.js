@@ -33,6 +33,7 @@
  * @property {string[]} holds
  * @property {string[]} process
  * @property {string} sentence
+ * @property {Layout|null} layout
  */
 
 /**
@@ -87,6 +88,7 @@
  * @property {Profile|null} profile
  * @property {{a: number[], b: number[], kind: number[], distance: number[], image: number[], numeral: string[], atomA: string[], atomB: string[], complex: number, lattice: number}} contacts
  * @property {Image[]} images
+ * @property {{printed: string, shift: number[], numeral: string, matrix: number[]}[]} beyond
  * @property {{entry: number[], residue: number[], atom: number[]}} copies
  * @property {any[][]} calls
  * @property {{centre: number[], quaternion: number[], half_width: number, half_height: number, depth: number}} view

@@ -29,7 +29,7 @@ function drawOverlay(place) {
 
 /** @param {{bead: Bead, x: number, y: number, z: number, r: number}[]} seen @returns {Obstacles} */
 function findObstacles(seen) {
-  const shown = seen.filter((s) => s.bead.image < 0 || state.neighbours);
+  const shown = seen.filter((s) => beadShown(s.bead));
   const joining = shownDashes().filter((s) => s.dash.unit >= 0);
   return {
     beads: shown.map(({ x, y, r }) => ({ x, y, r })),
@@ -147,7 +147,7 @@ function residueNames(seen, obstacles) {
   const nodes = [];
   const named = new Set();
   for (const s of seen) {
-    if (!wanted.has(s.bead.entry)) continue;
+    if (!wanted.has(s.bead.entry) || !beadStands(s.bead)) continue;
     const mate = s.bead.image >= 0;
     if (mate && (!state.neighbours || state.unit < 0)) continue;
     named.add(s.bead.entry);
@@ -171,7 +171,8 @@ function rings(seen) {
   for (const s of seen) {
     const chosen = state.chosen.has(s.bead.entry);
     const hovered = s.bead.entry === state.hovered;
-    if (s.bead.image >= 0 || !(chosen || hovered)) continue;
+    const stands = beadStands(s.bead) && (s.bead.image < 0 || s.bead.laid !== undefined);
+    if (!stands || !(chosen || hovered)) continue;
     ringed.add(s.bead.entry);
     nodes.push(...ring(s.x, s.y, s.r + 3, chosen ? 1.6 : 1, ""));
   }
@@ -198,6 +199,7 @@ function ring(cx, cy, r, width, dash) {
  * @param {boolean} place
  */
 function contactNames(obstacles, place) {
+  if (laidOut()) return laidNames(obstacles, place);
   /** @type {Map<number, {dash: Dash, ends: number[][]}[]>} */
   const sides = new Map();
   for (const shown of shownDashes()) {
@@ -214,19 +216,30 @@ function contactNames(obstacles, place) {
  * @param {{dash: Dash, ends: number[][]}[]} list
  * @param {Obstacles} obstacles
  * @param {boolean} place
+ * @param {string} [numeral]
  */
-function contactName(image, list, obstacles, place) {
-  const numeral = data.contacts.numeral[list[0].dash.contact];
-  const { printed, shift } = image < 0 ? { printed: "x, y, z", shift: [0, 0, 0] } : data.images[image];
+function contactName(image, list, obstacles, place, numeral = data.contacts.numeral[list[0].dash.contact]) {
+  const { printed, shift } = image < 0 ? { printed: "x, y, z", shift: [0, 0, 0] } : imageOf(image);
   const shifts = `(${shift.map(minus).join(" ")})`;
   const oneLine = view.width >= 620;
-  const first = textWidth(numeral, "700 12px serif") + 9;
   const lines = oneLine ? [`${printed}  ${shifts}`] : [printed, shifts];
+  return placedName(`${image}`, numeral, lines, list.flatMap((s) => samples(s.ends, 9)), obstacles, place);
+}
+
+/**
+ * A bold word and lines after it, by points, where they cover least.
+ * @param {string} key
+ * @param {string} word
+ * @param {string[]} lines
+ * @param {number[][]} points
+ * @param {Obstacles} obstacles
+ * @param {boolean} place
+ */
+function placedName(key, word, lines, points, obstacles, place) {
+  const first = word ? textWidth(word, "700 12px serif") + 9 : 0;
   const width = first + Math.max(...lines.map((l) => textWidth(l, '400 12px "Noto Sans", sans-serif')));
-  const height = oneLine ? 15 : 29;
-  const points = list.flatMap((s) => samples(s.ends, 9));
+  const height = 1 + 14 * lines.length;
   const middle = points.reduce((m, p) => [m[0] + p[0] / points.length, m[1] + p[1] / points.length], [0, 0]);
-  const key = `${image}`;
   let offset = lastPlaces.get(key);
   if (place || !offset) {
     offset = bestPlace(middle, width, height, points, obstacles);
@@ -235,7 +248,7 @@ function contactName(image, list, obstacles, place) {
   const box = { x: middle[0] + offset.x - width / 2, y: middle[1] + offset.y - height / 2, w: width, h: height };
   obstacles.taken.push(box);
   const nodes = leader(box, points);
-  nodes.push(svgText(numeral, box.x, box.y + 12, "numeral"));
+  nodes.push(svgText(word, box.x, box.y + 12, "numeral"));
   lines.forEach((line, i) => nodes.push(svgText(line, box.x + first, box.y + 12 + 14 * i, "operator")));
   return nodes;
 }
@@ -311,6 +324,7 @@ function drawFlat() {
   const items = [];
   const fade = (/** @type {number} */ z) => 0.34 * Math.max(0, Math.min(1, 0.5 - z / (2 * reach)));
   if (state.neighbours) data.images.forEach((_, i) => threadPieces(i, tokens.mate, 1.6, -60));
+  for (const { image, ranges, colour, width } of laidStretches()) threadPieces(image, colour, 11 * width, -20, ranges);
   threadPieces(-1, tokens.thread, 4.5, 0);
   for (const { dash, colour, radius, ends } of shownDashes()) {
     if (dash.unit < 0 && !state.chosen.size) continue;
@@ -327,7 +341,7 @@ function drawFlat() {
     });
   }
   for (const bead of beads) {
-    if (bead.image >= 0 && !state.neighbours) continue;
+    if (!beadShown(bead)) continue;
     const p = project(bead.at);
     const r = bead.radius * pixelsPerAngstrom();
     items.push({
@@ -339,9 +353,8 @@ function drawFlat() {
   group.append(...items.map((item) => item.node));
   return group;
 
-  /** @param {number} image @param {string} colour @param {number} width @param {number} lower */
-  function threadPieces(image, colour, width, lower) {
-    const ranges = image < 0 ? [[0, data.residues.name.length]] : data.images[image].drawn;
+  /** @param {number} image @param {string} colour @param {number} width @param {number} lower @param {number[][]} [ranges] */
+  function threadPieces(image, colour, width, lower, ranges = image < 0 ? [[0, data.residues.name.length]] : data.images[image].drawn) {
     for (const [from, to] of ranges) {
       for (let r = from + 1; r < to; r++) {
         if (data.residues.chain[r] !== data.residues.chain[r - 1]) continue;

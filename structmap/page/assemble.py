@@ -23,6 +23,7 @@ SCRIPTS = (
     "drawing.js",
     "geometry.js",
     "picture.js",
+    "laid_out.js",
     "writing.js",
     "profiles.js",
     "caption.js",

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 from structmap import words
 from structmap.page import scene
 from structmap.page.curves import fitted_curves
+from structmap.page.layouts import layouts_payload
 from structmap.page.listing import (
     Listing,
     entry_components,
@@ -50,6 +51,7 @@ def page_payload(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
     pictured = scene.images_payload(record, images, drawn)
     for image in pictured:
         image["printed"] = pretty_operator(image["operator"])
+    layouts, beyond = layouts_payload(record, listing, images)
     return {
         "version": __version__,
         "id": (
@@ -61,10 +63,14 @@ def page_payload(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
         "chains": _chains(record, listing),
         "quantity": _quantity(record),
         "columns": _other_columns(record, listing),
-        "units": [_unit(record, listing, unit) for unit in record.units],
+        "units": [
+            {**_unit(record, listing, unit), "layout": layout}
+            for unit, layout in zip(record.units, layouts, strict=True)
+        ],
         "profile": _profile(record, listing),
         "contacts": scene.contacts_payload(record, images),
         "images": pictured,
+        "beyond": beyond,
         "copies": _copies(record, listing, atoms),
         "calls": scene.recorded_calls(record.structure, atoms),
         "view": asdict(opening_view(record, atoms, images)),

@@ -13,6 +13,7 @@ from structmap.words.direction import (
 )
 from structmap.words.facts import facts
 from structmap.words.head import grouped_quantities, result_sentences, title
+from structmap.words.holding import closing_line
 from structmap.words.limits import find_gaps, gap_note
 from structmap.words.names import (
     errors_off_baseline,
@@ -33,6 +34,7 @@ from structmap.words.units import (
 
 __all__ = [
     "care_sentences",
+    "closing_line",
     "colophon",
     "confidence_note",
     "direction_phrase",
