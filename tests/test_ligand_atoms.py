@@ -278,6 +278,41 @@ def test_a_chain_that_is_a_copy_brings_its_ligand(tmp_path):
     assert (np.bincount(alone.copy_site) == 1).all()
 
 
+def test_copies_by_ncs_operators_keep_their_contacts_to_themselves(tmp_path):
+    """A molecule and its copy 100 Å beside it, in a cell that keeps mates away."""
+    st = read_gemmi(DATA / "4cup.cif.gz")
+    st.cell, st.spacegroup_hm = gemmi.UnitCell(400, 400, 400, 90, 90, 90), "P 1"
+    beside = gemmi.NcsOp()
+    beside.id, beside.given = "2", False
+    beside.tr.vec.fromlist([100.0, 0.0, 0.0])
+    st.ncs.append(beside)
+    del st.assemblies[:]
+    path = tmp_path / "copies.cif"
+    st.make_mmcif_document().write_file(str(path))
+    rows = polymer_rows(path) + ligand_rows(path, "ZYB")
+    structure, _, sites = laid(tmp_path, path, rows)
+    parted = part_ligands(structure, sites)
+    after, site = parted.structure, int(np.flatnonzero(sites.atom == "N1")[0])
+    one, two = parted.sites.copy_residue[parted.sites.copy_site == site].tolist()
+    assert after.original_residue[[one, two]].tolist() == [one, one]
+    assert after.copy_of_residue[[one, two]].tolist() == [0, 1]
+    contacts = contacts_of(parted, 4.5)
+    partners = [
+        Counter(
+            np.concatenate(
+                [
+                    after.original_residue[contacts.residue_2[contacts.residue_1 == r]],
+                    after.original_residue[contacts.residue_1[contacts.residue_2 == r]],
+                ]
+            ).tolist()
+        )
+        for r in (one, two)
+    ]
+    assert partners[0] == partners[1]
+    assert len(partners[0]) > 3
+    assert (contacts.kind == CHAIN).all()
+
+
 def test_the_number_of_a_ligand_stands_as_it_is_when_the_polymer_is_shifted(tmp_path):
     path = DATA / "4cup.cif.gz"
     shifted = []
