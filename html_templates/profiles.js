@@ -10,16 +10,26 @@ const NEIGHBOURS_SHOWN = 8;
 function drawProfiles() {
   const box = byId("panels");
   const narrow = innerWidth <= 760 && !state.printing;
-  box.style.height = narrow && data.profile ? `${Math.max(420, 120 * data.units.length + 60)}px` : "";
+  const fitted = data.fits.some(Boolean);
+  box.style.height = narrow && data.profile ? `${Math.max(fitted ? 510 : 420, 120 * data.units.length + 60)}px` : "";
+  if (state.printing && fitOf(state.unit)) box.style.height = "340px";
   byId("name-b").textContent = data.profile ? "Profiles" : "Values";
   const width = box.clientWidth;
   const height = box.clientHeight;
   box.style.overflowY = "";
-  if (!data.profile) return drawRanked(box, width, height);
   const chosen = [...state.chosen].sort((a, b) => a - b);
-  if (!chosen.length) return drawOverview(box, width, height);
-  if (chosen.length === 1 && state.unit < 0) return drawSite(box, width, height, chosen[0]);
-  drawMembers(box, width, height, chosen);
+  const misfit = fitOf(state.unit) ? misfitHeight(width, height) : 0;
+  if (!data.profile) drawRanked(box, width, height - misfit);
+  else if (!chosen.length) drawOverview(box, width, height);
+  else if (chosen.length === 1 && state.unit < 0) drawSite(box, width, height, chosen[0]);
+  else drawMembers(box, width, height - misfit, chosen);
+  if (misfit) box.append(misfitFigure(state.unit, { top: height - misfit, width, height: misfit }));
+}
+
+/** Room for the plot of chi-square under the panels. @param {number} width @param {number} height */
+function misfitHeight(width, height) {
+  if (width < 420) return state.printing ? 128 : 160;
+  return Math.max(124, Math.round(height * 0.32));
 }
 
 /** @param {(Node|string)[]} words */
@@ -207,6 +217,24 @@ function drawCurve(axes, x, y, colour, dash) {
   return [svg("path", { d, fill: "none", stroke: colour, "stroke-width": dash ? 1 : 1.6, "stroke-dasharray": dash })];
 }
 
+/**
+ * The 95 % band of a fitted curve, cut at the edges of its axes.
+ * @param {Axes} axes
+ * @param {number[]} x
+ * @param {number[]|null} y
+ * @param {number[]|null} half
+ */
+function drawBand(axes, x, y, half) {
+  if (!y || !half) return [];
+  const at = (/** @type {number} */ i, /** @type {number} */ side) => {
+    const v = Math.max(axes.low, Math.min(axes.high, y[i] + side * half[i]));
+    return `${short(axes.x(x[i]))} ${short(axes.y(v))}`;
+  };
+  const places = x.map((_, i) => i);
+  const d = `M${places.map((i) => at(i, 1)).join("L")}L${places.reverse().map((i) => at(i, -1)).join("L")}Z`;
+  return [svg("path", { d, fill: tokens.ink, "fill-opacity": 0.22, class: "curve-band" })];
+}
+
 // --- nothing chosen ---
 
 /** @param {HTMLElement} box @param {number} width @param {number} height */
@@ -309,8 +337,12 @@ function drawMembers(box, width, height, chosen) {
   const shown = measured.slice(0, AT_MOST_PANELS);
   const unitText = profile.unit ? ` (${profile.unit})` : "";
   const some = shown.length < measured.length ? `; first ${shown.length} of ${measured.length}` : "";
-  aboutProfiles(...rich(`${profile.name}${unitText}${profile.curve ? "; line: one value for all, dotted: each alone" : ", one scale for all"}${hollowText()}${some}`));
-  const columns = shown.length === 1 ? 1 : shown.length <= 4 ? 2 : 3;
+  const about = `${profile.name}${unitText}${curveText()}`;
+  const room = textWidth(`${about}${hollowText()}${some}`, state.printing ? "400 9.5px sans-serif" : "400 12px sans-serif") < width;
+  aboutProfiles(...rich(`${about}${room ? hollowText() : ""}${some}`));
+  const fit = fitOf(state.unit);
+  const many = fit && shown.length > 6 && width > 400 ? 4 : 3;
+  const columns = shown.length === 1 ? 1 : shown.length <= 4 && !(fit && shown.length === 3) ? 2 : many;
   const rows = Math.ceil(shown.length / columns);
   const range = profileRange(shown);
   const foot = 40;
@@ -325,6 +357,7 @@ function drawMembers(box, width, height, chosen) {
     const drawn = drawAxes(axes, { ticks: bottomRow, yTicks: panelHeight > 120 ? 3 : 2, named: bottomRow && row === rows - 1 && column === Math.floor((columns - 1) / 2) });
     drawn.push(...siteCurves(axes, e), ...drawPoints(axes, e, { values: profile.value, errors: profile.error, size: 2.6 }));
     drawn.push(svgText(data.entries.name[e], left, 11, "strong"));
+    if (fit) drawn.push(...aloneText(fit, e, left + panelWidth, panelWidth));
     const place = {
       left: column === 0 ? 0 : 34 + column * (panelWidth + 14),
       top: row * panelHeight,
@@ -337,6 +370,25 @@ function drawMembers(box, width, height, chosen) {
   box.replaceChildren(...nodes);
 }
 
+/** What the lines of a chosen unit are. */
+function curveText() {
+  const curve = data.profile?.curve;
+  if (!curve) return ", one scale for all";
+  const fit = fitOf(state.unit);
+  const band = [...state.chosen].some((e) => curve.band[e]) ? ", 95\u00a0% band" : "";
+  if (!fit) return `; line: one value for all${band}; dotted: each alone`;
+  return `; line: one ${fit.parameter} for all${band}; dotted: each alone${fit.unit ? ` (${fit.unit})` : ""}`;
+}
+
+/** The value of a residue alone, right of its name. @param {UnitFit} fit @param {number} e @param {number} right @param {number} width */
+function aloneText(fit, e, right, width) {
+  const value = fit.free[fit.members.indexOf(e)];
+  if (value === undefined || value === null) return [];
+  const text = minus(value >= 999.5 ? threeFigures(value) : value.toPrecision(3));
+  const room = width - textWidth(data.entries.name[e]) - 7;
+  return textWidth(text, "400 11px sans-serif") < room ? [svgText(text, right, 11, "faint", "end")] : [];
+}
+
 function hollowText() {
   return data.profile?.kept.some((k) => !k) ? "; hollow: left out" : "";
 }
@@ -346,6 +398,7 @@ function siteCurves(axes, e) {
   const curve = data.profile?.curve;
   if (!curve) return [];
   return [
+    ...drawBand(axes, curve.x, curve.y[e], curve.band[e]),
     ...drawCurve(axes, curve.x, curve.alone?.[e], tokens.quiet, "2 2"),
     ...drawCurve(axes, curve.x, curve.y[e], tokens.ink),
   ];
@@ -365,7 +418,8 @@ function drawSite(box, width, height, e) {
     );
   }
   const unitText = profile.unit ? ` (${profile.unit})` : "";
-  aboutProfiles(...rich(`${profile.name}${unitText}, one scale for all`));
+  const band = profile.curve?.band[e] ? "; grey: 95\u00a0% band of the fitted curve" : "";
+  aboutProfiles(...rich(`${profile.name}${unitText}, one scale for all${band}`));
   const near = nearestMeasured(e);
   const shown = near.slice(0, NEIGHBOURS_SHOWN);
   const range = profileRange([e, ...shown.map((t) => t.entry)]);

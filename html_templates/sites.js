@@ -35,7 +35,7 @@ function makeColumns() {
   const made = [
     { key: "residue", head: "residue", value: (e) => e, cell: nameCell },
     { key: "value", head: name, numeric: true, value: (e) => entries.value[e], cell: number((e) => (isMeasured(e) ? fixed(entries.value[e]) : "–"), "") },
-    { key: "error", head: "± error", numeric: true, value: (e) => entries.error[e], cell: number((e) => fixed(entries.error[e]), "soft") },
+    { key: "error", head: "±\u00a0error", numeric: true, value: (e) => entries.error[e], cell: number((e) => fixed(entries.error[e]), "soft") },
     { key: "axis", head: "on one axis", drawn: true, value: (e) => entries.value[e], cell: axisCell },
   ];
   data.columns.forEach((column, i) => {
@@ -43,12 +43,26 @@ function makeColumns() {
     made.push({ key: `column${i}`, head, numeric: true, value: (e) => column.value[e], cell: number((e) => threeFigures(column.value[e]), "") });
   });
   if (data.profile) made.push({ key: "profile", head: "profile", drawn: true, value: (e) => entries.value[e], cell: profileCell });
-  made.push({ key: "deviation", head: "errors above baseline", numeric: true, value: (e) => entries.deviation[e], cell: number((e) => fixed(entries.deviation[e], 1), "") });
+  made.push({ key: "deviation", head: "errors\u00a0above baseline", numeric: true, value: (e) => entries.deviation[e], cell: number((e) => fixed(entries.deviation[e], 1), "") });
   if (data.units.length) made.push({ key: "unit", head: "unit", value: (e) => (entries.unit[e] < 0 ? null : entries.unit[e]), cell: unitCell });
   if (quantity.membershipKnown) made.push({ key: "membership", head: "membership", numeric: true, value: (e) => entries.membership[e], cell: number((e) => fixed(entries.membership[e], 2), "") });
+  if (quantity.secondaryKnown) made.push({ key: "secondary", head: "helix, strand", value: (e) => secondaryName(e) || null, cell: (e) => element("td", { class: "soft" }, secondaryName(e)) });
+  if (numbers(entries.exposed).length) made.push({ key: "exposed", head: "surface open\u00a0(%)", numeric: true, value: (e) => percent(entries.exposed[e]), cell: number((e) => fixed(percent(entries.exposed[e]), 0), "") });
+  made.push({ key: "contacts", head: "residues touched", numeric: true, value: (e) => entries.contacts[e], cell: number((e) => String(entries.contacts[e]), "") });
+  if (numbers(entries.mate).length) made.push({ key: "mate", head: "crystal mate\u00a0(Å)", numeric: true, value: (e) => entries.mate[e], cell: number((e) => fixed(entries.mate[e], 1), "") });
   if (hasLattice()) made.push({ key: "crystal", head: "across a crystal contact", value: (e) => kindsOf(e).lattice.length || null, cell: crystalCell });
   made.push({ key: "note", head: "note", value: (e) => entries.note[e] || null, cell: (e) => element("td", { class: "note" }, entries.note[e]) });
   return made;
+}
+
+/** @param {number} e */
+function secondaryName(e) {
+  return { H: "helix", E: "strand" }[data.entries.secondary[e]] || "";
+}
+
+/** @param {number|null} share */
+function percent(share) {
+  return share === null ? null : Math.round(1000 * share) / 10;
 }
 
 /** @param {number} e */
@@ -109,21 +123,20 @@ function unitCell(e) {
 
 /** @param {number} e */
 function crystalCell(e) {
-  const td = element("td");
+  const td = element("td", { class: "crystal" });
   const by = new Map();
   for (const t of kindsOf(e).lattice) by.set(t.numeral, [...(by.get(t.numeral) || []), residueName(t)]);
   for (const [numeral, names] of by) {
-    td.append(element("span", { class: "numeral" }, numeral), `\u00a0${names.join(" ")}  `);
+    td.append(element("span", { class: "numeral" }, numeral), `\u00a0${names.join(" ")} `);
   }
   return td;
 }
 
 /** @param {number} e */
 function searchWords(e) {
-  const { name, unit, moves, note, secondary } = data.entries;
+  const { name, unit, moves, note } = data.entries;
   const across = kindsOf(e).lattice.flatMap((t) => [t.numeral, residueName(t)]);
-  const kind = { H: "helix", E: "strand" }[secondary[e]] || "";
-  const words = [name[e], longName(e), data.entries.number[e], entryKey(e), unit[e] >= 0 ? data.units[unit[e]].name : "", moves[e] ? "moves" : "", isMeasured(e) ? "measured" : "not measured", kind, note[e], ...across];
+  const words = [name[e], longName(e), data.entries.number[e], entryKey(e), unit[e] >= 0 ? data.units[unit[e]].name : "", moves[e] ? "moves" : "", isMeasured(e) ? "measured" : "not measured", secondaryName(e), note[e], ...across];
   return words.join(" ").toLowerCase().replace(/\u00a0/g, " ");
 }
 

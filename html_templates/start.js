@@ -512,6 +512,7 @@ function drawAll() {
   restyle();
   drawLegend();
   drawProfiles();
+  drawIntervals();
   markUnits();
   drawMap();
   sparkRange = null;

@@ -18,6 +18,9 @@
  * @property {(number|null)[]} deviation
  * @property {boolean[]} moves
  * @property {string[]} note
+ * @property {(number|null)[]} exposed
+ * @property {number[]} contacts
+ * @property {(number|null)[]} mate
  */
 
 /**
@@ -47,6 +50,29 @@
  */
 
 /**
+ * One shared value fitted to a unit; `y` is chi-square over `x` near its lowest.
+ * @typedef {object} UnitFit
+ * @property {string} parameter
+ * @property {string} unit
+ * @property {boolean} log
+ * @property {string} verdict
+ * @property {number|null} value
+ * @property {number} best
+ * @property {number|null} low
+ * @property {number|null} high
+ * @property {boolean[]} open
+ * @property {number[]} x
+ * @property {number[]} y
+ * @property {number} lowest
+ * @property {number} limit
+ * @property {number} each
+ * @property {number[]} members
+ * @property {(number|null)[]} free
+ * @property {string[]} caption
+ * @property {string} figures
+ */
+
+/**
  * @typedef {object} Profile
  * @property {string} name
  * @property {string} unit
@@ -59,7 +85,7 @@
  * @property {((number|null)[]|null)[]} value
  * @property {((number|null)[]|null)[]} error
  * @property {((number|null)[]|null)[]} above
- * @property {{x: number[], y: (number[]|null)[], alone: (number[]|null)[], scaled: Scaled[]}|null} curve
+ * @property {{x: number[], y: (number[]|null)[], band: (number[]|null)[], alone: (number[]|null)[], scaled: Scaled[]}|null} curve
  */
 
 /**
@@ -85,6 +111,7 @@
  * @property {{name: string, about: string, unit: string, band: number[]|null, signed: boolean, errorsGiven: boolean, threshold: number, membershipKnown: boolean, secondaryKnown: boolean}} quantity
  * @property {{name: string, unit: string, value: (number|null)[]}[]} columns
  * @property {Unit[]} units
+ * @property {(UnitFit|null)[]} fits
  * @property {Profile|null} profile
  * @property {{a: number[], b: number[], kind: number[], distance: number[], image: number[], numeral: string[], atomA: string[], atomB: string[], complex: number, lattice: number}} contacts
  * @property {Image[]} images

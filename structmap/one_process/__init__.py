@@ -4,7 +4,12 @@ from structmap.one_process.catalogue import MODELS, Conditions, make_model
 from structmap.one_process.engine import fit_each, fit_group
 from structmap.one_process.mixture import Mixture, find_mixture
 from structmap.one_process.model import Model, Parameter
-from structmap.one_process.phrases import plain_words, show_interval
+from structmap.one_process.phrases import (
+    plain_words,
+    prefix_of,
+    show_interval,
+    show_number,
+)
 from structmap.one_process.preparing import (
     Prepared,
     prepare_profiles,
@@ -59,8 +64,10 @@ __all__ = [
     "make_model",
     "make_profiles",
     "plain_words",
+    "prefix_of",
     "prepare_profiles",
     "show_interval",
+    "show_number",
     "site_names",
     "spinning_conditions",
     "table_rows",

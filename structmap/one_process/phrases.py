@@ -25,12 +25,33 @@ def show_number(value: float, unit: str) -> str:
     str
         For example ``18.5 µs``.
     """
+    scale, prefixed = prefix_of(value, unit)
+    return f"{value / scale:.3g} {prefixed}".strip()
+
+
+def prefix_of(value: float, unit: str) -> tuple[float, str]:
+    """Return the unit with the prefix that suits a value.
+
+    Parameters
+    ----------
+    value : float
+        In the base unit.
+    unit : str
+        Base unit; only s and M take prefixes.
+
+    Returns
+    -------
+    scale : float
+        What the value is divided by.
+    unit : str
+        For example ``µs``.
+    """
     if unit not in _SCALED_UNITS or value == 0 or not np.isfinite(value):
-        return f"{value:.3g} {unit}".strip()
+        return 1.0, unit
     scale, prefix = next(
         (pair for pair in _PREFIXES if abs(value) >= pair[0]), _PREFIXES[-1]
     )
-    return f"{value / scale:.3g} {prefix}{unit}"
+    return scale, f"{prefix}{unit}"
 
 
 def show_interval(result: OneProcess) -> str:

@@ -26,6 +26,7 @@ SCRIPTS = (
     "laid_out.js",
     "writing.js",
     "profiles.js",
+    "misfit.js",
     "caption.js",
     "chain.js",
     "units.js",

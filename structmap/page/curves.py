@@ -5,8 +5,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from structmap.one_process import GroupFit, OneProcess, site_names
+from structmap.one_process import GroupFit, OneProcess
 from structmap.page.listing import Listing
+from structmap.page.processes import entry_of_name
 from structmap.result import AnalysisRecord
 
 CURVE_POINTS = 61
@@ -29,44 +30,48 @@ def fitted_curves(
     Returns
     -------
     dict or None
-        ``x``, and for each entry the shared curve ``y`` and its own curve ``alone``;
-        for each unit in ``scaled`` the verdict, and for each fitted member baseline
-        and height by which its points are laid on the others. None without fits.
+        ``x``, and for each entry the shared curve ``y``, half the width of its 95 %
+        ``band`` and its own curve ``alone``; for each unit in ``scaled`` the verdict,
+        and for each fitted member baseline and height by which its points are laid on
+        the others. A site that is set apart from its unit has no shared curve; a curve
+        that the test rejects has no band. None without fits.
     """
-    fits = [_fit_of(record.process_of(unit)) for unit in record.units]
     kept = np.sort(x[record.measurements.point_kept])
-    known = [fit for fit in fits if fit and len(fit.profiles.x) == len(kept)]
-    if not known or len(known) < len(fits):
+    processes = [record.process_of(unit) for unit in record.units]
+    fits = [p.fit for p in processes if p and p.fit]
+    if not fits or any(len(fit.profiles.x) != len(kept) for fit in fits):
         return None
-    grid = known[0].curve_x
+    grid = fits[0].curve_x
     some = np.unique(np.linspace(0, len(grid) - 1, CURVE_POINTS).astype(int))
-    shown_x = np.interp(grid[some], np.sort(known[0].profiles.x), kept)
-    entry = _entry_of_name(record, listing)
-    y: list[Any] = [None] * len(listing.residue)
-    alone: list[Any] = [None] * len(listing.residue)
-    scaled = []
-    for unit, fit in zip(record.units, known, strict=True):
-        process = record.process_of(unit)
-        verdict = process.verdict if process else ""
-        curves = {"shared": fit.curve[:, some], "alone": _alone(fit, grid[some])}
-        scaled.append(_scaled(fit, curves, entry, verdict))
-        for place, name in enumerate(fit.profiles.name):
-            y[entry[name]] = _short(curves["shared"][place])
-            alone[entry[name]] = _short(curves["alone"][place])
-    return {"x": _short(shown_x), "y": y, "alone": alone, "scaled": scaled}
-
-
-def _fit_of(process: OneProcess | None) -> GroupFit | None:
-    return process.fit if process is not None else None
-
-
-def _entry_of_name(record: AnalysisRecord, listing: Listing) -> dict[str, int]:
-    names = site_names(record.table)
-    return {
-        names[record.sites.row[site]]: place
-        for place, site in enumerate(listing.site.tolist())
-        if site >= 0
+    shown_x = np.interp(grid[some], np.sort(fits[0].profiles.x), kept)
+    entry = entry_of_name(record, listing)
+    columns: dict[str, list[Any]] = {
+        key: [None] * len(listing.residue) for key in ("y", "band", "alone")
     }
+    scaled = []
+    for process in processes:
+        if process is None or process.fit is None:
+            scaled.append(_not_laid())
+            continue
+        curves = _curves_of(process, process.fit, some)
+        scaled.append(_scaled(process, curves, entry))
+        for place, name in enumerate(process.fit.profiles.name):
+            for key, column in columns.items():
+                column[entry[name]] = _short(curves[key][place])
+    return {"x": _short(shown_x), **columns, "scaled": scaled}
+
+
+def _curves_of(
+    process: OneProcess, fit: GroupFit, some: NDArray[np.int64]
+) -> dict[str, NDArray[np.float64]]:
+    """Return shared curve, band and own curve of each fitted site, NaN for none."""
+    shared = fit if process.kept_fit is None else process.kept_fit
+    rows = [fit.profiles.name.index(name) for name in shared.profiles.name]
+    curve, band = np.full((2, len(fit.profiles.name), len(some)), np.nan)
+    curve[rows] = shared.curve[:, some]
+    if process.verdict != "distinct":
+        band[rows] = shared.band[:, some]
+    return {"y": curve, "band": band, "alone": _alone(fit, fit.curve_x[some])}
 
 
 def _short(values: NDArray[np.float64]) -> list[float] | None:
@@ -93,19 +98,24 @@ def _alone(fit: GroupFit, grid: NDArray[np.float64]) -> NDArray[np.float64]:
     return curves
 
 
+def _not_laid() -> dict[str, Any]:
+    empty: dict[str, Any] = {"verdict": "", "apart": False, "members": []}
+    return {**empty, "low": None, "height": None}
+
+
 def _scaled(
-    fit: GroupFit,
-    curves: dict[str, NDArray[np.float64]],
-    entry: dict[str, int],
-    verdict: str,
+    process: OneProcess, curves: dict[str, NDArray[np.float64]], entry: dict[str, int]
 ) -> dict[str, Any]:
     """Return how members are laid on one another: 0 foot of the curve, 1 its height."""
-    apart = verdict == "distinct" and np.isfinite(curves["alone"]).all()
-    drawn = curves["alone"] if apart else curves["shared"]
+    fit = process.fit
+    assert fit is not None  # noqa: S101
+    apart = process.verdict == "distinct" and np.isfinite(curves["alone"]).all()
+    drawn = curves["alone"] if apart else curves["y"]
+    drawn = np.where(np.isnan(drawn), curves["alone"], drawn)
     low = drawn.min(axis=1)
     height = drawn.max(axis=1) - low
     return {
-        "verdict": verdict,
+        "verdict": process.verdict,
         "apart": bool(apart),
         "members": [entry[name] for name in fit.profiles.name],
         "low": _short(low),

@@ -288,7 +288,8 @@ def sites_rows(record: AnalysisRecord, listing: Listing) -> str:
     Returns
     -------
     str
-        Rows with name, value, error, errors above baseline, unit and note.
+        Rows with name, value, error, errors above baseline, unit, helix or strand,
+        open share of the surface, residues touched, distance to a mate and note.
     """
     behaviour, units = record.behaviour, record.unit_of_site()
     names, notes = entry_names(record, listing), entry_notes(record, listing)
@@ -302,12 +303,24 @@ def sites_rows(record: AnalysisRecord, listing: Listing) -> str:
             cells[1] = _number(behaviour.summary_error[row])
             cells[2] = f"{off[row]:.1f}".replace("-", "−")
             cells[3] = record.units[units[site]].name if units[site] >= 0 else ""
+        cells += _surroundings(record, int(listing.residue[index]))
         inner = "".join(f"<td>{cell}</td>" for cell in cells)
         rows.append(
             f'<tr><th scope="row">{escape(names[index])}</th>{inner}'
             f"<td>{escape(notes[index])}</td></tr>"
         )
     return "".join(rows)
+
+
+def _surroundings(record: AnalysisRecord, residue: int) -> list[str]:
+    exposure = record.exposure
+    code = str(record.structure.secondary_structure[residue])
+    return [
+        {"H": "helix", "E": "strand"}.get(code, ""),
+        _number(100 * float(exposure.relative_in_assembly[residue])),
+        str(int(exposure.contact_number[residue].sum())),
+        _number(float(exposure.mate_distance_angstrom[residue])),
+    ]
 
 
 def _number(value: float) -> str:

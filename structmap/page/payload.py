@@ -19,6 +19,7 @@ from structmap.page.listing import (
     residue_names,
 )
 from structmap.page.markup import mark_text, mark_unit, pretty_operator
+from structmap.page.processes import unit_fits
 from structmap.page.view import opening_view
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.values import Quantity
@@ -67,6 +68,7 @@ def page_payload(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
             {**_unit(record, listing, unit), "layout": layout}
             for unit, layout in zip(record.units, layouts, strict=True)
         ],
+        "fits": unit_fits(record, listing),
         "profile": _profile(record, listing),
         "contacts": scene.contacts_payload(record, images),
         "images": pictured,
@@ -144,6 +146,17 @@ def _entries(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
         "deviation": _spread(listing, words.errors_off_baseline(record)),
         "moves": [bool(row >= 0 and moves[row]) for row in listing.measured.tolist()],
         "note": entry_notes(record, listing),
+        **_surroundings(record, listing),
+    }
+
+
+def _surroundings(record: AnalysisRecord, listing: Listing) -> dict[str, Any]:
+    """Return open share in the assembly, residues touched, nearest crystal mate."""
+    exposure, residue = record.exposure, listing.residue
+    return {
+        "exposed": plain(exposure.relative_in_assembly[residue], 3),
+        "contacts": exposure.contact_number[residue].sum(axis=1).tolist(),
+        "mate": plain(exposure.mate_distance_angstrom[residue], 3),
     }
 
 

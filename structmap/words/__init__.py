@@ -15,6 +15,7 @@ from structmap.words.facts import facts
 from structmap.words.head import grouped_quantities, result_sentences, title
 from structmap.words.holding import closing_line
 from structmap.words.limits import find_gaps, gap_note
+from structmap.words.misfit import misfit_caption, misfit_figures, shown_fit
 from structmap.words.names import (
     errors_off_baseline,
     measured_chains,
@@ -49,10 +50,13 @@ __all__ = [
     "low_quantities",
     "measured_chains",
     "members_phrase",
+    "misfit_caption",
+    "misfit_figures",
     "number_in_words",
     "p_text",
     "rests_on",
     "result_sentences",
+    "shown_fit",
     "site_name",
     "summary_lines",
     "title",

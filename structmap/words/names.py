@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.special import ndtri
 
+from structmap.one_process import site_names
 from structmap.result import AnalysisRecord
 from structmap.structure import LIGAND_PART, POLYMER, one_letter
 
@@ -69,6 +70,26 @@ def site_name(record: AnalysisRecord, site: int) -> str:
 def _atoms_differ(record: AnalysisRecord) -> bool:
     residues = record.sites.residue[record.sites.residue >= 0]
     return len(np.unique(residues)) < len(residues)
+
+
+def fitted_site_names(record: AnalysisRecord, names: tuple[str, ...]) -> str:
+    """Return the short names of sites that a fit names as the table does.
+
+    Parameters
+    ----------
+    record : AnalysisRecord
+        What the analysis found.
+    names : tuple of str
+        Sites of a `OneProcess`.
+
+    Returns
+    -------
+    str
+        ``T1928 L1931`` for ``("73", "76")``.
+    """
+    in_table = site_names(record.table)
+    site = {in_table[row]: index for index, row in enumerate(record.sites.row.tolist())}
+    return " ".join(site_name(record, site[n]) if n in site else n for n in names)
 
 
 def measured_chains(record: AnalysisRecord) -> tuple[str, ...]:

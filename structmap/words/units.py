@@ -6,6 +6,7 @@ from structmap.one_process import OneProcess, show_interval
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.words.direction import direction_phrase
 from structmap.words.holding import hold_lines, weak_phrase
+from structmap.words.names import fitted_site_names
 from structmap.words.phrases import (
     across_phrase,
     bridged_chains,
@@ -132,7 +133,7 @@ def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     process = record.process_of(unit)
     if process is None:
         return ("not tested",)
-    lines = [_process_word(process)]
+    lines = [_process_word(record, process)]
     if process.verdict != "distinct" and process.fit is not None:
         lines.append(show_interval(process))
     if process.verdict != "undetermined":
@@ -142,11 +143,12 @@ def unit_process(record: AnalysisRecord, unit: MotionalUnit) -> tuple[str, ...]:
     return tuple(lines)
 
 
-def _process_word(process: OneProcess) -> str:
+def _process_word(record: AnalysisRecord, process: OneProcess) -> str:
     if process.verdict == "shared":
         return "one value is enough"
     if process.verdict == "shared by a subset":
-        return f"one value is enough without {' '.join(process.apart)}"
+        apart = fitted_site_names(record, process.apart)
+        return f"one value is enough without {apart}"
     if process.verdict == "distinct":
         return "several values are needed"
     return "these data cannot tell"
@@ -181,7 +183,7 @@ def _process_clause(record: AnalysisRecord, unit: MotionalUnit) -> str:
     process = record.process_of(unit)
     if process is None:
         return ""
-    text = f"; {_process_word(process)}"
+    text = f"; {_process_word(record, process)}"
     if process.verdict in ("shared", "shared by a subset"):
         text += f", {show_interval(process)}"
     return text
