@@ -16,6 +16,7 @@ from structmap.contacts import (
     find_contacts,
     make_site_graph,
 )
+from structmap.lattice import judge_lattice
 from structmap.page.listing import entry_components, entry_letters, list_entries
 from structmap.sites import match_rows, match_sites, part_ligands, site_centres
 from structmap.structure import LIGAND_PART, POLYMER, read_structure
@@ -164,6 +165,38 @@ def test_contacts_of_each_atom_are_those_of_a_plain_search(
     of_ligand = parted.structure.kind_of_residue == LIGAND_PART
     touching = of_ligand[contacts.residue_1] | of_ligand[contacts.residue_2]
     assert bool((touching & (contacts.kind == LATTICE)).any()) == has_lattice
+
+
+def test_a_ligand_and_a_loop_of_a_neighbour_are_joined_by_the_lattice(tmp_path):
+    """ZYB touches residue 1899 of a mate; some near that touch it in no other way."""
+    path = DATA / "4cup.cif.gz"
+    rows = polymer_rows(path) + ligand_rows(path, "ZYB")
+    structure, _, sites = laid(tmp_path, path, rows)
+    parted = part_ligands(structure, sites)
+    contacts = contacts_of(parted, 4.5)
+    graph = make_site_graph(contacts, parted.sites, cutoff_angstrom=4.5)
+    ligand = np.flatnonzero(sites.atom != "").tolist()
+    in_chain = [
+        {int(a), int(b)}
+        for a, b, kind in zip(graph.site_1, graph.site_2, graph.kind, strict=True)
+        if kind == CHAIN
+    ]
+    pocket = set().union(*(pair for pair in in_chain if pair & set(ligand)))
+    patch = {int(np.flatnonzero(sites.name == "A/1899")[0])}
+    while len(patch) < 4:
+        beside = set().union(*(pair for pair in in_chain if pair & patch))
+        patch.add(min(beside - patch - pocket))
+    verdict = judge_lattice(
+        np.array(sorted([*ligand, *patch])),
+        graph,
+        structure=parted.structure,
+        sites=parted.sites,
+        contacts=contacts,
+        assemblies=choose_assemblies(parted.structure, "auto"),
+    )
+    assert verdict.verdict == "lattice-joined"
+    assert [len(piece) for piece in verdict.pieces_without_lattice] == [11, 4]
+    assert verdict.operators == ("x,-y,-z [0 1 1]",)
 
 
 def test_haems_of_two_chains(tmp_path, data_folder):
