@@ -252,17 +252,17 @@ class Molecule:
         ResiduePairs
             With ``first < second``.
         """
-        found = self._own_atom_pairs()
-        if not self.altloc.any():
-            return self._residue_pairs(found)
-        agree = self._altlocs_agree(found)
-        return self._with_bonded(
-            self._residue_pairs(found.where(agree)), found.where(~agree)
-        )
-
-    def _own_atom_pairs(self) -> AtomPairs:
         pairs = self._tree.query_pairs(self.reach, output_type="ndarray")
         pairs = pairs[self.residue[pairs[:, 0]] != self.residue[pairs[:, 1]]]
+        if not self.altloc.any():
+            return self._residue_pairs(self._measured(pairs))
+        agree = self._altlocs_agree(*pairs.T)
+        left_out = self._measured(pairs[~agree])
+        pairs = pairs[agree]
+        return self._with_bonded(self._residue_pairs(self._measured(pairs)), left_out)
+
+    def _measured(self, pairs: NDArray[np.int64]) -> AtomPairs:
+        """Return pairs of atoms in the molecule itself with their distances."""
         first, second = pairs.T
         squared = np.zeros(len(pairs))
         for axis in self.position.T:  # one axis at a time saves memory
@@ -313,7 +313,7 @@ class Molecule:
         once = found.first <= found.second
         found = found.where(once | ~self_inverse[found.image - 1])
         if self.altloc.any():
-            found = found.where(self._altlocs_agree(found))
+            found = found.where(self._altlocs_agree(found.first, found.second))
         return self._residue_pairs(found.where(~self._on_elements(found)))
 
     def _on_elements(self, found: AtomPairs) -> NDArray[np.bool_]:
@@ -330,9 +330,11 @@ class Molecule:
         own = self.residue[found.first] == self.residue[found.second]
         return np.asarray(same | (own & np.isin(key, whole)))
 
-    def _altlocs_agree(self, pairs: AtomPairs) -> NDArray[np.bool_]:
-        first, second = self.altloc[pairs.first], self.altloc[pairs.second]
-        return np.asarray((first == second) | (first == 0) | (second == 0))
+    def _altlocs_agree(
+        self, first: NDArray[np.int64], second: NDArray[np.int64]
+    ) -> NDArray[np.bool_]:
+        one, two = self.altloc[first], self.altloc[second]
+        return np.asarray((one == two) | (one == 0) | (two == 0))
 
     def _image_atom_pairs(self, matrices: NDArray[np.float64]) -> AtomPairs:
         parts = [self._atoms_near(matrix) for matrix in matrices]

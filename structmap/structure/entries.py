@@ -1,6 +1,7 @@
 """Residue entries of the models of a file, and the atoms that belong to them."""
 
 from dataclasses import dataclass
+from typing import Any, NamedTuple
 
 import gemmi
 import numpy as np
@@ -13,10 +14,12 @@ from structmap.structure.record import LIGAND, POLYMER, WATER
 LARGEST_COORDINATE_ANGSTROM = 9000.0
 LARGEST_RESIDUE_ANGSTROM = 12.0
 HYDROGENS = (1, 119)  # gemmi numbers deuterium beyond the periodic table
+NO_NUMBER = -999  # what gemmi writes for a residue without one
+
+Key = tuple[str | int, ...]
 
 
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class Entry:
+class Entry(NamedTuple):
     """One residue of the file; two alternative residues at one place are one entry.
 
     Attributes
@@ -45,18 +48,6 @@ class Entry:
             Both names.
         """
         return self.auth_asym_id, self.label_asym_id
-
-    @property
-    def key(self) -> tuple[str | int, ...]:
-        """What tells it from all other entries.
-
-        Returns
-        -------
-        tuple
-            Names of the chain, number, insertion code; for ligands the name too.
-        """
-        name = "" if self.kind == POLYMER else self.auth_comp_id
-        return (*self.chain, self.auth_seq_id, self.ins_code, name)
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -111,25 +102,24 @@ def collect_entries(
     UnplacedAtomError
         If a kept atom has no position.
     """
-    used = {model.num for model in models}
-    index_of_key: dict[tuple[str | int, ...], int] = {}
+    numbers = [model.num for model in models]
+    flat = gemmi.FlatStructure(parsed.content)
+    index_of_key: dict[Key, int] = {}
     entries: list[Entry] = []
     entry_of_atom, model_of_atom = [], []
-    for rank, model in enumerate(
-        model for model in parsed.content if model.num in used
-    ):
-        found, counts = _walk(parsed, model)
+    for rank, model in enumerate(m for m in parsed.content if m.num in numbers):
+        found, counts = _walk(parsed, model, flat)
         indices = []
-        for entry in found:
-            if entry.key not in index_of_key:
-                index_of_key[entry.key] = len(entries)
+        for key, entry in found:
+            index = index_of_key.setdefault(key, len(entries))
+            if index == len(entries):
                 entries.append(entry)
-            indices.append(index_of_key[entry.key])
+            indices.append(index)
         entry_of_atom.append(np.repeat(np.array(indices, dtype=np.int64), counts))
-        model_of_atom.append(np.full(sum(counts), rank, dtype=np.int64))
+        model_of_atom.append(np.full(counts.sum(), rank, dtype=np.int64))
     table = _atom_table(
-        parsed.content,
-        used,
+        flat,
+        np.isin(flat.model_num, numbers),
         np.concatenate(entry_of_atom),
         np.concatenate(model_of_atom),
     )
@@ -139,64 +129,78 @@ def collect_entries(
     return entries, table
 
 
-def _walk(parsed: ParsedFile, model: gemmi.Model) -> tuple[list[Entry], list[int]]:
-    found, counts, seen = [], [], set()
-    for chain in model:
-        previous = None
-        for residue in chain:
-            entry = _entry(chain.name, residue)
-            if entry.kind == POLYMER and entry.key != previous:
-                if entry.key in seen:
-                    label = f"{chain.name}/{residue.seqid}"
-                    raise RepeatedResidueError(parsed.path, label)
-                seen.add(entry.key)
-            previous = entry.key
-            found.append(entry)
-            counts.append(len(residue))
+def _walk(
+    parsed: ParsedFile, model: gemmi.Model, flat: gemmi.FlatStructure
+) -> tuple[list[tuple[Key, Entry]], NDArray[np.int64]]:
+    """Return the residues of a model that hold atoms, and how many these are.
+
+    With each stands what tells it from all others: names of the chain, number,
+    insertion code; for ligands the name too.
+    """
+    residues = [residue for chain in model for residue in chain if len(residue)]
+    counts = np.array([len(residue) for residue in residues], dtype=np.int64)
+    first = int(np.argmax(flat.model_num == model.num)) + np.cumsum(counts) - counts
+    polymer = (flat.entity_type[first] == gemmi.EntityType.Polymer.value).tolist()
+    number = np.where(flat.resnums[first] == NO_NUMBER, 0, flat.resnums[first])
+    names = [residue.name for residue in residues]
+    place = (
+        [c.name for c in model for residue in c if len(residue)],
+        [residue.subchain for residue in residues],
+    )
+    numbers = number.tolist(), [chr(code).strip() for code in flat.icodes[first]]
+    own = ["" if is_own else n for is_own, n in zip(polymer, names, strict=True)]
+    kinds = [
+        POLYMER if is_own else (WATER if residue.is_water() else LIGAND)
+        for is_own, residue in zip(polymer, residues, strict=True)
+    ]
+    labels = [-1 if n is None else n for n in [r.label_seq for r in residues]]
+    keys: list[Key] = list(zip(*place, *numbers, own, strict=True))
+    columns = (kinds, *place, names, numbers[1], numbers[0], labels)
+    found = list(zip(keys, map(Entry, *columns), strict=True))
+    _refuse_repeated(parsed, found)
     return found, counts
 
 
-def _entry(chain_name: str, residue: gemmi.Residue) -> Entry:
-    if residue.entity_type == gemmi.EntityType.Polymer:
-        kind = POLYMER
-    else:
-        kind = WATER if residue.is_water() else LIGAND
-    number = residue.seqid.num
-    return Entry(
-        kind=kind,
-        auth_asym_id=chain_name,
-        label_asym_id=residue.subchain,
-        auth_comp_id=residue.name,
-        ins_code=residue.seqid.icode.strip(),
-        auth_seq_id=0 if number is None else number,
-        label_seq_id=-1 if residue.label_seq is None else residue.label_seq,
-    )
+def _refuse_repeated(parsed: ParsedFile, found: list[tuple[Key, Entry]]) -> None:
+    seen: set[Key] = set()
+    previous: Key | None = None
+    for key, entry in found:
+        if entry.kind == POLYMER and key != previous:
+            if key in seen:
+                number = f"{entry.auth_seq_id}{entry.ins_code}"
+                label = f"{entry.auth_asym_id}/{number}"
+                raise RepeatedResidueError(parsed.path, label)
+            seen.add(key)
+        previous = key
 
 
 def _atom_table(
-    content: gemmi.Structure,
-    used: set[int],
+    flat: gemmi.FlatStructure,
+    of_used: NDArray[np.bool_],
     entry: NDArray[np.int64],
     model: NDArray[np.int64],
 ) -> AtomTable:
-    flat = gemmi.FlatStructure(content)
-    of_used = np.isin(flat.model_num, list(used))
     hydrogen = np.isin(flat.elements, HYDROGENS)
     keep = np.flatnonzero(of_used & ~hydrogen & (flat.occ > 0))
     rank = np.cumsum(of_used) - 1
-    names = np.asarray(flat.atom_names)[keep]
-    elements = np.asarray(flat.element_names)[keep]
-    letters = np.ascontiguousarray(np.asarray(flat.altlocs)[keep]).view("S1")
     return AtomTable(
         entry=entry[rank[keep]],
         model=model[rank[keep]],
         position=flat.pos[keep],
-        name=np.ascontiguousarray(names).view("S8")[:, 0].astype(np.str_),
-        element=elements.astype(np.str_),
-        altloc=np.char.strip(letters.astype(np.str_)),
+        name=_text(flat.atom_names, keep),
+        element=_text(flat.element_names, keep),
+        altloc=_text(flat.altlocs, keep),
         occupancy=flat.occ[keep].astype(np.float64),
         b_iso=flat.b_iso[keep].astype(np.float64),
     )
+
+
+def _text(column: Any, keep: NDArray[np.int64]) -> NDArray[np.str_]:
+    """Return some rows of bytes padded with zeros or blanks as text."""
+    codes = np.ascontiguousarray(np.asarray(column)[keep])
+    codes = codes.view(np.uint8).reshape(len(keep), -1)
+    points = np.where(codes == ord(" "), 0, codes).astype(np.uint32)
+    return points.view(f"U{points.shape[1]}")[:, 0]
 
 
 def _check_positions(
@@ -228,14 +232,12 @@ def _check_merged(parsed: ParsedFile, entries: list[Entry], table: AtomTable) ->
 
 def _in_order(entries: list[Entry], table: AtomTable) -> tuple[list[Entry], AtomTable]:
     chains: dict[tuple[str, str], int] = {}
-    for entry in entries:
-        chains.setdefault(entry.chain, len(chains))
+    chain = np.array([chains.setdefault(e.chain, len(chains)) for e in entries])
+    kind = np.array([entry.kind for entry in entries])
     has_atoms = np.zeros(len(entries), dtype=np.bool_)
     has_atoms[table.entry] = True
-    order = sorted(
-        np.flatnonzero(has_atoms).tolist(),
-        key=lambda index: (entries[index].kind, chains[entries[index].chain], index),
-    )
+    order = np.flatnonzero(has_atoms)
+    order = order[np.lexsort((order, chain[order], kind[order]))]
     new_index = np.full(len(entries), -1)
     new_index[order] = np.arange(len(order))
     entry_of_atom = new_index[table.entry]
