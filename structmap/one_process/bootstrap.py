@@ -245,18 +245,25 @@ def find_detectable(
     few = np.geomspace(largest / 100, largest, _FEW_RATIOS)
     alternate = np.where(np.arange(n_sites) % 2 == 0, 0.5, -0.5)
 
-    def smallest(moves: FloatArray, steps: FloatArray) -> float:
-        values = solver.moved(state, steps[:, None] * moves)
-        shared, free = solver.minima(values, state)
-        growth = np.maximum(shared - free, 0.0) / max(scale, 1e-12)
-        power = freedom.power(growth, critical)
-        return _first_crossing(steps, power)
-
-    found = [smallest(alternate, sizes)]
     sample = np.unique(np.linspace(0, n_sites - 1, _MOST_ODD).astype(int))
-    for side in (1.0, -1.0):
-        ones = [smallest(side * np.eye(n_sites)[site], few) for site in sample]
-        found.append(float(np.median(ones)))
+    odd = np.eye(n_sites)[sample]
+    moves = np.concatenate(
+        [
+            sizes[:, None] * alternate,
+            *(few[:, None] * one for one in np.concatenate([odd, -odd])),
+        ]
+    )
+    growth = solver.growth(solver.moved(state, moves), state) / max(scale, 1e-12)
+    power = freedom.power(growth, critical)
+    ones = [
+        _first_crossing(few, part)
+        for part in power[_RATIOS:].reshape(2 * len(sample), _FEW_RATIOS)
+    ]
+    found = [
+        _first_crossing(sizes, power[:_RATIOS]),
+        float(np.median(ones[: len(sample)])),
+        float(np.median(ones[len(sample) :])),
+    ]
     split, one_up, one_down = (np.exp(size) if logarithmic else size for size in found)
     return Detectable(
         split=float(split), one_up=float(one_up), one_down=float(one_down)

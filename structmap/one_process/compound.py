@@ -6,34 +6,38 @@ projected out, and the parameter of each site is eliminated from the normal equa
 so that only a two by two system is left for the shared ones.
 """
 
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
-from structmap.one_process.damped import (
-    Grids,
+from structmap.one_process.damped import iterate
+from structmap.one_process.linear import LinearPart
+from structmap.one_process.model import FloatArray, Model
+from structmap.one_process.problems import (
     Problems,
     evaluate,
-    iterate,
     make_grids,
     project,
     take,
 )
-from structmap.one_process.linear import LinearPart
-from structmap.one_process.model import FloatArray, Model
 from structmap.one_process.profiles import Profiles
-from structmap.one_process.search import (
-    find_intervals,
-    from_axis,
-    parabola_minimum,
-    to_axis,
-)
+from structmap.one_process.search import find_intervals, from_axis, to_axis
+from structmap.one_process.secant import iterate_by_secants
 from structmap.one_process.simple import State
+from structmap.one_process.starts import (
+    FIXED_ROUNDS,
+    NODES_CLOSE,
+    fit_group_best,
+    fit_group_nodes,
+    fit_site_best,
+    fit_site_nodes,
+    make_coarse,
+)
 
-_STARTS = 5
-_FIXED_ROUNDS, _QUICK_ROUNDS, _POLISHING_ROUNDS = 20, 8, 400
-_NODES, _REPLICATES = 1e-6, 1e-4
+_QUICK_ROUNDS, _SECANT_ROUNDS = 8, 16
+_REPLICATES = 1e-4
 _CROSSING = 1e-5
 _CHUNK = 150_000
 """Points in one batch of problems; more replicates are taken in turns."""
@@ -102,45 +106,71 @@ class CompoundSolver:
         free : ndarray, shape (n_sets,)
             Summed over the sites alone.
         """
-        n_sets, n_sites, n_points = values.shape
-        size = max(1, _CHUNK // (n_sites * n_points))
-        found = [
-            self._minima(values[first : first + size], start)
-            for first in range(0, n_sets, size)
-        ]
-        shared, free = zip(*found, strict=True)
-        return np.concatenate(shared), np.concatenate(free)
+        parts = list(self._parts(values))
+        shared = np.concatenate([self._shared_minima(part, start) for part in parts])
+        free = np.concatenate([self._free_minima(part, start) for part in parts])
+        return shared, np.minimum(free, shared)
 
-    def _minima(
-        self, values: FloatArray, start: State
-    ) -> tuple[FloatArray, FloatArray]:
-        n_sets, n_sites, n_points = values.shape
-        root = np.broadcast_to(self.profiles.root_weight, values.shape)
-        axes, own = _axes(self.model, start), _local_axis(self.model, start.local)
+    def growth(self, values: FloatArray, start: State) -> FloatArray:
+        """Return what one shared value costs sets of values without noise.
+
+        Parameters
+        ----------
+        values : ndarray, shape (n_sets, n_sites, n_points)
+            Values that the model gives at each site exactly.
+        start : State
+            Where the searches start.
+
+        Returns
+        -------
+        ndarray, shape (n_sets,)
+            The lowest misfits with one value, for those of the sites alone are 0.
+        """
+        return np.concatenate(
+            [self._shared_minima(part, start) for part in self._parts(values)]
+        )
+
+    def _parts(self, values: FloatArray) -> Iterator[FloatArray]:
+        size = max(1, _CHUNK // values[0].size)
+        for first in range(0, len(values), size):
+            yield values[first : first + size]
+
+    def _shared_minima(self, values: FloatArray, start: State) -> FloatArray:
+        n_sets = len(values)
         group = Problems(
             value=values,
-            root_weight=root,
-            shared=np.tile(axes, (n_sets, 1)),
-            local=np.tile(own, (n_sets, 1)),
+            root_weight=np.broadcast_to(self.profiles.root_weight, values.shape),
+            shared=np.tile(_axes(self.model, start), (n_sets, 1)),
+            local=np.tile(_local_axis(self.model, start.local), (n_sets, 1)),
             chi2=np.full(n_sets, np.inf),
         )
+        return iterate_by_secants(
+            self.model,
+            self.profiles.x,
+            group,
+            tolerance=_REPLICATES,
+            rounds=_SECANT_ROUNDS,
+        ).chi2
+
+    def _free_minima(self, values: FloatArray, start: State) -> FloatArray:
+        n_sets, n_sites, n_points = values.shape
         flat = (n_sets * n_sites, 1, n_points)
+        root = np.broadcast_to(self.profiles.root_weight, values.shape)
         single = Problems(
             value=values.reshape(flat),
             root_weight=root.reshape(flat),
-            shared=np.tile(axes, (n_sets * n_sites, 1)),
-            local=np.tile(own, n_sets)[:, None],
+            shared=np.tile(_axes(self.model, start), (n_sets * n_sites, 1)),
+            local=np.tile(_local_axis(self.model, start.local), n_sets)[:, None],
             chi2=np.full(n_sets * n_sites, np.inf),
         )
-        x, model = self.profiles.x, self.model
-        shared = iterate(
-            model, x, group, tolerance=_REPLICATES, rounds=_QUICK_ROUNDS
-        ).chi2
-        free = iterate(
-            model, x, single, tolerance=_REPLICATES, rounds=_QUICK_ROUNDS
-        ).chi2
-        free = free.reshape(n_sets, n_sites).sum(axis=1)
-        return shared, np.minimum(free, shared)
+        found = iterate(
+            self.model,
+            self.profiles.x,
+            single,
+            tolerance=_REPLICATES,
+            rounds=_QUICK_ROUNDS,
+        )
+        return np.asarray(found.chi2.reshape(n_sets, n_sites).sum(axis=1))
 
     def fit_shared(self) -> tuple[float, float]:
         """Return position and misfit of the best shared value.
@@ -323,8 +353,8 @@ class CompoundSolver:
             self.model,
             self.profiles.x,
             moved,
-            tolerance=_NODES,
-            rounds=_FIXED_ROUNDS,
+            tolerance=NODES_CLOSE,
+            rounds=FIXED_ROUNDS,
             fixed=True,
         )
 
@@ -350,137 +380,16 @@ def make_compound_solver(model: Model, profiles: Profiles) -> CompoundSolver:
     and of each site are refined.
     """
     grids = make_grids(model, profiles.x)
-    coarse = _coarse_table(model, profiles, grids)
+    coarse = make_coarse(model, profiles, grids)
     return CompoundSolver(
         model=model,
         profiles=profiles,
         nodes=grids[0],
-        shared_nodes=_fit_group_nodes(model, profiles, coarse),
-        site_nodes=_fit_site_nodes(model, profiles, coarse),
-        best=_fit_group_best(model, profiles, coarse),
-        best_sites=_fit_site_best(model, profiles, coarse),
+        shared_nodes=fit_group_nodes(model, profiles, coarse),
+        site_nodes=fit_site_nodes(model, profiles, coarse),
+        best=fit_group_best(model, profiles, coarse),
+        best_sites=fit_site_best(model, profiles, coarse),
     )
-
-
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class _Coarse:
-    """Misfits on the grid of shared, companion and local parameters.
-
-    ``chi2`` and ``place`` have shape (n_sites, n_nodes * n_companion): the lowest
-    misfit over the local nodes, and at which of them.
-    """
-
-    grids: Grids
-    chi2: FloatArray
-    place: NDArray[np.int64]
-
-    def start(
-        self, node: NDArray[np.int64], place: NDArray[np.int64]
-    ) -> tuple[FloatArray, FloatArray]:
-        """Return shared and local positions of flat nodes and local nodes."""
-        axis, companion, local = self.grids
-        first, second = np.divmod(node, len(companion))
-        return np.column_stack([axis[first], companion[second]]), local[place]
-
-    @property
-    def shape(self) -> tuple[int, int, int]:
-        return len(self.chi2), len(self.grids[0]), len(self.grids[1])
-
-
-def _fit_group_best(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
-    order = np.argsort(coarse.chi2.sum(axis=0), kind="stable")[:_STARTS]
-    start = coarse.start(order, coarse.place[:, order].T)
-    found = iterate(
-        model,
-        profiles.x,
-        _group_problems(profiles, *start),
-    )
-    best = take(found, np.array([int(found.chi2.argmin())]))
-    # A valley towards equal populations is flat: the winner alone may go on.
-    return iterate(model, profiles.x, best, rounds=_POLISHING_ROUNDS)
-
-
-def _fit_group_nodes(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
-    _, n_nodes, n_companion = coarse.shape
-    total = coarse.chi2.sum(axis=0).reshape(n_nodes, n_companion)
-    node = np.arange(n_nodes) * n_companion + total.argmin(axis=1)
-    start = coarse.start(node, coarse.place[:, node].T)
-    problems = _group_problems(profiles, *start)
-    return iterate(
-        model, profiles.x, problems, tolerance=_NODES, rounds=_FIXED_ROUNDS, fixed=True
-    )
-
-
-def _fit_site_best(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
-    order = np.argsort(coarse.chi2, axis=1, kind="stable")[:, :_STARTS]
-    problems = _site_problems(profiles, coarse, order)
-    found = iterate(model, profiles.x, problems)
-    lowest = found.chi2.reshape(order.shape).argmin(axis=1)
-    return take(found, np.arange(len(order)) * order.shape[1] + lowest)
-
-
-def _fit_site_nodes(model: Model, profiles: Profiles, coarse: _Coarse) -> Problems:
-    n_sites, n_nodes, n_companion = coarse.shape
-    table = coarse.chi2.reshape(n_sites, n_nodes, n_companion)
-    node = np.arange(n_nodes) * n_companion + table.argmin(axis=2)
-    problems = _site_problems(profiles, coarse, node)
-    return iterate(
-        model, profiles.x, problems, tolerance=_NODES, rounds=_FIXED_ROUNDS, fixed=True
-    )
-
-
-def _group_problems(
-    profiles: Profiles, shared: FloatArray, local: FloatArray
-) -> Problems:
-    shape = (len(shared), *profiles.value.shape)
-    return Problems(
-        value=np.broadcast_to(profiles.filled, shape),
-        root_weight=np.broadcast_to(profiles.root_weight, shape),
-        shared=shared,
-        local=local,
-        chi2=np.full(len(shared), np.inf),
-    )
-
-
-def _site_problems(
-    profiles: Profiles, coarse: _Coarse, node: NDArray[np.int64]
-) -> Problems:
-    """Return problems of one site each, several flat nodes a site."""
-    place = np.take_along_axis(coarse.place, node, axis=1)
-    shared, local = coarse.start(node.ravel(), place.reshape(-1, 1))
-    each = node.shape[1]
-    return Problems(
-        value=np.repeat(profiles.filled, each, axis=0)[:, None],
-        root_weight=np.repeat(profiles.root_weight, each, axis=0)[:, None],
-        shared=shared,
-        local=local,
-        chi2=np.full(len(shared), np.inf),
-    )
-
-
-def _coarse_table(model: Model, profiles: Profiles, grids: Grids) -> _Coarse:
-    axis, companion, local = grids
-    n_sites = len(profiles.name)
-    chi2 = np.empty((n_sites, len(axis), len(companion)))
-    place = np.empty(chi2.shape, dtype=np.int64)
-    for row, column in np.ndindex(len(axis), len(companion)):
-        shared = np.tile([axis[row], companion[column]], (n_sites, 1))
-        each = np.tile(local, (n_sites, 1))
-        shape = (n_sites, len(local), len(profiles.x))
-        problems = Problems(
-            value=np.broadcast_to(profiles.filled[:, None], shape),
-            root_weight=np.broadcast_to(profiles.root_weight[:, None], shape),
-            shared=shared,
-            local=each,
-            chi2=np.full(n_sites, np.inf),
-        )
-        kernel = evaluate(model, profiles.x, shared[:1], each[:1])
-        kernel = np.broadcast_to(kernel, shape)
-        found = (project(model, problems, kernel).residual ** 2).sum(axis=-1)
-        place[:, row, column] = found.argmin(axis=1)
-        chi2[:, row, column] = parabola_minimum(found[..., None])[:, 0]
-    flat = (n_sites, -1)
-    return _Coarse(grids=grids, chi2=chi2.reshape(flat), place=place.reshape(flat))
 
 
 def _axes(model: Model, state: State) -> FloatArray:

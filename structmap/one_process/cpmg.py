@@ -14,6 +14,7 @@ from structmap.one_process.exchange import (
 from structmap.one_process.model import FloatArray, Model, Parameter
 
 ComplexArray = NDArray[np.complex128]
+_LEAST = 1e-100
 
 
 def exact_cpmg(cpmg_hertz: ArrayLike, sites: TwoSites) -> FloatArray:
@@ -159,7 +160,7 @@ def cpmg_model() -> Model:
     return Model(
         name="cpmg",
         describes="two-site exchange in a CPMG train",
-        function=_cpmg_part,
+        function=exchange_part_cpmg,
         shared=Parameter(
             name="k_ex", unit="s-1", bounds=lambda _: (10.0, 1e5), nodes=10
         ),
@@ -251,7 +252,51 @@ def _cycle(frequency: FloatArray, sites: TwoSites) -> ComplexArray:
     return np.asarray(propagate(time) @ propagate(2 * time).conj() @ propagate(time))
 
 
-def _cpmg_part(
-    x: FloatArray, rate: FloatArray, major: FloatArray, shift: FloatArray
+def exchange_part_cpmg(
+    cpmg_hertz: ArrayLike,
+    exchange_rate: ArrayLike,
+    major_population: ArrayLike,
+    shift_difference: ArrayLike,
 ) -> FloatArray:
-    return _cpmg_rate(np.asarray(x), rate, major, shift, rates=np.zeros(2))
+    """Return what two-site exchange adds to R2eff where both states relax alike.
+
+    Parameters
+    ----------
+    cpmg_hertz : array_like
+        CPMG frequencies in Hz, above 0.
+    exchange_rate, major_population, shift_difference : array_like
+        In s^-1, as the population p_A, and in rad/s; all broadcast.
+
+    Returns
+    -------
+    ndarray of float
+        In s^-1, of the common shape; equal to `exact_cpmg` without relaxation.
+
+    Notes
+    -----
+    The largest eigenvalue of one cycle in real numbers. With k = k_ex and
+    s^2 = (k^2 - dw^2)^2 + (2 dw k (1 - 2 p_A))^2 its logarithm is the arccosh of
+    cosh e + (k^2 + dw^2 - s) / (2 s) (cosh e - cos f) with e^2, f^2 = tcp^2 (s +- (k^2
+    - dw^2)) / 2; sums of squares stand for the differences, so that no digits are lost
+    where s is small, and exp(e) is taken out, so that long spacings do not overflow.
+    """
+    spacing = 1 / (2 * np.asarray(cpmg_hertz, dtype=np.float64))
+    rate, major, shift = (
+        np.asarray(part, dtype=np.float64)
+        for part in (exchange_rate, major_population, shift_difference)
+    )
+    rate2, shift2 = rate**2, shift**2
+    psi = rate2 - shift2
+    zeta = np.maximum(2 * shift * rate * np.abs(1 - 2 * major), _LEAST)
+    size = np.hypot(psi, zeta)
+    larger = (size + np.abs(psi)) / 2
+    smaller = zeta**2 / (4 * larger)
+    grow = np.sqrt(np.where(psi > 0, larger, smaller))
+    turn = np.sqrt(np.where(psi > 0, smaller, larger))
+    mixing = 8 * rate2 * shift2 * major * (1 - major) / (rate2 + shift2 + size)
+    lost = -np.expm1(-spacing * grow)
+    kept = 1 - lost
+    sinh = lost**2 / 2
+    above = sinh + mixing / size * (sinh + 2 * kept * np.sin(spacing * turn / 2) ** 2)
+    scaled = kept + above + np.sqrt(above * (above + 2 * kept))
+    return np.asarray((rate - grow - np.log(scaled) / spacing) / 2)

@@ -111,6 +111,24 @@ class SimpleSolver:
             free.append(parabola_minimum(table).sum(axis=0))
         return np.concatenate(shared), np.concatenate(free)
 
+    def growth(self, values: FloatArray, start: State) -> FloatArray:
+        """Return what one shared value costs sets of values without noise.
+
+        Parameters
+        ----------
+        values : ndarray, shape (n_sets, n_sites, n_points)
+            Sets of values; finite where missing.
+        start : State
+            Unused: the grid finds the minima.
+
+        Returns
+        -------
+        ndarray, shape (n_sets,)
+            Misfit with one value less that of the sites alone.
+        """
+        shared, free = self.minima(values, start)
+        return np.asarray(np.maximum(shared - free, 0.0))
+
     def fit_shared(self) -> tuple[float, float]:
         """Return position and misfit of the best shared value.
 

@@ -14,6 +14,7 @@ from structmap.one_process.cpmg import (
     carver_richards_cpmg,
     constant_time_cpmg,
     exact_cpmg,
+    exchange_part_cpmg,
     luz_meiboom_cpmg,
 )
 from structmap.one_process.exchange import (
@@ -150,6 +151,24 @@ def test_propagator_equals_carver_and_richards(rate, major, shift, field, minor_
     assert exact_cpmg([field], sites)[0] == pytest.approx(
         carver_richards_cpmg([field], sites)[0], rel=1e-6, abs=1e-6
     )
+
+
+@given(
+    rate=st.floats(10, 2e5),
+    major=st.floats(0.5, 0.99),
+    shift=st.floats(30, 2e4),
+    field=st.floats(10, 5000),
+)
+def test_fast_cpmg_part_equals_the_propagator(rate, major, shift, field):
+    sites = pair(rate, major, shift, r1=0.0, r2=0.0)
+    found = exchange_part_cpmg([field], rate, major, shift)[0]
+    assert found == pytest.approx(exact_cpmg([field], sites)[0], rel=1e-6, abs=1e-6)
+
+
+def test_fast_cpmg_part_where_both_decays_of_free_evolution_coincide():
+    sites = pair(1000.0, 0.5, 1000.0, r1=0.0, r2=0.0)
+    found = exchange_part_cpmg([50.0, 200.0], 1000.0, 0.5, 1000.0)
+    np.testing.assert_allclose(found, exact_cpmg([50.0, 200.0], sites), rtol=1e-6)
 
 
 def test_cpmg_rate_equals_a_general_matrix_exponential():
