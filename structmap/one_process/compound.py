@@ -192,32 +192,29 @@ class CompoundSolver:
         """
         return self.best_sites.shared[:, 0], self.best_sites.chi2
 
-    def interval(self, best: float, limit: float) -> tuple[float, float]:
-        """Return where the shared misfit crosses a limit, NaN at an open end.
+    def intervals(self, best: float, limits: FloatArray) -> FloatArray:
+        """Return where the shared misfit crosses limits.
 
         Parameters
         ----------
         best : float
             Position of the lowest misfit.
-        limit : float
-            The limit.
+        limits : ndarray, shape (n_limits,)
+            The limits.
 
         Returns
         -------
-        low : float
-            Position below the minimum.
-        high : float
-            Position above it.
+        ndarray, shape (n_limits, 2)
+            Positions below and above the minimum, NaN at an open end.
         """
-        found = find_intervals(
+        return find_intervals(
             lambda at: self._at(at).chi2,
             self.nodes,
-            self.shared_profile[None],
-            best=np.array([best]),
-            limit=np.array([limit]),
+            np.tile(self.shared_profile, (len(limits), 1)),
+            best=np.full(len(limits), best),
+            limit=limits,
             close=_CROSSING,
         )
-        return float(found[0, 0]), float(found[0, 1])
 
     def site_intervals(self, best: FloatArray, limit: FloatArray) -> FloatArray:
         """Return where the misfit of each site crosses its limit.

@@ -112,8 +112,8 @@ def describe_fit(solver: Solver) -> GroupFit:
     freedom = points - model.n_own * len(sites) - model.n_shared
     scale = chi2_shared / freedom if freedom > 0 else 1.0
     rise = interval_rise(chi2_shared, freedom)
-    scaled = solver.interval(position, chi2_shared + rise)
-    stated = solver.interval(position, chi2_shared + STATED_LIMIT)
+    above = np.array([rise, STATED_LIMIT])
+    scaled, stated = solver.intervals(position, chi2_shared + above)
     ranges = solver.site_intervals(sites, chi2_sites + STATED_LIMIT)
     fitted = fitted_values(state, state.kernel)
     residual = np.where(profiles.present, profiles.value - fitted, np.nan)

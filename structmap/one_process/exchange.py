@@ -11,9 +11,10 @@ FAST_LIMIT = 8.0
 """Exchange is fast, and populations cannot be told, above this ratio of k_ex to the
 shift difference: then the fast-exchange formula biases k_ex by at most 3 %."""
 _REAL_TOLERANCE = 1e-9
-_ROOT_STEPS, _MORE_STEPS = 5, 25
+_ROOT_STEPS, _MORE_STEPS = 4, 16
 _SETTLED = 1e-5
 """Halley's steps are cubic: after one this small 1e-15 is left."""
+_LOWEST = -0.25 + 1e-9
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -274,8 +275,7 @@ def exchange_part_r1rho(
         for part in (exchange_rate, major_population, shift_difference)
     )
     offset = 2 * np.pi * offset_hertz
-    decay, step = _slowest_root(lock**2, offset, rate, major, shift)
-    good = (np.abs(step) <= 1e-8 * np.abs(decay) + 1e-10) & (decay >= -1e-9)
+    decay, good = _slowest_root(lock**2, offset, rate, major, shift)
     if not good.all():
         parts = (
             np.broadcast_to(part, good.shape)[~good]
@@ -318,51 +318,49 @@ def _slowest_root(
     rate: FloatArray,
     major: FloatArray,
     shift: FloatArray,
-) -> tuple[FloatArray, FloatArray]:
-    """Return the first root above 0 of det(M + R), without relaxation, and its step.
+) -> tuple[FloatArray, NDArray[np.bool_]]:
+    """Return the first root above 0 of det(M + R), without relaxation, and if it holds.
 
     The blocks that exchange makes are multiples of the identity, so that the
     determinant of the 6 x 6 matrix is a cubic in q = R (R - k), with one term more off
-    resonance or at unequal populations; only its coefficients depend on the field.
-    Halley's iteration starts from 0.
+    resonance or at unequal populations; only its coefficients depend on the field. The
+    roots R and k - R have one q, so that q stays a simple root where those two meet.
+    Halley's iteration starts from q = 0 and goes down to -k^2 / 4 at most.
     """
     first, second = offset - (1 - major) * shift, offset + major * shift
     total, product = first + second, first * second
-    uneven = (0.5 - major) * shift
-    rate2 = rate**2
-    odd = rate * uneven * total
+    uneven, rate2 = (0.5 - major) * shift, rate**2
     square = 2 * lock2 + (total**2 - 2 * product)
     linear = (lock2 + (rate2 + total**2 - 2 * product)) * lock2 + (
         product**2 + rate2 * (total**2 / 4 + uneven**2)
     )
     constant = lock2 * (rate2 * shift**2 * major * (1 - major))
-    parts = (square, linear, constant, odd, rate)
-    decay = np.zeros(constant.shape)
+    parts = (square, linear, constant, rate * uneven * total, rate2)
+    root, step = np.zeros(constant.shape), np.zeros(constant.shape)
     for _ in range(_ROOT_STEPS):
-        step = _halley_step(decay, parts)
-        decay -= step
-        moving = np.abs(step) > _SETTLED * np.abs(decay) + 1e-11
-        if not moving.any():
-            return decay, step
-    few = tuple(np.broadcast_to(part, decay.shape)[moving] for part in parts)
-    for _ in range(_MORE_STEPS):
-        step[moving] = _halley_step(decay[moving], few)
-        decay[moving] -= step[moving]
-    return decay, step
+        root, step = _halley(root, parts)
+    moving = np.abs(step) > _SETTLED * np.abs(root)
+    few = tuple(np.broadcast_to(part, root.shape)[moving] for part in parts)
+    for _ in range(_MORE_STEPS if moving.any() else 0):
+        root[moving], step[moving] = _halley(root[moving], few)
+    good = (np.abs(step) <= _SETTLED * np.abs(root)) & (root > _LOWEST * rate2)
+    return -2 * root / (rate + np.sqrt(rate2 + 4 * root)), good
 
 
-def _halley_step(decay: FloatArray, parts: tuple[FloatArray, ...]) -> FloatArray:
-    square, linear, constant, odd, rate = parts
-    turn, quadratic = 2 * decay - rate, decay * (decay - rate)
-    inner = (3 * quadratic + 2 * square) * quadratic + linear
-    value = ((quadratic + square) * quadratic + linear - odd * turn) * quadratic
-    value += constant
-    slope = turn * inner - odd * (6 * quadratic + rate**2)
-    bend = 2 * inner + turn * (turn * (6 * quadratic + 2 * square) - 6 * odd)
+def _halley(
+    root: FloatArray, parts: tuple[FloatArray, ...]
+) -> tuple[FloatArray, FloatArray]:
+    """Return the next root and the step to it."""
+    square, linear, constant, odd, rate2 = parts
+    width = np.sqrt(rate2 + 4 * root)
+    value = ((root + square) * root + linear + odd * width) * root + constant
+    slope = (3 * root + 2 * square) * root + linear + odd * (width + 2 * root / width)
+    bend = 6 * root + 2 * square + 4 * odd * (1 - root / width**2) / width
     below = 2 * slope**2 - value * bend
-    return np.divide(
+    step = np.divide(
         2 * value * slope, below, out=np.zeros_like(value), where=below != 0
     )
+    return np.maximum(root - step, -rate2 / 4 * (1 - 1e-12)), step
 
 
 def _bloch_mcconnell(lock: FloatArray, offset: float, sites: TwoSites) -> FloatArray:

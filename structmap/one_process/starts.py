@@ -48,8 +48,10 @@ class Coarse:
 
         Returns
         -------
-        shared, local : ndarray of float
-            Positions on the axes.
+        shared : ndarray of float
+            Positions on the axes of shared parameter and companion.
+        local : ndarray of float
+            Positions on the axis of the local parameter.
         """
         axis, companion, local = self.grids
         first, second = np.divmod(node, len(companion))

@@ -39,9 +39,7 @@ def solved(name, *, rates=(1500.0,) * 5, seed=2):
                     r2=10.0,
                 ),
             )
-            for rate, shift in zip(
-                rates, rng.uniform(400, 1500, len(rates)), strict=True
-            )
+            for rate, shift in zip(rates, shifts, strict=True)
         ]
     )
     noise = 0.03 * true * rng.standard_normal(true.shape)
