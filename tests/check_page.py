@@ -4,9 +4,11 @@ Run as ``python -m tests.check_page FOLDER``; ends with status 1 and a line a fa
 """
 
 import base64
+import gzip
 import hashlib
 import html
 import io
+import json
 import os
 import re
 import shutil
@@ -164,6 +166,8 @@ def find_faults_in_browser(path: Path, chromium: str) -> list[str]:
             page.goto(address)
             page.wait_for_selector("html[data-ready='1']", timeout=READY_MILLISECONDS)
             faults.extend(_picture_faults(page))
+            fits = data_of(path.read_text(encoding="utf-8")).get("fits", [])
+            faults.extend(_fit_faults(page, fits))
         except Error as error:
             faults.append(f"the page never got ready: {str(error).splitlines()[0]}")
         finally:
@@ -190,6 +194,32 @@ def _picture_faults(page) -> Iterator[str]:
     share = share_drawn(page.locator("canvas").first.screenshot())
     if share <= SHARE_DRAWN:
         yield f"only {share:.3f} of the picture is drawn"
+
+
+def data_of(page: str) -> dict:
+    """Return the block of data of a page, unpacked."""
+    block = re.search(
+        r'<script type="application/json" id="data">(.*?)</script>', page, re.DOTALL
+    )
+    data = json.loads(block[1]) if block else {}
+    if "gzip" in data:
+        data = json.loads(gzip.decompress(base64.b64decode(data["gzip"])))
+    return data
+
+
+def _fit_faults(page, fits: list[dict | None]) -> Iterator[str]:
+    """Each unit with a fit has its interval, and its plot when it is chosen."""
+    for unit, fit in enumerate(fits):
+        if fit is None:
+            continue
+        row = page.locator(f'#unit-rows tr[data-unit="{unit}"]')
+        if row.locator(".drawn-interval[aria-label]").count() != 1:
+            yield f"unit {unit + 1}: the interval of its shared value is not drawn"
+        if row.locator("button.unit").count() == 1:
+            row.locator("button.unit").click()
+        if page.locator(".misfit .curve[d^='M']").count() != 1:
+            yield f"unit {unit + 1}: chi-square against its shared value is not drawn"
+        page.keyboard.press("Escape")
 
 
 def share_drawn(png: bytes) -> float:

@@ -95,3 +95,16 @@ def test_a_page_that_never_gets_ready_is_found_in_the_browser(
     assert "never got ready" in found
     assert "script error: x" in found
     assert "asks for http://localhost:9/a.png" in found
+
+
+def test_a_fit_that_is_not_drawn_is_found_in_the_browser(tmp_path, chromium):
+    page = tmp_path / "page.html"
+    page.write_text(
+        '<html data-ready="1" data-gl="0"><table id="unit-rows"><tr data-unit="1">'
+        '<td><button class="unit">U2</button></table><script type="application/json" '
+        'id="data">{"fits": [null, {"lowest": 1}]}</script></html>'
+    )
+    found = "\n".join(find_faults_in_browser(page, chromium))
+    assert "unit 2: the interval of its shared value is not drawn" in found
+    assert "unit 2: chi-square against its shared value is not drawn" in found
+    assert "unit 1" not in found

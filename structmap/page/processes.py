@@ -1,10 +1,11 @@
 """The fits of one shared value to the units, as the page draws them."""
 
+from collections.abc import Callable
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.interpolate import PchipInterpolator
+from scipy.interpolate import CubicSpline
 
 from structmap import words
 from structmap.one_process import GroupFit, OneProcess, prefix_of, site_names
@@ -13,6 +14,7 @@ from structmap.page.markup import mark_text, mark_unit
 from structmap.result import AnalysisRecord
 
 CURVE_POINTS = 81
+APART = 0.2
 ROOM = 2.0
 """Misfit is shown up to so many times the rise to its limit above the limit."""
 
@@ -137,17 +139,12 @@ def misfit_curve(fit: GroupFit) -> tuple[NDArray[np.float64], NDArray[np.float64
         end of the range searched; values of sites alone lie within where a factor of
         three, or a third of the range, suffices.
     misfit : ndarray of float, shape (81,)
-        Through the nodes of the fit, its lowest point and the ends of its interval,
-        by cubic pieces that keep to rise and fall between them.
+        A cubic spline through the nodes of the fit, its lowest point and the ends of
+        its interval, on the axis of the parameter.
     """
     log = fit.model.shared.scale == "log"
     forth, back = (np.log, np.exp) if log else (np.asarray, np.asarray)
-    ends = np.array([v for v in (fit.low, fit.high) if np.isfinite(v)])
-    known = np.concatenate([fit.grid, np.array([fit.best]), ends])
-    at_ends = np.full(len(ends), fit.interval_limit)
-    height = np.concatenate([fit.grid_shared, np.array([fit.chi2_shared]), at_ends])
-    node, first = np.unique(forth(known), return_index=True)
-    curve = PchipInterpolator(node, height[first])
+    node, curve = _smooth_misfit(fit, forth)
     top = fit.interval_limit + ROOM * (fit.interval_limit - fit.chi2_shared)
     fine = np.linspace(node[0], node[-1], 20 * len(node))
     below = np.flatnonzero(curve(fine) <= top)
@@ -157,3 +154,21 @@ def misfit_curve(fit: GroupFit) -> tuple[NDArray[np.float64], NDArray[np.float64
     near = free[(free > low - reach) & (free < high + reach)]
     at = np.linspace(min(low, *near, high), max(high, *near, low), CURVE_POINTS)
     return np.asarray(back(at)), np.asarray(curve(at))
+
+
+def _smooth_misfit(
+    fit: GroupFit, forth: Callable[..., NDArray[np.float64]]
+) -> tuple[NDArray[np.float64], CubicSpline]:
+    """Return nodes on the axis and the spline; exact points need room beside nodes."""
+    node = np.asarray(forth(fit.grid))
+    exact = np.array([fit.best, fit.low, fit.high])
+    height = np.array([fit.chi2_shared, fit.interval_limit, fit.interval_limit])
+    at = np.asarray(forth(exact))
+    apart = np.abs(at[:, None] - node).min(axis=1) > APART * np.diff(node).min()
+    known = np.isfinite(at) & apart
+    _, first = np.unique(at, return_index=True)
+    known &= np.isin(np.arange(len(at)), first)
+    place = np.concatenate([node, at[known]])
+    order = np.argsort(place)
+    value = np.concatenate([fit.grid_shared, height[known]])[order]
+    return node, CubicSpline(place[order], value)

@@ -18,6 +18,7 @@ from structmap.words.limits import find_gaps, gap_note
 from structmap.words.misfit import misfit_caption, misfit_figures, shown_fit
 from structmap.words.names import (
     errors_off_baseline,
+    fitted_site_names,
     measured_chains,
     number_in_words,
     site_name,
@@ -43,6 +44,7 @@ __all__ = [
     "errors_off_baseline",
     "facts",
     "find_gaps",
+    "fitted_site_names",
     "gap_note",
     "grouped_quantities",
     "joining_numerals",
