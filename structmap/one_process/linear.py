@@ -196,12 +196,17 @@ def _forbid_negative_baseline(
         out=np.zeros_like(basis.mean),
         where=basis.centred_length > 0,
     )
-    steepest = ratio.max(axis=1) * along.max(axis=(1, 2))
-    for site in np.nonzero(level.min(axis=1) < steepest)[0]:
-        held = (level[site] < ratio[site, :, None] * along[site]) & (along[site] > 0)
+    # Only nodes where the largest amplitude would pull the lowest level below 0.
+    doubtful = ratio * along.max(axis=2) > level.min(axis=1)[:, None]
+    for site in np.nonzero(doubtful.any(axis=1))[0]:
+        nodes = np.nonzero(doubtful[site])[0]
+        size = along[site, nodes]
+        held = (level[site] < ratio[site, nodes, None] * size) & (size > 0)
         if held.any():
-            through_zero = np.maximum(basis.raw[site] @ values[site], 0.0)
-            chi2[site][held] = (total[site] - through_zero**2)[held]
+            through_zero = np.maximum(basis.raw[site, nodes] @ values[site], 0.0)
+            chi2[site, nodes] = np.where(
+                held, total[site] - through_zero**2, chi2[site, nodes]
+            )
 
 
 def _scaled(

@@ -69,17 +69,34 @@ def find_reference_p(
     )
     points = outside.present.sum(axis=1)
     each = fit.model.n_own + fit.model.n_shared
-    found = [_table_statistic(table[one], points[one], each) for one in drawn]
-    own = _table_statistic(fit.grid_chi2, fit.profiles.present.sum(axis=1), each)
-    return float((1 + np.count_nonzero(np.array(found) <= own)) / (len(found) + 1))
+    found = _set_statistics(table, points, drawn, each=each)
+    whole = (np.arange(size),)
+    own = _set_statistics(
+        fit.grid_chi2, fit.profiles.present.sum(axis=1), whole, each=each
+    )[0]
+    return float((1 + np.count_nonzero(found <= own)) / (len(found) + 1))
 
 
-def _table_statistic(table: FloatArray, points: NDArray[np.int64], each: int) -> float:
-    shared = float(parabola_minimum(table.sum(axis=0)[:, None])[0])
-    free = float(parabola_minimum(table[..., None]).sum())
-    within = max(int(points.sum()) - each * len(table), 1)
-    growth = max(shared - free, 0.0) / max(len(table) - 1, 1)
-    return growth / max(free / within, 1e-300)
+def _set_statistics(
+    table: FloatArray,
+    points: NDArray[np.int64],
+    sets: Sequence[NDArray[np.int64]],
+    *,
+    each: int,
+) -> FloatArray:
+    """Return F of sets of sites from misfits at nodes, all sets of a size at once."""
+    free_misfit = parabola_minimum(table.T[None])[0]
+    sizes = np.array([len(one) for one in sets])
+    out = np.empty(len(sets))
+    for size in np.unique(sizes):
+        which = np.nonzero(sizes == size)[0]
+        members = np.stack([sets[number] for number in which])
+        shared = parabola_minimum(table[members].sum(axis=1).T[None])[0]
+        free = free_misfit[members].sum(axis=1)
+        within = np.maximum(points[members].sum(axis=1) - each * size, 1)
+        growth = np.maximum(shared - free, 0.0) / max(size - 1, 1)
+        out[which] = growth / np.maximum(free / within, 1e-300)
+    return out
 
 
 def find_wild_points(fit: GroupFit) -> tuple[str, ...]:

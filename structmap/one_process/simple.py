@@ -22,8 +22,8 @@ from structmap.one_process.search import (
     to_axis,
 )
 
-_CHUNK = 2_000_000
-"""Numbers in one table of misfits; more replicates are taken in turns."""
+_CHUNK = 300_000
+"""Numbers in one table of misfits, few enough for the cache of a processor."""
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
