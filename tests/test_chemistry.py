@@ -31,6 +31,10 @@ COUNTS = {
     ("1orc.pdb", "cation-pi"): (2, 0, 2),
     ("1gbt.cif.gz", "cation-pi"): (6, 0, 0),
     ("4cup.cif.gz", "cation-pi"): (5, 0, 1),
+    ("1a8o.pdb.gz", "salt bridge"): (2, 0, 2),
+    ("2xhe.pdb.gz", "salt bridge"): (49, 4, 5),
+    ("1a8o.pdb.gz", "hydrogen bond"): (126, 2, 8),
+    ("1a8o.pdb.gz", "disulfide"): (1, 0, 0),
     ("1gbt.cif.gz", "disulfide"): (6, 0, 0),
     ("4zhl.cif.gz", "disulfide"): (6, 0, 0),
 }
@@ -41,6 +45,7 @@ BRIDGED = {
     "1gbt.cif.gz": ((128, 0, 14), (36, 0, 12)),
     "4cup.cif.gz": ((70, 2, 20), (10, 0, 6)),
     "3jqh.cif": ((6, 9, 5), (1, 5, 2)),
+    "1a8o.pdb.gz": ((35, 4, 18), (7, 2, 6)),
 }
 
 

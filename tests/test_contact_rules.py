@@ -59,6 +59,9 @@ def columns(contacts, *names):
         ("4cup.cif.gz", 4.0, (459, 16, 39)),
         ("4cup.cif.gz", 5.0, (548, 20, 55)),
         ("4cup.cif.gz", 6.0, (658, 31, 85)),
+        ("1a8o.pdb.gz", 4.0, (278, 12, 25)),
+        ("1a8o.pdb.gz", 5.0, (334, 17, 41)),
+        ("1a8o.pdb.gz", 6.0, (402, 28, 63)),
         ("1lzh.pdb.gz", 7.5, (1106, 0, 84)),
         ("1lzh.pdb.gz", 8.0, (1261, 0, 113)),
     ],
@@ -130,6 +133,30 @@ def test_an_ensemble_has_the_contacts_of_half_of_its_models():
         assert distance == pytest.approx(sorted(distances[a, b])[6])
         assert share == pytest.approx(within[a, b] / 14)
         assert n_atom_pairs == of_first.get((a, b), 0)
+
+
+@pytest.mark.parametrize(
+    ("name", "first", "half", "every", "ever"),
+    [
+        ("1as5.cif.gz", 68, 67, 51, 93),
+        ("2ofg.cif.gz", 347, 287, 242, 400),
+    ],
+)
+def test_contacts_of_ensembles_in_one_half_all_or_any_model(
+    name, first, half, every, ever
+):
+    """By the same enumeration as COUNTS."""
+    structure = read_structure(DATA / name)
+    models = []
+    for number in range(structure.n_models):  # some residues are not in every model
+        alone = read_structure(DATA / name, model=number + 1)
+        label = alone.auth_seq_id
+        pairs = columns(contacts_of(alone))
+        models.append({(int(label[a]), int(label[b])) for a, b in pairs})
+    assert len(models[0]) == first
+    assert len(contacts_of(structure).kind) == half
+    assert len(set.intersection(*models)) == every
+    assert len(set.union(*models)) == ever
 
 
 def test_a_chosen_part_of_an_ensemble_need_not_be_in_every_model():

@@ -81,6 +81,9 @@ TOTALS = {
     "4cup.cif.gz": (7751, 576, 1606),
     "4zhl.cif.gz": (12916, 1464, 3288),
     "3jqh.cif": (2583, 1329, 408),
+    "1a8o.pdb.gz": (4667, 552, 1325),
+    "1a7g.cif.gz": (5332, 909, 659),
+    "2xhe.pdb.gz": (42241, 4538, 2743),
 }
 
 
@@ -103,6 +106,13 @@ INTERFACES = {
         (LATTICE, 596, 15),
     ],
     "4zhl.cif.gz": [(COMPLEX, 1461, 45), (LATTICE, 992, 28)],
+    "1a8o.pdb.gz": [
+        (COMPLEX, 1108, 14),
+        (LATTICE, 589, 18),
+        (LATTICE, 583, 14),
+        (LATTICE, 160, 3),
+    ],
+    "1a7g.cif.gz": [(COMPLEX, 1817, 28), (LATTICE, 613, 17), (LATTICE, 93, 1)],
 }
 
 

@@ -21,6 +21,7 @@ from structmap.lattice import (
     number_crystal_contacts,
     verdict_by_graph,
 )
+from structmap.quotient import lay_out_unit
 from structmap.settings import Settings
 from structmap.structure import POLYMER, read_structure
 from tests.quotient.cases import sites_of
@@ -228,3 +229,32 @@ def test_an_analysis_numbers_its_crystal_contacts_once(monkeypatch, tmp_path):
     assert [c.numeral for c in numbered.crystal_contacts] == [
         neighbour.numeral for neighbour in result.record.packing.neighbours
     ]
+
+
+# Units of the lattice, with the cutoffs from which contacts of the chain, with those of
+# the assembly, with those of the lattice hold them together. From an enumeration of
+# contacts with a program of its own.
+UNIT_1A8O = [162, 165, 166, 169, 173, 182, 187, *range(204, 210), 211, 213]
+UNIT_4CUP = [1867, 1870, *range(1883, 1886), 1916, *range(1918, 1923), 1924, 1952]
+UNIT_4CUP += [1955, 1956, 1959, 1960, 1963]
+
+
+@pytest.mark.parametrize(
+    ("name", "numbers", "distances", "order", "closes"),
+    [
+        ("1a8o.pdb.gz", UNIT_1A8O, (4.69, 4.69, 3.38), 2, "rod"),
+        ("4cup.cif.gz", UNIT_4CUP, (14.19, 14.19, 3.76), 1, "finite"),
+    ],
+)
+def test_joining_distances_and_closure_of_units_across_the_lattice(
+    name, numbers, distances, order, closes
+):
+    structure = read_structure(DATA / name)
+    _, verdict, held = hold_of(structure, numbers)
+    assert [round(d, 2) for d in verdict.joining_distance_angstrom] == [*distances]
+    layout = lay_out_unit(
+        np.arange(len(numbers)), structure, sites=held.sites, contacts=held.contacts
+    )
+    assert [level.is_covered for level in layout.levels] == [False, False, True]
+    closure = layout.levels[-1].closure
+    assert (closure.order, closure.closes) == (order, closes)

@@ -8,9 +8,14 @@ from structmap.contacts import Contacts, choose_assemblies, find_contacts
 from structmap.sites import Sites
 from structmap.structure import POLYMER, Structure, read_structure
 
+DATA = Path(__file__).parent.parent / "data"
+
 
 def archive(data_folder: Path, name: str) -> Structure:
-    return read_structure(data_folder / "archive" / name)
+    committed = DATA / name
+    return read_structure(
+        committed if committed.exists() else data_folder / "archive" / name
+    )
 
 
 def contacts_of(

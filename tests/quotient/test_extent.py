@@ -25,6 +25,8 @@ EXTENTS = [
     ("3wup.json.gz", "auto", "finite", 1, []),
     ("3wup.json.gz", "2", "ring", 3, []),
     ("4zhl.cif.gz", "auto", "finite", 1, []),
+    ("1a8o.pdb.gz", "auto", "ring", 2, []),
+    ("1a7g.cif.gz", "auto", "ring", 2, []),
     ("7cfn.cif.gz", "auto", "finite", 1, []),
 ]
 
@@ -45,6 +47,7 @@ def test_extent_of_assemblies(data_folder, name, choice, closes, order, periods)
     [
         *(("3jqh.cif", 8), ("5e5z.pdb", 2), ("1orc.pdb", 4), ("4oz7.pdb", 4)),
         *(("1pfe.cif.gz", 12), ("3wup.json.gz", 12), ("4cup.cif.gz", 4)),
+        *(("1a8o.pdb.gz", 8), ("1a7g.cif.gz", 12), ("5wkd.pdb", 2), ("5i55.cif", 2)),
     ],
 )
 def test_all_contacts_of_a_crystal_make_its_whole_net(data_folder, name, order):
@@ -114,6 +117,7 @@ def node(chain, operator, cells, n_cells, n_operators):
         *(("3jqh.cif", "auto"), ("5e5z.pdb", "auto"), ("5wkd.pdb", "auto")),
         *(("5i55.cif", "auto"), ("1orc.pdb", "auto"), ("4cup.cif.gz", "auto")),
         *(("3wup.json.gz", "2"), ("4oz7.pdb", "auto"), ("1pfe.cif.gz", "auto")),
+        ("1a8o.pdb.gz", "auto"),
     ],
 )
 def test_pieces_on_a_torus_grow_with_what_the_rank_leaves(data_folder, name, choice):
