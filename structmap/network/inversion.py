@@ -4,12 +4,12 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.linalg import solve_triangular
 from scipy.sparse import coo_array, csc_array, csr_array
 from scipy.sparse.csgraph import connected_components
 from scipy.sparse.linalg import SuperLU, splu
 
 SOLVED_AT_ONCE = 256
+ROWS_ONE_BY_ONE = 12
 
 
 def fluctuations_of(laplacian: csr_array) -> NDArray[np.float64]:
@@ -155,7 +155,9 @@ def _closed_pattern(lower: csc_array) -> csc_array:
         wanted = np.flatnonzero(row > parent)
         wanted = wanted[parent[wanted] >= 0]
         keys = column * n_rows + row
-        lacking = np.setdiff1d(parent[wanted] * n_rows + row[wanted], keys)
+        asked = parent[wanted] * n_rows + row[wanted]
+        place = np.minimum(np.searchsorted(keys, asked), len(keys) - 1)
+        lacking = np.unique(asked[keys[place] != asked])
         if not len(lacking):
             return lower
         zeros = np.zeros(len(lacking))
@@ -226,11 +228,7 @@ def _front(
     for offset in range(width):
         first = lower.indptr[start + offset]
         columns[offset:, offset] = lower.data[first : first + len(rows) - offset]
-    inverse = np.eye(width)
-    if width > 1:
-        inverse = solve_triangular(
-            columns[:width], inverse, lower=True, unit_diagonal=True, check_finite=False
-        )
+    inverse = _inverse_of_lower(columns[:width])
     reach = columns[width:] @ inverse
     across = -known @ reach
     front = np.empty((len(rows), len(rows)))
@@ -240,6 +238,25 @@ def _front(
     own = inverse / pivots[start : start + width, None]
     front[:width, :width] = inverse.T @ own - reach.T @ across
     return front
+
+
+def _inverse_of_lower(lower: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return the inverse of a lower triangle with ones on its diagonal, by halves.
+
+    A routine of a linear algebra library sets several threads on even the smallest.
+    """
+    n_rows = len(lower)
+    inverse = np.eye(n_rows)
+    if n_rows <= ROWS_ONE_BY_ONE:
+        for row in range(1, n_rows):
+            inverse[row, :row] = -lower[row, :row] @ inverse[:row, :row]
+        return inverse
+    half = n_rows // 2
+    inverse[:half, :half] = _inverse_of_lower(lower[:half, :half])
+    inverse[half:, half:] = _inverse_of_lower(lower[half:, half:])
+    across = inverse[half:, half:] @ lower[half:, :half] @ inverse[:half, :half]
+    inverse[half:, :half] = -across
+    return inverse
 
 
 def _bordered(
