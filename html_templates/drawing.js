@@ -376,3 +376,28 @@ function textWidth(text, font = '600 12px "Noto Sans", "Segoe UI", sans-serif') 
   ruler.font = font;
   return ruler.measureText(text.replace(/_\{([^}]*)\}/g, "$1")).width;
 }
+
+/** @param {number} cx @param {number} cy @param {number} r @param {number} width @param {string} dash */
+function ring(cx, cy, r, width, dash) {
+  const at = { cx: short(cx), cy: short(cy), r: short(r), fill: "none" };
+  return [
+    svg("circle", { ...at, stroke: tokens.paper, "stroke-width": width + 2.4 }),
+    svg("circle", { ...at, stroke: tokens.ink, "stroke-width": width, "stroke-dasharray": dash || undefined }),
+  ];
+}
+
+/** @param {Node[]} lines @param {number} x @param {number} y */
+function showTip(lines, x, y) {
+  const tip = byId("tip");
+  tip.replaceChildren(...lines.map((line) => element("div", {}, line)));
+  tip.hidden = false;
+  const box = tip.getBoundingClientRect();
+  const left = x + 16 + box.width > innerWidth ? x - 14 - box.width : x + 16;
+  const top = y + 18 + box.height > innerHeight ? y - 12 - box.height : y + 18;
+  tip.style.left = `${Math.max(2, left)}px`;
+  tip.style.top = `${Math.max(2, top)}px`;
+}
+
+function hideTip() {
+  byId("tip").hidden = true;
+}

@@ -9,6 +9,10 @@ let atomElements = [];
 /** @type {number[]} first atom of each residue, and one past the last at the end */
 let firstAtom = [];
 
+const library = /** @type {any} */ (window).$3Dmol;
+const HALF_ANGLE = (20 * Math.PI) / 180; // of the library's camera
+const CAMERA = 150;
+
 const view = {
   centre: [0, 0, 0],
   /** @type {number[][]} rows are the axes of the screen */
@@ -177,4 +181,20 @@ function project(p) {
 
 function pixelsPerAngstrom() {
   return view.width / (2 * view.half);
+}
+
+function viewText() {
+  return [...view.centre, ...view.quaternion, view.half, view.width, view.height].join(" ");
+}
+
+/** The view as the library takes it. */
+function libraryView() {
+  const distance = view.half / Math.tan(HALF_ANGLE);
+  const [cx, cy, cz] = view.centre;
+  return [-cx, -cy, -cz, CAMERA - distance, ...view.quaternion];
+}
+
+function offersWebGl() {
+  const canvas = document.createElement("canvas");
+  return Boolean(canvas.getContext("webgl2") || canvas.getContext("webgl"));
 }

@@ -28,11 +28,8 @@
  * @property {boolean} [onward] out to the next copy of a unit
  */
 
-const library = /** @type {any} */ (window).$3Dmol;
 const ALLOWED_CALLS = new Set(["addModel", "setProjection"]);
 const BACKBONE = new Set(["N", "CA", "C", "O", "P", "OP1", "OP2", "O5'"]);
-const HALF_ANGLE = (20 * Math.PI) / 180; // of the library's camera
-const CAMERA = 150;
 
 /** @type {any} */
 let viewer = null;
@@ -75,11 +72,6 @@ function startPicture() {
     setSurroundings();
     drawThreads();
   }
-}
-
-function offersWebGl() {
-  const canvas = document.createElement("canvas");
-  return Boolean(canvas.getContext("webgl2") || canvas.getContext("webgl"));
 }
 
 function makeViewer() {
@@ -431,16 +423,10 @@ function showPicture() {
   });
 }
 
-function viewText() {
-  return [...view.centre, ...view.quaternion, view.half, view.width, view.height].join(" ");
-}
-
 /** Hand the view to the library, which draws at once. */
 function applyView() {
   lastView = viewText();
-  const distance = view.half / Math.tan(HALF_ANGLE);
-  const [cx, cy, cz] = view.centre;
-  viewer.setView([-cx, -cy, -cz, CAMERA - distance, ...view.quaternion]);
+  viewer.setView(libraryView());
 }
 
 let framesSinceWriting = 0;

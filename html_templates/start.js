@@ -2,22 +2,6 @@
 
 // --- tooltip ---
 
-/** @param {Node[]} lines @param {number} x @param {number} y */
-function showTip(lines, x, y) {
-  const tip = byId("tip");
-  tip.replaceChildren(...lines.map((line) => element("div", {}, line)));
-  tip.hidden = false;
-  const box = tip.getBoundingClientRect();
-  const left = x + 16 + box.width > innerWidth ? x - 14 - box.width : x + 16;
-  const top = y + 18 + box.height > innerHeight ? y - 12 - box.height : y + 18;
-  tip.style.left = `${Math.max(2, left)}px`;
-  tip.style.top = `${Math.max(2, top)}px`;
-}
-
-function hideTip() {
-  byId("tip").hidden = true;
-}
-
 /** @param {number} e */
 function entryTip(e) {
   const { unit, membership, note } = data.entries;

@@ -126,14 +126,14 @@ def test_hostile_text_of_the_files_stays_text(record):
 
 
 def test_small_data_stand_plain_with_every_angle_bracket_escaped():
-    text = assemble._data_block({"name": HOSTILE})
+    text = assemble.data_block({"name": HOSTILE})
     assert "<" not in text
     assert json.loads(text) == {"name": HOSTILE}
 
 
 def test_large_data_are_packed_and_come_back_whole():
     payload = {"values": list(range(60_000))}
-    packed = json.loads(assemble._data_block(payload))["gzip"]
+    packed = json.loads(assemble.data_block(payload))["gzip"]
     assert json.loads(gzip.decompress(base64.b64decode(packed))) == payload
 
 

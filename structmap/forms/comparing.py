@@ -73,6 +73,8 @@ class Comparison:
     ----------
     forms : tuple of Form
         The measured one first.
+    maps : tuple of FormMap
+        Residues of each form laid on the measured chains.
     sites : tuple of Sites
         The measured sites with their copies in each form.
     units : tuple of FormUnit
@@ -88,6 +90,7 @@ class Comparison:
     """
 
     forms: tuple[Form, ...]
+    maps: tuple[FormMap, ...]
     sites: tuple[Sites, ...]
     units: tuple[FormUnit, ...]
     units_in_forms: tuple[tuple[UnitInForm, ...], ...]
@@ -169,6 +172,7 @@ def compare_forms(
     )
     return Comparison(
         forms=tuple(forms),
+        maps=tuple(maps),
         sites=tuple(own_sites),
         units=tuple(units),
         units_in_forms=in_forms,

@@ -24,6 +24,7 @@ SCRIPTS = (
     "geometry.js",
     "picture.js",
     "laid_out.js",
+    "placing.js",
     "writing.js",
     "profiles.js",
     "misfit.js",
@@ -61,25 +62,51 @@ def page_html(record: AnalysisRecord) -> str:
     """
     listing = list_entries(record)
     library = read_template("built/3Dmol-min.js")
-    styles, scripts = read_template("page.css"), _joined_scripts()
+    styles, scripts = read_template("page.css"), join_scripts(SCRIPTS)
     parts = {
-        "policy": _policy(styles, (library, scripts)),
+        "policy": content_policy(styles, (library, scripts)),
         "styles": styles,
         "library": library,
         "scripts": scripts,
-        "data": _data_block(page_payload(record, listing)),
+        "data": data_block(page_payload(record, listing)),
         **_texts(record, listing),
         **_foot(record),
     }
     return Template(read_template("page.html")).substitute(parts)
 
 
-def _joined_scripts() -> str:
-    body = "\n".join(read_template(name) for name in SCRIPTS)
+def join_scripts(names: tuple[str, ...]) -> str:
+    """Return scripts as one that keeps its names to itself.
+
+    Parameters
+    ----------
+    names : tuple of str
+        Templates, in the order in which they run.
+
+    Returns
+    -------
+    str
+        A strict function that is called at once.
+    """
+    body = "\n".join(read_template(name) for name in names)
     return f'"use strict";\n(() => {{\n{body}\n}})();\n'
 
 
-def _policy(styles: str, scripts: tuple[str, ...]) -> str:
+def content_policy(styles: str, scripts: tuple[str, ...]) -> str:
+    """Return a content policy that allows these texts alone and no request.
+
+    Parameters
+    ----------
+    styles : str
+        The text of the style element.
+    scripts : tuple of str
+        The texts of the script elements.
+
+    Returns
+    -------
+    str
+        For the attribute of a meta element.
+    """
     sources = " ".join(policy_source(script) for script in scripts)
     return (
         f"default-src 'none'; script-src {sources}; style-src {policy_source(styles)}; "
@@ -87,7 +114,19 @@ def _policy(styles: str, scripts: tuple[str, ...]) -> str:
     )
 
 
-def _data_block(payload: dict[str, object]) -> str:
+def data_block(payload: dict[str, object]) -> str:
+    """Return data as text that may stand in a script element.
+
+    Parameters
+    ----------
+    payload : dict
+        Plain lists, numbers and text.
+
+    Returns
+    -------
+    str
+        JSON, packed where it is long.
+    """
     text = json.dumps(
         payload, ensure_ascii=False, separators=(",", ":"), allow_nan=False
     )

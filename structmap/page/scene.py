@@ -70,7 +70,7 @@ def choose_atoms(record: AnalysisRecord, listing: Listing) -> DrawnAtoms:
     wanted = np.isin(kind, (POLYMER, LIGAND_PART)) & (
         structure.model_of_atom == _model(structure)
     )
-    wanted &= _first_conformation(structure)
+    wanted &= first_conformation(structure)
     if wanted.sum() > WHOLE_UP_TO_ATOMS:
         whole = np.isin(structure.residue_of_atom, _close_up_residues(record))
         whole |= np.isin(
@@ -85,8 +85,19 @@ def _model(structure: Structure) -> int:
     return int(structure.model_of_atom.min(initial=0))
 
 
-def _first_conformation(structure: Structure) -> NDArray[np.bool_]:
-    """Keep of each atom name in a residue the first alternate conformation."""
+def first_conformation(structure: Structure) -> NDArray[np.bool_]:
+    """Return of each atom name in a residue the first alternate conformation.
+
+    Parameters
+    ----------
+    structure : Structure
+        Coordinates as read.
+
+    Returns
+    -------
+    ndarray of bool, shape (n_atoms,)
+        True for the atom that is drawn.
+    """
     keys = np.char.add(
         structure.residue_of_atom.astype(str), structure.atom_name.astype(str)
     )
