@@ -127,7 +127,7 @@ function drawAxes(axes, how) {
   nodes.push(svg("path", { d: `M${axes.left} ${short(axes.bottom)}H${axes.right}`, class: "axis" }));
   const first = profile.x[0];
   const last = profile.x[profile.x.length - 1];
-  const wanted = Math.max(2, Math.floor((axes.right - axes.left) / 26));
+  const wanted = Math.max(2, Math.floor((axes.right - axes.left) / 20));
   const ticks = profile.log ? logTicks(first, last, wanted) : ticksBetween(first, last, wanted);
   for (const tick of ticks) {
     const x = short(axes.x(tick));
@@ -344,6 +344,7 @@ function drawMembers(box, width, height, chosen) {
   const many = fit && shown.length > 6 && width > 400 ? 4 : 3;
   const columns = shown.length === 1 ? 1 : shown.length <= 4 && !(fit && shown.length === 3) ? 2 : many;
   const rows = Math.ceil(shown.length / columns);
+  const middle = Math.min(Math.floor((columns - 1) / 2), (shown.length - 1) % columns);
   const range = profileRange(shown);
   const foot = 40;
   const panelWidth = (width - 34 - 14 * (columns - 1)) / columns;
@@ -354,7 +355,7 @@ function drawMembers(box, width, height, chosen) {
     const left = column === 0 ? 34 : 0;
     const bottomRow = i + columns >= shown.length;
     const axes = axesIn(left, 18, panelWidth, panelHeight - 26, range);
-    const drawn = drawAxes(axes, { ticks: bottomRow, yTicks: panelHeight > 120 ? 3 : 2, named: bottomRow && row === rows - 1 && column === Math.floor((columns - 1) / 2) });
+    const drawn = drawAxes(axes, { ticks: bottomRow, yTicks: panelHeight > 120 ? 3 : 2, named: bottomRow && row === rows - 1 && column === middle });
     drawn.push(...siteCurves(axes, e), ...drawPoints(axes, e, { values: profile.value, errors: profile.error, size: 2.6 }));
     drawn.push(svgText(data.entries.name[e], left, 11, "strong"));
     if (fit) drawn.push(...aloneText(fit, e, left + panelWidth, panelWidth));
