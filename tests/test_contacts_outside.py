@@ -6,7 +6,9 @@ import numpy as np
 import pandas as pd
 import pytest
 
+from structmap.chemistry import find_chemistry
 from structmap.contacts import (
+    KINDS,
     choose_assemblies,
     find_contacts,
     image_matrix,
@@ -15,6 +17,7 @@ from structmap.contacts import (
 )
 from structmap.contacts.assemblies import assembly_frames
 from structmap.errors import StructmapError
+from structmap.exposure import find_exposure
 from structmap.structure import POLYMER, read_structure
 from tests.crystals import DATA, apply, only_atoms
 
@@ -129,6 +132,62 @@ def test_published_contacts_have_their_published_length(row, request):
     here = find_atom(structure, row.atom_1)
     apart = np.linalg.norm(here[:, None] - image[None], axis=2).min()
     assert apart == pytest.approx(float(str(row.published_A).split()[0]), abs=0.0065)
+
+
+def residue_of(structure, text):
+    """Return the residue of an atom written like A/CYS 247/SG."""
+    chain, residue, _ = text.split("/")
+    number = int(re.match(r"-?\d+", residue.split()[1])[0])
+    same = (structure.auth_asym_id == chain) & (structure.auth_seq_id == number)
+    return int(np.flatnonzero(same & (structure.kind_of_residue == POLYMER))[0])
+
+
+# Of the contacts that files state those between residues of polymers.
+BETWEEN_POLYMERS = {
+    "4hhh_frag.pdb": ("lattice", "disulfide"),
+    "3jqh.cif": ("complex", "covalent bond"),
+    "4zhl.cif.gz": ("lattice", "clash"),
+    "1pfe.cif.gz": ("complex", "hydrogen bond"),
+    "trp_repressor.cif": ("complex", "salt bridge"),
+}
+
+
+@pytest.mark.parametrize("name", BETWEEN_POLYMERS)
+def test_contacts_that_files_state_are_found_with_image_kind_and_chemistry(
+    name, request
+):
+    """SSBOND, validation records, struct_conn, REMARK 500: what depositors saw."""
+    structure = read_structure(located(name, request))
+    assemblies = choose_assemblies(structure, "auto")
+    contacts = find_contacts(structure, reach_angstrom=4.5, assemblies=assemblies)
+    chemistry = find_chemistry(structure, contacts, assemblies=assemblies)
+    table = make_group_table(structure.crystal)
+    back = np.column_stack(table.inverse(contacts.operator, contacts.shift))
+    here = np.column_stack([contacts.operator, contacts.shift])
+    (row,) = PUBLISHED[PUBLISHED["file"] == name].itertuples()
+    operator = structure.crystal.triplets.index(row.operator)
+    element = [operator, row.shift_a, row.shift_b, row.shift_c]
+    one, two = residue_of(structure, row.atom_1), residue_of(structure, row.atom_2)
+    forth = (contacts.residue_1 == one) & (contacts.residue_2 == two)
+    forth &= (here == element).all(axis=1)
+    inverted = (contacts.residue_1 == two) & (contacts.residue_2 == one)
+    inverted &= (back == element).all(axis=1)
+    (found,) = np.flatnonzero(forth | inverted)
+    kind, seen = BETWEEN_POLYMERS[name]
+    assert KINDS[contacts.kind[found]] == kind
+    published = float(str(row.published_A).split()[0])
+    assert contacts.distance_angstrom[found] <= published + 0.0065
+    assert seen in chemistry.text[found]
+
+
+@pytest.mark.parametrize(
+    ("name", "stated"), [("4zhl.cif.gz", 1460), ("2xhe.pdb.gz", 4680)]
+)
+def test_assemblies_bury_what_the_file_says(name, stated):
+    """Buried area of the dimer that REMARK 350 and struct_assembly_prop state."""
+    structure = read_structure(DATA / name)
+    found = find_exposure(structure, assemblies=choose_assemblies(structure, "auto"))
+    assert np.nansum(found.complex_burial) == pytest.approx(stated, rel=0.05)
 
 
 @pytest.mark.parametrize(

@@ -204,15 +204,20 @@ def test_an_assembly_of_chains_that_are_missing_is_named_and_used(
     assert contacts_of(structure).kind.tolist() == whole.kind.tolist()
 
 
-def test_occupancies_that_sum_to_more_than_one_are_named(tmp_path):
+@pytest.mark.parametrize(("alternates", "occupancy"), [(True, 0.8), (False, 1.5)])
+def test_occupancies_that_sum_to_more_than_one_are_named(
+    tmp_path, alternates, occupancy
+):
     """1EJG: alternate conformations with occupancies that sum to one."""
     content = gemmi.read_structure(str(DATA / "1ejg.pdb.gz"))
     assert not any(
         "ccupancies" in text for text in read_structure(DATA / "1ejg.pdb.gz").warnings
     )
-    residue = next(r for r in content[0][0] if any(a.altloc != "\0" for a in r))
+    residue = next(
+        r for r in content[0][0] if any(a.altloc != "\0" for a in r) == alternates
+    )
     for atom in residue:
-        atom.occ = 0.8
+        atom.occ = occupancy
     path = tmp_path / "crowded.pdb"
     content.write_pdb(str(path))
     said = [t for t in read_structure(path).warnings if "sum to more than 1" in t]

@@ -52,15 +52,14 @@ def _crowded_places(entries: Sequence[Entry], atoms: AtomTable) -> str:
     keys = np.column_stack([atoms.model, atoms.entry, name])
     places, which = np.unique(keys, axis=0, return_inverse=True)
     total = np.bincount(which.reshape(-1), weights=atoms.occupancy)
-    several = np.bincount(which.reshape(-1)) > 1
-    over = np.unique(places[several & (total > LARGEST_OCCUPANCY_SUM), 1])
+    over = np.unique(places[total > LARGEST_OCCUPANCY_SUM, 1])
     if not len(over):
         return ""
     first = _label(entries[over[0]])
     noun = f"residue {first}" if len(over) == 1 else f"{len(over)} residues ({first} …)"
     return (
-        f"Occupancies of alternate conformations sum to more than 1 in {noun}; every "
-        "conformation counts as a place of the atom all the same."
+        f"Occupancies of an atom sum to more than 1 in {noun}; every conformation "
+        "counts as a place of the atom all the same."
     )
 
 
