@@ -390,7 +390,13 @@ async function startForms() {
     waits = setTimeout(layOutForms, 120);
   });
   matchMedia("(prefers-color-scheme: dark)").addEventListener("change", () => setFormsTheme(preferredTheme()));
-  addEventListener("beforeprint", () => setFormsTheme("light"));
+  let screenTheme = "light";
+  addEventListener("beforeprint", () => {
+    screenTheme = document.documentElement.dataset.theme || "light";
+    setFormsTheme("light");
+    drawForms();
+  });
+  addEventListener("afterprint", () => setFormsTheme(screenTheme));
   requestAnimationFrame(() => {
     document.documentElement.dataset.ready = "1";
   });

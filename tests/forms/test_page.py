@@ -247,6 +247,10 @@ DRAWN = """f => {
   }
   return drawn / (400 * 200);
 }"""
+MOVED = """before => {
+  const ring = document.querySelector('#picture-1 circle[stroke-width="1.6"]');
+  return ring && ring.getAttribute('cx') !== before;
+}"""
 
 
 def test_pictures_are_drawn_and_follow_a_choice(browser, path):  # noqa: F811
@@ -275,14 +279,13 @@ def test_pictures_turn_together(browser, path):  # noqa: F811
     chosen = name.inner_text()
     tab.wait_for_selector('#picture-1 circle[stroke-width="1.6"]', state="attached")
     assert opened.text("#caption").startswith(f"{chosen} chosen.")
-    tab.wait_for_timeout(500)
     before = [places(tab, form, chosen) for form in (0, 1)]
     assert before[0].shape == (1, 2)
     # The same molecule twice: laid on itself, but for rounding.
     np.testing.assert_allclose(before[0], before[1], atol=0.3)
     tab.focus("#picture-1")
     tab.keyboard.press("ArrowRight")
-    tab.wait_for_timeout(500)
+    tab.wait_for_function(MOVED, arg=str(before[1][0, 0]))  # in the next frame
     after = [places(tab, form, chosen) for form in (0, 1)]
     np.testing.assert_allclose(after[0], after[1], atol=0.3)
     assert np.abs(after[0] - before[0]).max() > 1.0
