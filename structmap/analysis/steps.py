@@ -11,6 +11,7 @@ from structmap.experiment import (
     convert_to_base,
     find_coherent_points,
 )
+from structmap.one_process import Conditions, at_conditions
 from structmap.settings import Settings
 from structmap.sites import Sites, match_sites
 from structmap.structure import Structure
@@ -142,9 +143,10 @@ def point_reasons(table: ValueTable, settings: Settings) -> tuple[str, ...]:
     field = convert_to_base(
         profile.x, profile.x_unit, quantity=profile.x_name, base="Hz"
     )
-    if not settings.mas_rate_hertz > 0:
+    known = at_conditions(profile, Conditions(experiment=experiment_of(settings)))
+    if not known.experiment.mas_rate_hertz > 0:
         return ("",) * len(profile.x)
-    return find_coherent_points(field, experiment_of(settings))
+    return find_coherent_points(field, known.experiment)
 
 
 def kept_points_note(table: ValueTable, settings: Settings) -> tuple[str, ...]:

@@ -1,7 +1,9 @@
 """Does one process explain a group of sites: models, fits, the test."""
 
 from structmap.one_process.catalogue import MODELS, Conditions, make_model
+from structmap.one_process.columns import Prepared, site_names
 from structmap.one_process.engine import fit_each, fit_group
+from structmap.one_process.families import at_conditions
 from structmap.one_process.mixture import Mixture, find_mixture
 from structmap.one_process.model import Model, Parameter
 from structmap.one_process.phrases import (
@@ -10,12 +12,7 @@ from structmap.one_process.phrases import (
     show_interval,
     show_number,
 )
-from structmap.one_process.preparing import (
-    Prepared,
-    prepare_profiles,
-    site_names,
-    spinning_conditions,
-)
+from structmap.one_process.preparing import prepare_profiles, spinning_conditions
 from structmap.one_process.profiles import (
     GroupFit,
     Profiles,
@@ -53,6 +50,7 @@ __all__ = [
     "TestOptions",
     "WholeMolecule",
     "analyse_table",
+    "at_conditions",
     "describe_whole",
     "find_flat_sites",
     "find_mixture",

@@ -268,11 +268,12 @@ class CompoundSolver:
             local=_from_local_axis(self.model, solved.local[0]),
             kernel=kernel[0],
             part=LinearPart(
-                baseline=projected.baseline[0],
+                baseline=projected.baseline[0][:, None],
                 amplitude=projected.amplitude[0],
                 chi2=(projected.residual[0] ** 2).sum(axis=-1),
                 leverage=projected.constant[0] ** 2 + projected.along[0] ** 2,
             ),
+            block=self.profiles.block,
         )
 
     def kernel_at(self, state: State, x: FloatArray) -> FloatArray:
@@ -316,7 +317,7 @@ class CompoundSolver:
         kernel = evaluate(self.model, self.profiles.x, place, local)
         kernel = kernel.reshape(*shifts.shape, -1)
         part = state.part
-        return np.asarray(part.baseline[:, None] + part.amplitude[:, None] * kernel)
+        return np.asarray(part.baseline + part.amplitude[:, None] * kernel)
 
     def fitted_at_nodes(self, node: NDArray[np.int64]) -> FloatArray:
         """Return the fits of the sites alone, each at a node of its own.
@@ -371,11 +372,18 @@ def make_compound_solver(model: Model, profiles: Profiles) -> CompoundSolver:
     CompoundSolver
         With the best fits, and those at all nodes.
 
+    Raises
+    ------
+    ValueError
+        If the profiles have several blocks, each with a baseline of its own.
+
     Notes
     -----
     A coarse grid over all parameters gives starting points; the best five of the group
     and of each site are refined.
     """
+    if profiles.block.any():
+        raise ValueError(f"block holds several numbers; {model.name} takes one")
     grids = make_grids(model, profiles.x)
     coarse = make_coarse(model, profiles, grids)
     return CompoundSolver(

@@ -1,6 +1,7 @@
 """Spin-lock relaxation under magic-angle spinning near rotary resonance."""
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -424,6 +425,50 @@ def spinning_model(
         baseline="nonnegative",
         x_unit="Hz",
         source="Kurbanov et al., J. Chem. Phys. 135, 184104 (2011)",
+    )
+
+
+def join_spinning_models(
+    models: Sequence[Model],
+    fields_hertz: Sequence[FloatArray],
+    *,
+    names: tuple[str, ...],
+) -> Model:
+    """Return one model of spin-lock profiles at several conditions.
+
+    Parameters
+    ----------
+    models : sequence of Model
+        Those of `spinning_model` at each spinning rate and proton frequency.
+    fields_hertz : sequence of ndarray
+        Spin-lock fields measured under each of them.
+    names : tuple of str
+        What each point is, in the order of the fields.
+
+    Returns
+    -------
+    Model
+        Its x counts the points; tau and amplitude are common, each condition has a
+        baseline of its own, for what does not depend on the field differs between them.
+    """
+    limits = [model.shared.bounds(np.zeros(0)) for model in models]
+    low, high = min(pair[0] for pair in limits), max(pair[1] for pair in limits)
+
+    def function(x: FloatArray, tau: FloatArray) -> FloatArray:
+        parts = [
+            model.function(field, tau)
+            for model, field in zip(models, fields_hertz, strict=True)
+        ]
+        whole = np.concatenate(parts, axis=-1)
+        return np.asarray(whole[..., np.asarray(x, dtype=np.int64)])
+
+    return replace(
+        models[0],
+        function=function,
+        shared=replace(models[0].shared, bounds=lambda _: (low, high)),
+        x_unit="",
+        n_baselines=len(models),
+        point_names=names,
     )
 
 

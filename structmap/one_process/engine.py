@@ -1,6 +1,6 @@
 """Fitting any model record to a group of profiles; knows no physics."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -137,7 +137,7 @@ def describe_fit(solver: Solver) -> GroupFit:
         grid=from_axis(solver.nodes, axis),
         grid_chi2=solver.site_profile,
         grid_shared=solver.shared_profile,
-        baseline=state.part.baseline,
+        baseline=state.part.baseline[:, 0],
         amplitude=state.part.amplitude,
         local=state.local,
         fitted=fitted,
@@ -196,10 +196,8 @@ def widen_wild_errors(profiles: Profiles, model: Model) -> Profiles:
         )
         scale = max(float(np.nanmedian(residual)) / 0.6745, 1e-12)
         distance = np.nan_to_num(residual) / (scale * _ROBUST_LIMIT)
-        current = Profiles(
-            name=profiles.name,
-            x=profiles.x,
-            value=profiles.value,
+        current = replace(
+            profiles,
             error=profiles.error * np.sqrt(np.maximum(distance, 1.0)),
         )
     return current
@@ -216,7 +214,8 @@ def _curves(solver: Solver, state: State, scale: float) -> _Band:
     """Return fitted curves and their errors from linear and shared parameters."""
     x = solver.profiles.x
     fine = np.linspace(x.min(), x.max(), _CURVE_POINTS)
-    curve = fitted_values(state, solver.kernel_at(state, fine))
+    block = _blocks_at(solver, fine)
+    curve = fitted_values(state, solver.kernel_at(state, fine), block=block)
     errors2 = _linear_variance(solver, state, fine)
     step = _STEP * (solver.nodes[-1] - solver.nodes[0])
     inside = solver.nodes[0] + step < state.position < solver.nodes[-1] - step
@@ -225,7 +224,8 @@ def _curves(solver: Solver, state: State, scale: float) -> _Band:
         bend = sum(float(part.part.chi2.sum()) for part in around)
         bend = (bend - 2 * float(state.part.chi2.sum())) / step**2
         lower, upper = (
-            fitted_values(part, solver.kernel_at(part, fine)) for part in around
+            fitted_values(part, solver.kernel_at(part, fine), block=block)
+            for part in around
         )
         slope = (upper - lower) / (2 * step)
         if bend > 0:
@@ -235,35 +235,37 @@ def _curves(solver: Solver, state: State, scale: float) -> _Band:
 
 def _linear_variance(solver: Solver, state: State, fine: FloatArray) -> FloatArray:
     """Return the variance of the curves from baseline and amplitude alone."""
-    root = solver.profiles.root_weight
-    kernel = solver.kernel_at(state, fine)
-    out = np.zeros(kernel.shape)
+    root, kernel = solver.profiles.root_weight, solver.kernel_at(state, fine)
+    out, model = np.zeros(kernel.shape), solver.model
+    constants, fine_constants = [], []
+    for number in range(model.n_baselines if model.baseline != "none" else 0):
+        constants.append((state.block == number).astype(np.float64))
+        fine_constants.append((_blocks_at(solver, fine) == number).astype(np.float64))
     for site in range(len(root)):
-        columns = _free_columns(solver.model, state, site)
-        design = np.stack([root[site] * column for column in columns[0]], axis=1)
-        fine_columns = [np.ones_like(fine), kernel[site]]
-        fine_design = np.stack([fine_columns[k] for k in columns[1]], axis=1)
+        columns, fine_columns = [*constants], [*fine_constants]
+        if model.amplitude != "unit" and state.part.amplitude[site] != 0:
+            columns.append(state.kernel[site])
+            fine_columns.append(kernel[site])
+        if not columns:
+            continue
+        design = np.stack([root[site] * column for column in columns], axis=1)
         covariance = np.linalg.pinv(design.T @ design)
+        fine_design = np.stack(fine_columns, axis=1)
         out[site] = np.einsum("xi,ij,xj->x", fine_design, covariance, fine_design)
     return out
 
 
-def _free_columns(
-    model: Model, state: State, site: int
-) -> tuple[list[FloatArray], list[int]]:
-    columns, which = [], []
-    if model.baseline != "none":
-        columns.append(np.ones_like(state.kernel[site]))
-        which.append(0)
-    if model.amplitude != "unit" and state.part.amplitude[site] != 0:
-        columns.append(state.kernel[site])
-        which.append(1)
-    if not columns:
-        return [np.zeros_like(state.kernel[site])], [0]
-    return columns, which
+def _blocks_at(solver: Solver, fine: FloatArray) -> NDArray[np.int64]:
+    """Return the block at other x: with several blocks x counts the points."""
+    if not solver.profiles.block.any():
+        return np.zeros(len(fine), dtype=np.int64)
+    nearest = np.searchsorted(solver.profiles.x, fine, side="right") - 1
+    return np.asarray(solver.profiles.block[np.maximum(nearest, 0)])
 
 
-def fitted_values(state: State, kernel: FloatArray) -> FloatArray:
+def fitted_values(
+    state: State, kernel: FloatArray, *, block: NDArray[np.int64] | None = None
+) -> FloatArray:
     """Return baseline plus amplitude times kernel.
 
     Parameters
@@ -272,6 +274,8 @@ def fitted_values(state: State, kernel: FloatArray) -> FloatArray:
         Says baselines and amplitudes.
     kernel : ndarray, shape (n_sites, n)
         The model's function.
+    block : ndarray of int, shape (n,), optional
+        Which baseline each column has; the default is that of the measured points.
 
     Returns
     -------
@@ -279,7 +283,8 @@ def fitted_values(state: State, kernel: FloatArray) -> FloatArray:
         In the unit of the values.
     """
     part = state.part
-    return np.asarray(part.baseline[:, None] + part.amplitude[:, None] * kernel)
+    which = state.block if block is None else block
+    return np.asarray(part.baseline[:, which] + part.amplitude[:, None] * kernel)
 
 
 def _inner(

@@ -25,16 +25,21 @@ class Basis:
     ----------
     root_weight : ndarray, shape (n_sites, n_points)
         One over the error, 0 where missing.
+    block_weight : ndarray, shape (n_blocks, n_sites, n_points)
+        The same, 0 outside each block of points with a baseline in common.
     centred, raw : ndarray, shape (n_sites, n_nodes, n_points)
         Weighted kernels of length 1, with and without their mean taken off; zeros
         where the kernel has no shape.
-    centred_length, raw_length, mean : ndarray, shape (n_sites, n_nodes)
-        Lengths taken out, and the weighted mean of the kernel.
+    centred_length, raw_length : ndarray, shape (n_sites, n_nodes)
+        Lengths taken out.
+    mean : ndarray, shape (n_blocks, n_sites, n_nodes)
+        Weighted mean of the kernel in each block.
     nonnegative_amplitude, nonnegative_baseline, has_baseline : bool
-        What the model allows.
+        What the model allows; several baselines are always free.
     """
 
     root_weight: NDArray[np.float64]
+    block_weight: NDArray[np.float64]
     centred: NDArray[np.float64]
     raw: NDArray[np.float64]
     centred_length: NDArray[np.float64]
@@ -45,7 +50,13 @@ class Basis:
     has_baseline: bool
 
 
-def make_basis(kernel: FloatArray, root_weight: FloatArray, model: Model) -> Basis:
+def make_basis(
+    kernel: FloatArray,
+    root_weight: FloatArray,
+    model: Model,
+    *,
+    block: NDArray[np.int64] | None = None,
+) -> Basis:
     """Return the centred and scaled kernels of all sites.
 
     Parameters
@@ -56,6 +67,8 @@ def make_basis(kernel: FloatArray, root_weight: FloatArray, model: Model) -> Bas
         One over the error, 0 where missing.
     model : Model
         Decides about baseline and signs.
+    block : ndarray of int, shape (n_points,), optional
+        Points of one number have a baseline in common; the default is one block.
 
     Returns
     -------
@@ -64,24 +77,28 @@ def make_basis(kernel: FloatArray, root_weight: FloatArray, model: Model) -> Bas
     """
     weighted = kernel * root_weight[:, None, :]
     has_baseline = model.baseline != "none"
-    weight = root_weight**2
-    total = np.maximum(weight.sum(axis=1), np.finfo(float).tiny)
-    mean = (weighted * root_weight[:, None, :]).sum(axis=2) / total[:, None]
-    if not has_baseline:
-        mean = np.zeros_like(mean)
-    centred = weighted - mean[..., None] * root_weight[:, None, :]
+    numbers = np.zeros(1) if block is None else np.unique(block)
+    inside = np.zeros(root_weight.shape[1]) if block is None else block
+    parts = np.stack([root_weight * (inside == number) for number in numbers])
+    mean = np.zeros((len(parts), *weighted.shape[:2]))
+    centred = weighted
+    for number, part in enumerate(parts if has_baseline else ()):
+        total = np.maximum((part**2).sum(axis=1), np.finfo(float).tiny)
+        mean[number] = (weighted * part[:, None, :]).sum(axis=2) / total[:, None]
+        centred = centred - mean[number, ..., None] * part[:, None, :]
     raw_length = np.sqrt((weighted**2).sum(axis=2))
     length = np.sqrt((centred**2).sum(axis=2))
     shaped = length > np.sqrt(_NO_SHAPE) * raw_length
     return Basis(
         root_weight=root_weight,
+        block_weight=parts,
         centred=_scaled(centred, length, shaped),
         raw=_scaled(weighted, raw_length, raw_length > 0),
         centred_length=np.where(shaped, length, 0.0),
         raw_length=raw_length,
         mean=mean,
         nonnegative_amplitude=model.amplitude == "nonnegative",
-        nonnegative_baseline=model.baseline == "nonnegative",
+        nonnegative_baseline=model.baseline == "nonnegative" and len(parts) == 1,
         has_baseline=has_baseline,
     )
 
@@ -104,14 +121,15 @@ def node_chi2(basis: Basis, value: FloatArray) -> FloatArray:
     data = np.moveaxis(value * basis.root_weight, 0, -1)
     total = (data**2).sum(axis=1)
     level = _levels(basis, data)
-    weight_sum = (basis.root_weight**2).sum(axis=1)
-    rest = total - level**2 * weight_sum[:, None]
+    rest = total
+    for part, own in zip(basis.block_weight, level, strict=True):
+        rest = rest - own**2 * (part**2).sum(axis=1)[:, None]
     along = basis.centred @ data
     if basis.nonnegative_amplitude:
         np.maximum(along, 0.0, out=along)
     chi2 = rest[:, None, :] - along**2
     if basis.nonnegative_baseline:
-        _forbid_negative_baseline(basis, (data, total, level), along, chi2)
+        _forbid_negative_baseline(basis, (data, total, level[0]), along, chi2)
     return np.asarray(np.maximum(chi2, 0.0))
 
 
@@ -121,7 +139,9 @@ class LinearPart:
 
     Attributes
     ----------
-    baseline, amplitude, chi2 : ndarray of float, shape (n_sites,)
+    baseline : ndarray of float, shape (n_sites, n_blocks)
+        Of each site and block of points.
+    amplitude, chi2 : ndarray of float, shape (n_sites,)
         Of each site.
     leverage : ndarray of float, shape (n_sites, n_points)
         How far each value draws its own fit, 0 to 1.
@@ -149,37 +169,36 @@ def solve_linear(basis: Basis, value: FloatArray) -> LinearPart:
         With leverages of the parameters that no limit holds.
     """
     data = (value * basis.root_weight)[..., None]
-    level = _levels(basis, data)[:, 0]
+    level = _levels(basis, data)[..., 0]
     along = (basis.centred @ data)[:, 0, 0]
     if basis.nonnegative_amplitude:
         along = np.maximum(along, 0.0)
-    length, mean = basis.centred_length[:, 0], basis.mean[:, 0]
+    length, mean = basis.centred_length[:, 0], basis.mean[..., 0]
     amplitude = np.divide(along, length, out=np.zeros_like(along), where=length > 0)
     baseline = level - amplitude * mean if basis.has_baseline else np.zeros_like(level)
-    centred, weight_sum = basis.centred[:, 0], (basis.root_weight**2).sum(axis=1)
-    leverage = centred**2 * (amplitude != 0)[:, None]
-    if basis.has_baseline:
-        leverage = leverage + basis.root_weight**2 / weight_sum[:, None]
+    leverage = basis.centred[:, 0] ** 2 * (amplitude != 0)[:, None]
+    for part in basis.block_weight if basis.has_baseline else ():
+        total = np.maximum((part**2).sum(axis=1), np.finfo(float).tiny)
+        leverage = leverage + part**2 / total[:, None]
     if basis.nonnegative_baseline:
-        held = (baseline < 0) & (amplitude > 0)
+        held = (baseline[0] < 0) & (amplitude > 0)
         raw_along = np.maximum((basis.raw @ data)[:, 0, 0], 0.0)
         amplitude = np.where(held, raw_along / basis.raw_length[:, 0], amplitude)
         baseline = np.where(held, 0.0, baseline)
         leverage = np.where(held[:, None], basis.raw[:, 0] ** 2, leverage)
     chi2 = node_chi2(basis, value[None])[:, 0, 0]
     return LinearPart(
-        baseline=baseline, amplitude=amplitude, chi2=chi2, leverage=leverage
+        baseline=baseline.T, amplitude=amplitude, chi2=chi2, leverage=leverage
     )
 
 
 def _levels(basis: Basis, data: FloatArray) -> FloatArray:
-    """Return weighted means of the sites, shape (n_sites, n_sets)."""
-    if not basis.has_baseline:
-        return np.zeros((data.shape[0], data.shape[2]))
-    total = np.maximum((basis.root_weight**2).sum(axis=1), np.finfo(float).tiny)
-    return np.asarray(
-        (basis.root_weight[..., None] * data).sum(axis=1) / total[:, None]
-    )
+    """Return weighted means of blocks, shape (n_blocks, n_sites, n_sets)."""
+    out = np.zeros((len(basis.block_weight), data.shape[0], data.shape[2]))
+    for number, part in enumerate(basis.block_weight if basis.has_baseline else ()):
+        total = np.maximum((part**2).sum(axis=1), np.finfo(float).tiny)
+        out[number] = (part[..., None] * data).sum(axis=1) / total[:, None]
+    return out
 
 
 def _forbid_negative_baseline(
@@ -191,9 +210,9 @@ def _forbid_negative_baseline(
     """Set the misfit right, in place, where the best baseline would be below 0."""
     values, total, level = data
     ratio = np.divide(
-        basis.mean,
+        basis.mean[0],
         basis.centred_length,
-        out=np.zeros_like(basis.mean),
+        out=np.zeros_like(basis.mean[0]),
         where=basis.centred_length > 0,
     )
     # Only nodes where the largest amplitude would pull the lowest level below 0.

@@ -1,6 +1,6 @@
 """Whether a whole molecule follows one process, or how many, and where."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -117,12 +117,8 @@ def _held_out(
     scores = np.zeros((tried, n_sites))
     for number in range(_FOLDS):
         held = fold == number
-        training = Profiles(
-            name=profiles.name,
-            x=profiles.x,
-            value=np.where(held, np.nan, profiles.value),
-            error=profiles.error,
-        )
+        value = np.where(held, np.nan, profiles.value)
+        training = replace(profiles, value=value)
         solver = make_solver(model, training)
         for count in range(1, tried + 1):
             scores[count - 1] += _score(solver, profiles, held, count, rng=rng)

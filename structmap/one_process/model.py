@@ -97,6 +97,8 @@ class Model:
         Where the equations were published.
     point_names : tuple of str
         Where x only counts the points (0, 1, …), what each of them is.
+    n_baselines : int
+        Baselines of a site: one for each block of points (`Profiles.block`).
 
     Notes
     -----
@@ -126,6 +128,7 @@ class Model:
     min_points: int = 5
     source: str = ""
     point_names: tuple[str, ...] = ()
+    n_baselines: int = 1
 
     def name_point(self, x: float) -> str:
         """Return what a point is called.
@@ -153,7 +156,8 @@ class Model:
         int
             Number of linear parameters of a site.
         """
-        return (self.amplitude != "unit") + (self.baseline != "none")
+        baselines = 0 if self.baseline == "none" else self.n_baselines
+        return (self.amplitude != "unit") + baselines
 
     @property
     def n_own(self) -> int:

@@ -1,6 +1,6 @@
 """The profiles of a group of sites, and what a fit of them found."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -28,15 +28,21 @@ class Profiles:
         In the base unit of the model, any order.
     value, error : ndarray of float, shape (n_sites, n_points)
         Standard errors are above 0; a missing point has NaN as its value.
+    block : ndarray of int, shape (n_points,)
+        Points of one block have a baseline in common; the default is one block.
     """
 
     name: tuple[str, ...]
     x: NDArray[np.float64]
     value: NDArray[np.float64]
     error: NDArray[np.float64]
+    block: NDArray[np.int64] = field(default_factory=lambda: np.zeros(0, np.int64))
 
     def __post_init__(self) -> None:
         store_read_only(self, "x", np.float64, (None,))
+        if not len(self.block):
+            object.__setattr__(self, "block", np.zeros(len(self.x), dtype=np.int64))
+        store_read_only(self, "block", np.int64, (len(self.x),))
         store_read_only(self, "value", np.float64, (len(self.name), len(self.x)))
         store_read_only(self, "error", np.float64, self.value.shape)
         if not np.all(np.isfinite(self.x)):
@@ -99,6 +105,7 @@ class Profiles:
             x=self.x,
             value=self.value[index],
             error=self.error[index],
+            block=self.block,
         )
 
     def take_points(self, keep: NDArray[np.bool_]) -> "Profiles":
@@ -119,6 +126,7 @@ class Profiles:
             x=self.x[keep],
             value=self.value[:, keep],
             error=self.error[:, keep],
+            block=self.block[keep],
         )
 
 
@@ -167,18 +175,24 @@ def find_flat_sites(profiles: Profiles) -> NDArray[np.bool_]:
     Returns
     -------
     ndarray of bool, shape (n_sites,)
-        True where chi-square about the weighted mean is below the 99 % point.
+        True where chi-square about the weighted mean, that of each block, is below the
+        99 % point.
     """
-    weight = profiles.root_weight**2
-    total = weight.sum(axis=1)
-    mean = np.divide(
-        (weight * profiles.filled).sum(axis=1),
-        total,
-        out=np.zeros(len(total)),
-        where=total > 0,
-    )
-    misfit = (weight * (profiles.filled - mean[:, None]) ** 2).sum(axis=1)
-    freedom = np.maximum(profiles.present.sum(axis=1) - 1, 1)
+    weight, present = profiles.root_weight**2, profiles.present
+    misfit = np.zeros(len(weight))
+    freedom = present.sum(axis=1)
+    for block in np.unique(profiles.block):
+        part = weight * (profiles.block == block)
+        total = part.sum(axis=1)
+        mean = np.divide(
+            (part * profiles.filled).sum(axis=1),
+            total,
+            out=np.zeros(len(total)),
+            where=total > 0,
+        )
+        misfit += (part * (profiles.filled - mean[:, None]) ** 2).sum(axis=1)
+        freedom = freedom - (total > 0)
+    freedom = np.maximum(freedom, 1)
     return np.asarray(misfit < chi2_law.ppf(FLAT_QUANTILE, freedom))
 
 
@@ -238,7 +252,8 @@ class GroupFit:
         Misfit of all sites together over them: with one companion for all, so that it
         can lie above the sum over the sites.
     baseline, amplitude, local : ndarray of float, shape (n_sites,)
-        Of the shared fit; `local` is NaN for models without.
+        Of the shared fit; `local` is NaN for models without, `baseline` that of the
+        first block of points.
     fitted, residual, leverage : ndarray of float, shape (n_sites, n_points)
         Of the shared fit; residuals are values less fitted ones, NaN where missing.
     curve_x : ndarray of float, shape (n_curve,)

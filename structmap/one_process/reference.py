@@ -90,7 +90,7 @@ def _set_statistics(
     out = np.empty(len(sets))
     for size in np.unique(sizes):
         which = np.nonzero(sizes == size)[0]
-        members = np.stack([sets[number] for number in which])
+        members = np.stack([sets[int(number)] for number in which])
         shared = parabola_minimum(table[members].sum(axis=1).T[None])[0]
         free = free_misfit[members].sum(axis=1)
         within = np.maximum(points[members].sum(axis=1) - each * size, 1)

@@ -42,6 +42,8 @@ class State:
         The model's function.
     part : LinearPart
         Baselines, amplitudes, misfits and leverages.
+    block : ndarray of int, shape (n_points,)
+        Which baseline each point has.
     """
 
     position: float
@@ -49,6 +51,7 @@ class State:
     local: NDArray[np.float64]
     kernel: NDArray[np.float64]
     part: LinearPart
+    block: NDArray[np.int64]
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -207,7 +210,7 @@ class SimpleSolver:
         """
         value = from_axis(positions[:, None], self.model.shared)
         kernel = self.model.function(self.profiles.x, value)
-        basis = make_basis(kernel, self.basis.root_weight, self.model)
+        basis = self._basis(kernel)
         table = node_chi2(basis, self.profiles.filled[None])
         return np.asarray(table[..., 0].sum(axis=0))
 
@@ -226,7 +229,7 @@ class SimpleSolver:
         """
         value = from_axis(positions[:, None], self.model.shared)
         kernel = self.model.function(self.profiles.x, value)[:, None]
-        basis = make_basis(kernel, self.basis.root_weight, self.model)
+        basis = self._basis(kernel)
         return node_chi2(basis, self.profiles.filled[None])[:, 0, 0]
 
     def state(self, position: float) -> State:
@@ -243,7 +246,7 @@ class SimpleSolver:
             With everything that belongs to it.
         """
         kernel = self._kernel(position, self.profiles.x)
-        basis = make_basis(kernel[None], self.basis.root_weight, self.model)
+        basis = self._basis(kernel[None])
         n_sites = len(self.profiles.name)
         return State(
             position=position,
@@ -251,6 +254,7 @@ class SimpleSolver:
             local=np.full(n_sites, np.nan),
             kernel=np.tile(kernel, (n_sites, 1)),
             part=solve_linear(basis, self.profiles.filled),
+            block=self.profiles.block,
         )
 
     def kernel_at(self, state: State, x: FloatArray) -> FloatArray:
@@ -288,7 +292,9 @@ class SimpleSolver:
         value = from_axis(state.position + shifts[..., None], self.model.shared)
         kernel = self.model.function(self.profiles.x, value)
         part = state.part
-        return np.asarray(part.baseline[:, None] + part.amplitude[:, None] * kernel)
+        return np.asarray(
+            part.baseline[:, self.profiles.block] + part.amplitude[:, None] * kernel
+        )
 
     def fitted_at_nodes(self, node: NDArray[np.int64]) -> FloatArray:
         """Return the fits of the sites alone, each at a node of its own.
@@ -305,9 +311,15 @@ class SimpleSolver:
         """
         value = from_axis(self.nodes[node][:, None], self.model.shared)
         kernel = np.asarray(self.model.function(self.profiles.x, value))
-        basis = make_basis(kernel[:, None], self.basis.root_weight, self.model)
+        basis = self._basis(kernel[:, None])
         part = solve_linear(basis, self.profiles.filled)
-        return np.asarray(part.baseline[:, None] + part.amplitude[:, None] * kernel)
+        return np.asarray(
+            part.baseline[:, self.profiles.block] + part.amplitude[:, None] * kernel
+        )
+
+    def _basis(self, kernel: FloatArray) -> Basis:
+        root, block = self.basis.root_weight, self.profiles.block
+        return make_basis(kernel, root, self.model, block=block)
 
     def _kernel(self, position: float, x: FloatArray) -> FloatArray:
         value = from_axis(np.array([position]), self.model.shared)
@@ -340,7 +352,7 @@ def make_simple_solver(model: Model, profiles: Profiles) -> SimpleSolver:
     if kernel.shape != (len(grid), len(profiles.x)):
         wanted = (len(grid), len(profiles.x))
         raise ValueError(f"function of {model.name} gives {kernel.shape}, not {wanted}")
-    basis = make_basis(kernel, profiles.root_weight, model)
+    basis = make_basis(kernel, profiles.root_weight, model, block=profiles.block)
     return SimpleSolver(
         model=model,
         profiles=profiles,

@@ -7,8 +7,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from structmap.experiment import SPINNING_MODEL
-from structmap.one_process.catalogue import Conditions, make_model
-from structmap.one_process.preparing import Prepared, prepare_profiles
+from structmap.one_process.catalogue import Conditions
+from structmap.one_process.columns import Prepared
+from structmap.one_process.preparing import prepare_profiles
 from structmap.one_process.reference import Reference, adjust_by_holm
 from structmap.one_process.sharing import OneProcess, TestOptions, judge_group
 from structmap.values import ValueTable
@@ -66,12 +67,11 @@ def analyse_table(
     if model_name != SPINNING_MODEL or known.experiment.nucleus != "1H":
         return judge_groups(prepared, groups, rng=rng, options=options)
     # The coupling between protons changes the shape: judge with the other choice too.
-    other = make_model(model_name, replace(known, homonuclear=not known.homonuclear))
+    switched = replace(known, homonuclear=not known.homonuclear)
+    other = prepare_profiles(table, model_name, conditions=switched, quantity=quantity)
     first, second = (
         judge_groups(choice, groups, rng=child, options=options)
-        for choice, child in zip(
-            (prepared, replace(prepared, model=other)), rng.spawn(2), strict=True
-        )
+        for choice, child in zip((prepared, other), rng.spawn(2), strict=True)
     )
     return tuple(
         compare_choices(one, two, with_pairs=known.homonuclear)

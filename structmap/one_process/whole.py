@@ -4,11 +4,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from structmap.one_process.columns import Prepared
 from structmap.one_process.engine import describe_fit, make_solver
 from structmap.one_process.mixture import Mixture, find_mixture
 from structmap.one_process.model import Model
 from structmap.one_process.phrases import show_number
-from structmap.one_process.preparing import Prepared
 from structmap.one_process.profiles import GroupFit, find_flat_sites
 
 _MOST_VALUES = 5

@@ -228,4 +228,7 @@ def _quantity(one: Series, rows: dict[SiteKey, int]) -> Quantity:
         value=value,
         error=error,
         has_errors=bool(np.isfinite(error).any()),
+        base=one.base,
+        mas_rate_hertz=one.conditions.mas_rate_hertz,
+        proton_frequency_megahertz=one.conditions.proton_frequency_megahertz,
     )

@@ -6,6 +6,7 @@ from collections import Counter, defaultdict
 from dataclasses import dataclass
 
 from structmap.errors import FileProblemError
+from structmap.values.conditions import ConditionColumn, find_condition_columns
 from structmap.values.errors import (
     NoQuantityError,
     NoSiteColumnError,
@@ -66,6 +67,8 @@ class Layout:
     quantity : int
         Column of a long table that names the quantity, -1 without one.
     notes : tuple of str
+    conditions : tuple of ConditionColumn
+        Columns of spinning rates and proton frequencies.
     """
 
     site: dict[SiteRole, int]
@@ -75,6 +78,7 @@ class Layout:
     x_unit: dict[str, str]
     quantity: int
     notes: tuple[str, ...]
+    conditions: tuple[ConditionColumn, ...] = ()
 
 
 def find_layout(grid: Grid) -> Layout:
@@ -109,7 +113,8 @@ def find_layout(grid: Grid) -> Layout:
     free = [c for c in range(len(grid.header)) if c not in site.values()]
     free = [c for c in free if grid.header[c] != _SKIPPED]
     x, quantity = _long_columns(grid, free)
-    free = [c for c in free if c not in (x, quantity)]
+    conditions = find_condition_columns(grid, free)
+    free = [c for c in free if c not in (x, quantity, *(k.column for k in conditions))]
     kept = [c for c in free if _is_measured(grid, c, notes)]
     names = _without_lonely_errors(grid, kept, [c for c in free if c not in kept])
     values = [c for c in names if not names[c].is_error]
@@ -125,7 +130,8 @@ def find_layout(grid: Grid) -> Layout:
         for column in values
     )
     x_name, x_unit = _describe_x(grid, x, measured, {c: names[c] for c in points})
-    return Layout(site, measured, x, x_name, x_unit, quantity, tuple(notes))
+    said = tuple(notes)
+    return Layout(site, measured, x, x_name, x_unit, quantity, said, conditions)
 
 
 def _site_columns(grid: Grid) -> dict[SiteRole, int]:

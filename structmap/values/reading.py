@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import NamedTuple
 
 from structmap.structure import one_letter
+from structmap.values.conditions import Conditions, read_conditions
 from structmap.values.errors import RepeatedRowError, UnreadableCellError
 from structmap.values.grid import Grid
 from structmap.values.headers import SiteRole
@@ -87,6 +88,10 @@ class Series:
         Blank for one number a site.
     points : dict
         Point by site and x.
+    base : str
+        Name without the conditions; blank where the table states none.
+    conditions : Conditions
+        Spinning rate and proton frequency.
     """
 
     name: str
@@ -95,6 +100,8 @@ class Series:
     x_name: str = ""
     x_unit: str = ""
     points: dict[tuple[SiteKey, float], Point] = field(default_factory=dict)
+    base: str = ""
+    conditions: Conditions = field(default_factory=Conditions)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -147,19 +154,20 @@ def take_rows(grid: Grid, layout: Layout, *, sha256: str) -> Reading:
     seen: dict[tuple[SiteKey, float, str], int] = {}
     series: dict[str, Series] = {}
     zeros: Counter[str] = Counter()
-    if layout.quantity < 0:
+    if layout.quantity < 0 and not layout.conditions:
         for column in layout.measured:  # in the order of the header
-            _series_of(series, layout, column, "")
+            _series_of(series, layout, column, "", Conditions())
     for row, line, (key, facts) in zip(grid.rows, grid.lines, identified, strict=True):
         _keep_site(grid, sites, key, facts)
         x = _x_of_row(grid, layout, row, line)
         called = row[layout.quantity] if layout.quantity >= 0 else ""
-        _refuse_repeated(grid, seen, (key, x, called), line)
+        at_which = read_conditions(grid, layout.conditions, row, line)
+        _refuse_repeated(grid, seen, (key, x, called + at_which.label), line)
         for column in layout.measured:
             point = _point(grid, column, row, line)
             if math.isnan(point.value):
                 continue
-            target = _series_of(series, layout, column, called)
+            target = _series_of(series, layout, column, called, at_which)
             zeros[target.name] += point.error == 0
             at = (
                 _SCALAR_X if not target.is_profile else x if layout.x >= 0 else column.x
@@ -293,10 +301,15 @@ def _point(
 
 
 def _series_of(
-    series: dict[str, Series], layout: Layout, column: MeasuredColumn, called: str
+    series: dict[str, Series],
+    layout: Layout,
+    column: MeasuredColumn,
+    called: str,
+    conditions: Conditions,
 ) -> Series:
     """Return the series of a column, made when it is met first."""
-    name = called or column.series
+    base = called or column.series
+    name = base + conditions.label
     is_profile = column.series in layout.x_name
     if name not in series:
         series[name] = Series(
@@ -305,5 +318,7 @@ def _series_of(
             is_profile=is_profile,
             x_name=layout.x_name.get(column.series, ""),
             x_unit=layout.x_unit.get(column.series, ""),
+            base=base if conditions.label else "",
+            conditions=conditions,
         )
     return series[name]

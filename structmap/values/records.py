@@ -28,6 +28,10 @@ class Quantity:
         given (blank or 0) is NaN.
     has_errors : bool
         Whether the table has an error for at least one value of it.
+    base : str
+        Name without the conditions; blank where the table states none.
+    mas_rate_hertz, proton_frequency_megahertz : float
+        Conditions that columns of the table state; 0 where they state none.
     """
 
     name: str
@@ -38,6 +42,9 @@ class Quantity:
     value: NDArray[np.float64]
     error: NDArray[np.float64]
     has_errors: bool
+    base: str = ""
+    mas_rate_hertz: float = 0.0
+    proton_frequency_megahertz: float = 0.0
 
     def __post_init__(self) -> None:
         n_points = max(1, len(self.x))

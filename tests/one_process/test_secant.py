@@ -5,7 +5,7 @@ import pytest
 
 from structmap.one_process.cpmg import cpmg_model, exact_cpmg
 from structmap.one_process.damped import iterate
-from structmap.one_process.engine import make_solver
+from structmap.one_process.engine import fitted_values, make_solver
 from structmap.one_process.exchange import TwoSites, exact_r1rho, exchange_r1rho_model
 from structmap.one_process.problems import Problems
 from structmap.one_process.profiles import make_profiles
@@ -50,7 +50,7 @@ def solved(name, *, rates=(1500.0,) * 5, seed=2):
 def test_secants_end_where_the_full_iteration_ends(name):
     solver = solved(name)
     state = solver.state(solver.fit_shared()[0])
-    fitted = state.part.baseline[:, None] + state.part.amplitude[:, None] * state.kernel
+    fitted = fitted_values(state, state.kernel)
     noise = np.random.default_rng(3).standard_normal((40, *fitted.shape))
     values = fitted + solver.profiles.error * noise
     axes = [state.position, float(to_axis(state.companion, solver.model.companion))]
