@@ -78,6 +78,69 @@ def test_lists_of_one_field_are_numbered(star):
     assert [q.name for q in values.quantities] == ["R1_600MHz_1", "R1_600MHz_2"]
 
 
+def spin_lock(field, *, frequency="600", rate=5.0, name=None):
+    """Return a T1rho list of two residues in the tags of the dictionary."""
+    return f"""
+save_{name or f"T1rho_{field}"}
+  _Heteronucl_T1rho_list.Sf_category heteronucl_T1rho_relaxation
+  _Heteronucl_T1rho_list.Spectrometer_frequency_1H {frequency}
+  _Heteronucl_T1rho_list.T1rho_val_units s-1
+  loop_
+    _T1rho.Seq_ID
+    _T1rho.Comp_ID
+    _T1rho.Atom_ID
+    _T1rho.T1rho_val
+    _T1rho.T1rho_val_err
+4 LYS N {rate} 0.1
+5 GLY N {rate + 1} 0.1
+  stop_
+save_
+"""
+
+
+def test_lists_named_by_their_spin_lock_are_points_of_a_profile(star):
+    lists = [
+        spin_lock(f"{field}kHz", rate=rate)
+        for field, rate in ((20, 5.0), (5, 7.0), (12.5, 6.0))
+    ]
+    values = star(*lists)
+    (profile,) = values.quantities
+    assert profile.name == "R1rho_600MHz"
+    assert profile.proton_frequency_megahertz == 600
+    np.testing.assert_array_equal(profile.x, [5, 12.5, 20])
+    assert profile.x_unit == "kHz"
+    np.testing.assert_array_equal(profile.value, [[7, 6, 5], [8, 7, 6]])
+    assert "T1rho_20kHz, T1rho_5kHz, T1rho_12.5kHz were recognised by" in " ".join(
+        values.notes
+    )
+
+
+def test_spin_lock_lists_of_two_spectrometers_are_two_profiles_of_one_base(star):
+    lists = [
+        spin_lock(f"{field}kHz", frequency=mega, name=f"T1rho_{mega}_{field}kHz")
+        for field in (5, 10, 20)
+        for mega in ("600", "850")
+    ]
+    values = star(*lists)
+    assert [(q.name, q.base) for q in values.quantities] == [
+        ("R1rho_600MHz", "R1rho"),
+        ("R1rho_850MHz", "R1rho"),
+    ]
+
+
+@pytest.mark.parametrize(
+    "names", [("a_1", "a_2", "a_3"), ("a_5kHz", "b_9kHz", "a_7kHz")]
+)
+def test_lists_whose_names_leave_the_field_open_are_kept_apart_and_it_is_said(
+    star, names
+):
+    values = star(*(spin_lock("", name=name) for name in names))
+    assert [len(q.x) for q in values.quantities] == [0, 0, 0]
+    assert "name their save frames by the field, such as R1rho_20kHz" in " ".join(
+        values.notes
+    )
+
+
 def test_side_chain_atoms_are_sites_of_their_own(star):
     values = star(relaxation(*ROWS, (4, "LYS", "NZ", 900, 9, 1)))
     assert values.atom.tolist() == ["", "NZ", ""]

@@ -133,7 +133,7 @@ def _prepare_tumbling(table: ValueTable, conditions: Conditions) -> Prepared:
     common = conditions.experiment.proton_frequency_megahertz
     rates, observables, fields, mobile = [], [], [], np.zeros(len(table.line), bool)
     for one, parts in found:
-        if parts is None:
+        if parts is None or len(one.x):
             continue
         if parts[1] == "NOE":
             mobile |= one.value[:, 0] < MOBILE_NOE

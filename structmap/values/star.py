@@ -10,8 +10,10 @@ from dataclasses import dataclass, replace
 from typing import Any, NamedTuple
 
 from structmap.errors import FileProblemError, MissingExtraError
+from structmap.values.conditions import Conditions
 from structmap.values.errors import RepeatedRowError, UnreadableCellError
 from structmap.values.grid import Source
+from structmap.values.headers import ColumnName, split_name
 from structmap.values.reading import Point, Reading, Series, SiteFacts, SiteKey
 from structmap.values.residues import is_residue_number, parse_error, parse_number
 
@@ -66,6 +68,7 @@ KINDS = (
     Kind("_H_exch_rate", "kex", "Val", "Val_err", "Val_units"),
     Kind("_H_exch_protection_factor", "protection_factor", "Val", "Val_err"),
 )
+_FIELD_LOOPS, _LEAST_POINTS = ("_T1rho", "_T2"), 3
 _SHIFTS = Kind("_Atom_chem_shift", "shift", "Val", "Val_err")
 
 
@@ -108,7 +111,10 @@ class StarList:
 def read_star(source: Source) -> Reading:
     """Read the values of an NMR-STAR or NEF file.
 
-    Times are turned into rates in s-1; quantities of several fields carry the proton
+    Three or more lists of R1rho or R2 at one proton frequency, whose save frames are
+    named by the field (``R1rho_20kHz``, ``R2_100Hz``), are points of one profile, for
+    the dictionary has no tag for the strength of a spin lock. Times are turned into
+    rates in s-1; quantities of several fields carry the proton
     frequency in their names (``R1_600MHz``). Chemical shifts are read where a file has
     nothing else: those of the backbone and of CB, one quantity an atom (``shift_N``).
 
@@ -136,8 +142,10 @@ def read_star(source: Source) -> Reading:
     """
     frames = _frames(source)
     lists = [one for kind in KINDS for one in _lists(frames, kind)]
+    apart: list[str] = []
     if lists:
-        series = [_rates(source, one) for one in lists]
+        rates = [(one, _rates(source, one)) for one in lists]
+        series = list(_join_points(rates, apart))
     else:
         lists = _lists(frames, _SHIFTS) + _nef_lists(frames)
         series = [
@@ -159,7 +167,10 @@ def read_star(source: Source) -> Reading:
         sha256=source.sha256,
         sites=dict(sorted(sites.items())),
         series=tuple(_distinct(series)),
-        notes=tuple(_notes(source, lists, series)),
+        notes=(
+            *_notes(source, lists, series),
+            *(f"{source.path.name}: {note}" for note in apart),
+        ),
     )
 
 
@@ -357,11 +368,80 @@ def _refuse_several_molecules(source: Source, one: StarList) -> None:
 
 def _name(one: StarList) -> str:
     """Return the name of a quantity, with the proton frequency where it is stated."""
-    frequency = one.tags.get("Spectrometer_frequency_1H", "")
+    frequency = _frequency(one)
+    return f"{one.kind.name}_{round(frequency)}MHz" if frequency else one.kind.name
+
+
+def _frequency(one: StarList) -> float:
+    """Return the proton frequency of a list in MHz, 0 where it is not stated."""
     try:
-        return f"{one.kind.name}_{round(float(frequency))}MHz"
+        return float(one.tags.get("Spectrometer_frequency_1H", ""))
     except ValueError:
-        return one.kind.name
+        return 0.0
+
+
+def _join_points(
+    rates: list[tuple[StarList, Series]], notes: list[str]
+) -> Iterator[Series]:
+    """Yield the series, with lists named by their field joined as one profile."""
+    by_name: dict[str, list[tuple[StarList, Series]]] = defaultdict(list)
+    for one, series in rates:
+        by_name[series.name].append((one, series))
+    for name, parts in by_name.items():
+        several = len(parts) >= _LEAST_POINTS and parts[0][0].kind.loop in _FIELD_LOOPS
+        places = [_field_of(one) for one, _ in parts] if several else []
+        frames = ", ".join(one.frame for one, _ in parts)
+        if (
+            places
+            and all(places)
+            and len({(p.stem, p.x_unit) for p in places if p}) == 1
+        ):
+            xs = [place.x or 0.0 for place in places if place]
+            if len(set(xs)) == len(xs):
+                unit = places[0].x_unit if places[0] else ""
+                yield _profile(parts, xs, unit)
+                notes.append(
+                    f"the lists {frames} were recognised by their names as one profile "
+                    f"of {name}, x in {unit}."
+                )
+                continue
+        if several:
+            notes.append(
+                f"the {len(parts)} lists of {name} are kept apart ({frames}); if they "
+                f"are points of one profile, name their save frames by the field, such "
+                f"as {parts[0][0].kind.name}_20kHz."
+            )
+        yield from (series for _, series in parts)
+
+
+def _field_of(one: StarList) -> ColumnName | None:
+    """Return the field that the name of a list ends in; None without a unit."""
+    for name in (one.frame, one.tags.get("Name", "")):
+        parts = split_name(name)
+        if parts.x is not None and parts.x_unit in ("Hz", "kHz"):
+            return parts
+    return None
+
+
+def _profile(
+    parts: list[tuple[StarList, Series]], xs: list[float], unit: str
+) -> Series:
+    first, series = parts[0]
+    points = {
+        (key, x): point
+        for (_, part), x in zip(parts, xs, strict=True)
+        for (key, _), point in part.points.items()
+    }
+    frequency = _frequency(first)
+    return replace(
+        series,
+        is_profile=True,
+        x_name="x",
+        x_unit=unit,
+        points=points,
+        base=first.kind.name if frequency else "",
+        conditions=Conditions(proton_frequency_megahertz=frequency),
+    )
 
 
 def _distinct(series: list[Series]) -> Iterator[Series]:
