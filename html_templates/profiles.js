@@ -247,13 +247,13 @@ function drawOverview(box, width, height) {
   const groups = data.units.map((unit, u) => ({ unit: u, members: unit.members }));
   const movers = data.entries.moves.flatMap((m, e) => (m ? [e] : []));
   if (!groups.length) groups.push({ unit: -1, members: movers.length ? movers : measuredEntries() });
-  const row = Math.max(groups.length > 4 ? 84 : 96, Math.min(groups.length > 2 ? 138 : 190, (height - 22) / groups.length));
+  const row = Math.max(state.printing ? 78 : groups.length > 4 ? 84 : 96, Math.min(groups.length > 2 ? 138 : 190, (height - 22) / groups.length));
   const whole = row * groups.length + 22;
   if (whole > height + 1) box.style.overflowY = "auto";
   const values = laid || profile.above;
   const [low, high] = rangeOf(groups.flatMap((g) => g.members), values, null);
   const range = laid ? [Math.min(low, -0.2), Math.max(high, 1.2)] : [low, high];
-  const side = state.printing ? 122 : Math.min(150, Math.max(134, width * 0.27));
+  const side = state.printing ? 142 : Math.min(150, Math.max(134, width * 0.27));
   const nodes = groups.map((group, i) => {
     const axes = axesIn(34, 14, width - 34 - side - 16, row - 46, range);
     const last = i === groups.length - 1;
