@@ -69,6 +69,7 @@ def test_tables_have_the_columns_of_the_design(example):
     assert heads["motional_units.csv"] == (
         "motional_unit,n_sites,sites,energy,verdict,p_any,p_place,p_smooth,stability,contrast,"
         "lattice_verdict,lattice_operators,share_kept_without_lattice,pieces_without_lattice,"
+        "share_by_lattice_alone,"
         "joining_distance_chain,joining_distance_complex,joining_distance_lattice,one_process,"
         "parameter,parameter_low,parameter_high,plain_words"
     )
@@ -101,6 +102,7 @@ def test_the_unit_planted_across_a_crystal_contact_is_called_so(example):
     assert jaccard(members(units, row), ACROSS) >= 0.8
     assert units.loc[row, "lattice_verdict"] in ("lattice-joined", "lattice-only")
     assert units.loc[row, "lattice_operators"]
+    assert 0 < units.loc[row, "share_by_lattice_alone"] <= 1
     assert units.loc[row, "joining_distance_lattice"] <= 4.5
     assert not units.loc[row, "joining_distance_complex"] <= 4.5
 

@@ -8,7 +8,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from structmap.analysis import analyse
+from structmap.analysis import analyse, list_contacts
 from structmap.analysis.compute import analyse_table
 from structmap.errors import SettingError
 from structmap.settings import Settings
@@ -164,3 +164,16 @@ def test_directions_of_periods():
     assert directions([[0, 1, 0]]) == "along b"
     assert directions([[-1, 0, 0], [1, 0, 2]]) == "along a and [1 0 2]"
     assert directions([]) == ""
+
+
+@pytest.mark.parametrize(
+    ("name", "said"),
+    [
+        ("3jqh.cif", "a finite slice of an endless rod: its contacts go on"),
+        ("5e5z.pdb", "a finite slice of an endless layer: its contacts go on"),
+        ("4cup.cif.gz", ""),
+    ],
+)
+def test_the_list_of_contacts_names_a_slice_of_something_endless(name, said):
+    notes = list_contacts(DATA / name, Settings())[1]
+    assert [said in note for note in notes if "endless" in note] == [True] * bool(said)

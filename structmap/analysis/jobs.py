@@ -40,6 +40,7 @@ from structmap.one_process import (
     whole_words,
 )
 from structmap.page import forms_html
+from structmap.quotient import assembly_extent
 from structmap.settings import Settings
 from structmap.shifts import (
     compare_shifts,
@@ -53,6 +54,7 @@ from structmap.sites import Sites, match_rows
 from structmap.structure import LOW_CONFIDENCE, read_structure
 from structmap.tables import Table, contacts_table, table_text
 from structmap.values import read_values
+from structmap.words import extent_sentence
 
 
 def match_numbering(
@@ -169,8 +171,10 @@ def list_contacts(
     notes.append(f"assemblies that make contacts complex: {names or 'none stated'}")
     chemistry = find_chemistry(structure, found, assemblies=assemblies).text
     table = contacts_table(structure, found, chemistry=chemistry)
-    overlap = overlap_warning(structure, found)
-    return table, (*notes, *structure.warnings, *filter(None, (overlap,)))
+    odd = [overlap_warning(structure, found)]
+    if assemblies:
+        odd.append(extent_sentence(assembly_extent(structure, found)))
+    return table, (*notes, *structure.warnings, *filter(None, odd))
 
 
 def judge_table(

@@ -25,6 +25,7 @@ def units_table(record: AnalysisRecord) -> Table:
         *(
             "share_kept_without_lattice",
             "pieces_without_lattice",
+            "share_by_lattice_alone",
             "joining_distance_chain",
         ),
         *(
@@ -53,6 +54,7 @@ def _unit_row(record: AnalysisRecord, unit: MotionalUnit) -> tuple[Cell, ...]:
         *(
             lattice.share_kept_without_lattice,
             pieces,
+            record.hold_of(unit).largest_by_lattice_alone / len(unit.members),
             *lattice.joining_distance_angstrom,
         ),
         *_process_cells(record, unit),

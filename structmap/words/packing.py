@@ -6,6 +6,7 @@ from numpy.typing import NDArray
 from structmap.cell import DIFFERENT_CRYSTAL
 from structmap.contacts import overlap_warning
 from structmap.holding import NetworkEvidence
+from structmap.quotient import AssemblyExtent
 from structmap.result import AnalysisRecord
 from structmap.structure import (
     LOW_CONFIDENCE,
@@ -248,8 +249,25 @@ def endless_sentence(record: AnalysisRecord) -> str:
     str
         Blank when it is finite.
     """
-    extent = record.packing.extent
-    if not extent.is_endless or not record.packing.assemblies:
+    if not record.packing.assemblies:
+        return ""
+    return extent_sentence(record.packing.extent)
+
+
+def extent_sentence(extent: AssemblyExtent) -> str:
+    """Return that an assembly is a slice of something endless.
+
+    Parameters
+    ----------
+    extent : AssemblyExtent
+        How far its contacts go.
+
+    Returns
+    -------
+    str
+        Blank when it is finite.
+    """
+    if not extent.is_endless:
         return ""
     rank = max(part.rank for part in extent.parts)
     part = next(part for part in extent.parts if part.rank == rank)
