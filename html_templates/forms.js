@@ -84,19 +84,27 @@ function formsCaption() {
     return [bold(`${name}: ${verdict}.`), ` Laid out in each form where its residues meet: ${each}. Solid lines: contacts between its residues; dashed: made in another form alone.`];
   }
   if (chosen.size) {
-    const own = forms.contacts.filter((row) => row.places.some((p) => chosen.has(p)));
+    const all = forms.contacts.filter((row) => row.places.some((p) => chosen.has(p)));
+    const own = formsState.contact >= 0 ? [forms.contacts[formsState.contact]] : all;
     const names = [...chosen].map((p) => forms.places[p]).join(" ");
     if (!own.length) return [bold(`${names} chosen.`), " None of its listed contacts opens or closes between the forms."];
-    const shown = own.slice(0, 6).map((row) => {
-      const ends = row.places.map((p) => forms.places[p]).join(" – ");
-      return `${ends} (${row.kind}): ${row.forms.map((form, f) => `${form ? (form.distance === null ? "broken" : `${form.distance.toFixed(1)}\u00a0Å`) : "not modelled"} in ${forms.forms[f].name}`).join(", ")}`;
-    });
     const more = own.length > 6 ? `; ${own.length - 6} more in c` : "";
-    return [bold(`${names} chosen.`), ` ${shown.join("; ")}${more}.`];
+    return [bold(`${names} chosen.`), ` ${own.slice(0, 6).map(contactWords).join("; ")}${more}.`];
   }
   const keys = Math.min(9, forms.units.length);
   const choose = keys ? ` ${keys === 1 ? "Key 1 takes the unit" : `Keys 1 to ${keys} take a unit`}, a bead or a name one residue; Escape clears.` : "";
   return [`${forms.core} Lines join residues whose contact opens or closes: solid where it is made, dashed where it is broken; a line into a neighbour ends in a ball where the partner stands.${choose}`];
+}
+
+/** A contact in all forms: where it is made, then where it is broken. @param {FormsPayload["contacts"][number]} row */
+function contactWords(row) {
+  const named = (/** @type {(form: ContactInForm|null) => boolean} */ wanted) => forms.forms.map((form) => form.name).filter((_, f) => wanted(row.forms[f]));
+  const made = row.forms.flatMap((form, f) => (form && form.distance !== null ? [`${form.distance.toFixed(1)}\u00a0Å in ${forms.forms[f].name}`] : []));
+  const broken = named((form) => form !== null && form.distance === null);
+  const missing = named((form) => form === null);
+  if (broken.length) made.push(`broken in ${broken.join(" and ")}`);
+  if (missing.length) made.push(`not modelled in ${missing.join(" and ")}`);
+  return `${row.places.map((p) => forms.places[p]).join(" – ")} (${row.kind}): ${made.join(", ")}`;
 }
 
 /** Words above each picture. */

@@ -317,7 +317,7 @@ function formLines(f) {
     const own = contact >= 0 ? c === contact : row.places.some((p) => chosen.has(p));
     if (chosen.size && !own) return [];
     const inside = row.units[0] >= 0 && row.units[0] === row.units[1] ? row.units[0] : -1;
-    const colour = chosen.size ? tokens.ink : inside >= 0 ? unitColour(inside) : tokens.rule2;
+    const colour = chosen.size ? tokens.ink : inside >= 0 ? unitColour(inside) : isDark() ? tokens.ink3 : tokens.rule2;
     return contactLine(f, c, colour, chosen.size ? 0.12 : 0.05);
   });
   return lines;
