@@ -191,8 +191,9 @@ function laidCaption(laid) {
   });
   const where = [...there].sort(([p], [q]) => p - q).map(([image, names]) => {
     if (image < 0) return `${listing(names)} of this molecule`;
-    const { printed, shift } = imageOf(image);
-    return `${listing(names)} of the ${printed ? `neighbour at ${printed} (${shift.map(minus).join(" ")})` : "mate in the assembly"}`;
+    const { printed, shift, numeral } = imageOf(image);
+    const what = numeral ? "neighbour" : "copy";
+    return `${listing(names)} of the ${printed ? `${what} at ${printed} (${shift.map(minus).join(" ")})` : "mate in the assembly"}`;
   });
   const last = where.pop();
   const words = [`Each residue is drawn once, where it meets the others: ${where.length ? `${where.join(", ")} and ${last}` : last}. `];
