@@ -191,8 +191,17 @@ def test_unassigned_rows_are_left_out_and_said(star):
             "a time or rate is above 0",
         ),
         ((relaxation(*ROWS)[:-30],), FileProblemError, "broken or truncated NMR-STAR"),
-        ((relaxation(*ROWS, (6, "ALA")),), FileProblemError, "broken or truncated"),
-        ((relaxation(*ROWS),) * 2, FileProblemError, "broken or truncated"),
+        (
+            (relaxation(*ROWS, (6, "ALA")),),
+            FileProblemError,
+            r"NMR-STAR file \(line \d+: The loop being parsed, '_T1' does not have the "
+            r"expected number of data elements\); mend it there",
+        ),
+        (
+            (relaxation(*ROWS),) * 2,
+            FileProblemError,
+            r"has two save frames called T1_set \(lines 3 and 20\); give each its own",
+        ),
         (
             ("save_a\n _A.Sf_category b\nsave_\n",),
             FileProblemError,

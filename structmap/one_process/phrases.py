@@ -4,6 +4,7 @@ import numpy as np
 
 from structmap.one_process.sharing import OneProcess
 
+_LISTED = 8
 _LIKELY = 0.2
 _NOTABLE = 1.5
 _PREFIXES = ((1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
@@ -103,6 +104,14 @@ def plain_words(result: OneProcess) -> tuple[str, ...]:
         sentences.append(
             f"{len(result.flat)} of {len(result.sites)} profiles are flat and carry no "
             "information: outside the window of this experiment, which is not rest."
+        )
+    if result.too_short and result.fit:
+        several = len(result.too_short) > 1
+        has, is_ = ("sites have", "are") if several else ("site has", "is")
+        more = ", …" if len(result.too_short) > _LISTED else ""
+        sentences.append(
+            f"{len(result.too_short)} {has} too few points and {is_} left out: "
+            f"{', '.join(result.too_short[:_LISTED])}{more}."
         )
     if result.error_note:
         sentences.append(f"{result.error_note[0].upper()}{result.error_note[1:]}.")

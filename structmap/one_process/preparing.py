@@ -102,7 +102,14 @@ def prepare_profiles(
             if reason
         ),
     )
+    others = [one.name for one in table.quantities if len(one.x) and one is not profile]
     prepared = replace(prepared, quantities=(profile.name,))
+    if others and not quantity:
+        note = (
+            f"{profile.name} is fitted; the other profiles ({', '.join(others)}) are "
+            "not: choose one with --process-quantity."
+        )
+        prepared = replace(prepared, notes=(*prepared.notes, note))
     if model_name != SPINNING_MODEL:
         return prepared
     return replace(prepared, notes=(*prepared.notes, *share_note(conditions)))

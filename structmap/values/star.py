@@ -4,6 +4,7 @@ Tag names are those of the NMR-STAR 3 dictionary and of NEF 1.1.
 """
 
 import math
+import re
 from collections import Counter, defaultdict
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
@@ -188,11 +189,25 @@ def _frames(source: Source) -> list[Any]:
     try:
         return list(pynmrstar.Entry.from_string(text).frame_list)
     except (pynmrstar.exceptions.ParsingError, ValueError) as error:
-        what = " ".join(str(error).split())[:120]
-        problem = f"is a broken or truncated NMR-STAR file ({what})"
-        raise FileProblemError(
-            source.path, problem, "fetch it again or mend it"
-        ) from error
+        raise FileProblemError(source.path, *_fault(error, text)) from error
+
+
+def _fault(error: Exception, text: str) -> tuple[str, str]:
+    """Return what is wrong with a file and what to do, in the reader's words."""
+    repeated = re.search(r"saveframe with name '([^']*)' since", str(error))
+    if repeated:
+        name = repeated[1]
+        lines = [
+            n for n, line in enumerate(text.split("\n"), 1) if line == f"save_{name}"
+        ]
+        where = f" (lines {lines[0]} and {lines[1]})" if len(lines) > 1 else ""
+        return f"has two save frames called {name}{where}", "give each its own name"
+    what = " ".join(str(getattr(error, "message", error)).split())
+    sentence = what.split(". ")[0].rstrip(".")
+    line = getattr(error, "line_number", None)
+    where = f"line {line}: " if line else ""
+    problem = f"is a broken or truncated NMR-STAR file ({where}{sentence})"
+    return problem, "mend it there, or fetch it again"
 
 
 def _lists(frames: list[Any], kind: Kind) -> list[StarList]:

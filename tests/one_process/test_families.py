@@ -137,3 +137,23 @@ def test_other_models_take_one_condition(tmp_path, capsys):
     status, found, _ = judge(tmp_path, capsys, rows(n_sites=3), *more)
     assert status == 0
     assert found[0]["model"] == "exchange-r1rho"
+
+
+def test_sites_with_few_points_and_other_profiles_are_told(tmp_path, capsys):
+    time = np.array([0.5, 1, 2, 3, 4, 6])
+    lines = [
+        f"{site},{x},{site + 2 * np.exp(-0.4 * x):.4f},0.02,{x},0.1\n"
+        for site in range(1, 6)
+        for x in time
+        if site < 5 or x < 2.5
+    ]
+    head = "residue,x = time [s],I,I_error,J,J_error\n"
+    more = ("--model", "exponential")
+    status, _, said = judge(tmp_path, capsys, lines, *more, header=head)
+    assert status == 0
+    assert "1 site has too few points and is left out: 5." in said
+    assert "I is fitted; the other profiles (J) are not" in said
+    *_, said = judge(
+        tmp_path, capsys, lines, *more, "--process-quantity", "I", header=head
+    )
+    assert "is fitted; the other" not in said
