@@ -186,3 +186,15 @@ def test_quiet_says_nothing_and_a_pipe_stays_clean(tmp_path):
         [*call, path, "--quiet"], capture_output=True, check=True, env=environment
     )
     assert quiet.stdout == b"" == quiet.stderr
+
+
+def test_the_list_of_contacts_waits_for_no_statistics():
+    code = (
+        "import sys\nimport structmap.contact_list\n"
+        "heavy = ('pandas', 'scipy.stats', 'sklearn', 'scipy.optimize')\n"
+        "print('loaded:', [name for name in heavy if name in sys.modules])\n"
+    )
+    done = subprocess.run(
+        [sys.executable, "-c", code], capture_output=True, text=True, check=True
+    )
+    assert "loaded: []" in done.stdout

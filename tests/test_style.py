@@ -13,8 +13,16 @@ PACKAGE = Path(__file__).resolve().parent.parent / "structmap"
 MODULES = sorted(PACKAGE.rglob("*.py"))
 ORDER = (
     *("version", "errors", "records", "files", "settings", "structure", "cell"),
+    "plain_table",
     *("values", "sites", "contacts", "atom_pairs", "secondary", "chemistry"),
-    *("quotient", "weakest", "experiment", "behaviour", "motional_units"),
+    *(
+        "quotient",
+        "weakest",
+        "contact_list",
+        "experiment",
+        "behaviour",
+        "motional_units",
+    ),
     *("significance", "lattice", "one_process", "shifts", "network", "exposure"),
     *("holding", "result", "words", "tables", "forms", "page", "figures"),
     *("analysis", "batch", "cli"),

@@ -11,10 +11,11 @@ import pytest
 from structmap.analysis import analyse, list_contacts
 from structmap.analysis.compute import analyse_table
 from structmap.errors import SettingError
+from structmap.quotient import directions
 from structmap.settings import Settings
 from structmap.structure import POLYMER, read_structure
 from structmap.words import care_sentences, facts, rests_on, unit_holds
-from structmap.words.holding import directions, link_phrase
+from structmap.words.holding import link_phrase
 
 DATA = Path(__file__).parent / "data"
 ACROSS = {1916, 1919, 1920, 1922, 1955, 1956, 1959, 1960}

@@ -6,11 +6,11 @@ from structmap.analysis.jobs import (
     ShiftChoices,
     compare_analyses,
     judge_table,
-    list_contacts,
     match_notes,
     match_numbering,
     perturb_shifts,
 )
+from structmap.contact_list import list_contacts
 
 __all__ = [
     "Analysis",

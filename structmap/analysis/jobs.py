@@ -1,4 +1,4 @@
-"""The smaller jobs: only the numbering, only the contacts."""
+"""The smaller jobs: only the numbering, only one process, forms, shifts."""
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
@@ -13,17 +13,7 @@ from structmap.analysis.processes import (
     process_quantity,
 )
 from structmap.analysis.steps import (
-    Progress,
-    cutoff_of,
     match_by_settings,
-    say_nothing,
-)
-from structmap.chemistry import find_chemistry
-from structmap.contacts import (
-    KINDS,
-    choose_assemblies,
-    find_contacts,
-    overlap_warning,
 )
 from structmap.errors import SettingError
 from structmap.experiment import convert_to_base
@@ -40,7 +30,6 @@ from structmap.one_process import (
     whole_words,
 )
 from structmap.page import forms_html
-from structmap.quotient import assembly_extent
 from structmap.settings import Settings
 from structmap.shifts import (
     compare_shifts,
@@ -51,10 +40,9 @@ from structmap.shifts import (
     profile_rows,
 )
 from structmap.sites import Sites, match_rows
-from structmap.structure import LOW_CONFIDENCE, read_structure
-from structmap.tables import Table, contacts_table, table_text
+from structmap.structure import read_structure
+from structmap.tables import Table, table_text
 from structmap.values import read_values
-from structmap.words import extent_sentence
 
 
 def match_numbering(
@@ -118,63 +106,6 @@ def match_notes(sites: Sites) -> tuple[str, ...]:
     lines += [f"name differs: {phrase}" for phrase in sites.mismatches]
     lines += [f"no residue: {phrase}" for phrase in sites.unmatched]
     return (*lines, *sites.notes)
-
-
-def list_contacts(
-    coordinates: Path | str, settings: Settings, *, progress: Progress | None = None
-) -> tuple[Table, tuple[str, ...]]:
-    """List the residue contacts over the crystal.
-
-    Parameters
-    ----------
-    coordinates : Path or str
-        Coordinate file.
-    settings : Settings
-        Every choice of the analysis.
-    progress : callable, optional
-        Called with the name of a step and the share done.
-
-    Returns
-    -------
-    table : Table
-        As ``contacts.csv``.
-    notes : tuple of str
-        Counts by kind, what the kinds rest on, what is odd about the file.
-
-    Raises
-    ------
-    StructmapError
-        If the file cannot be used.
-    """
-    tell = progress or say_nothing
-    tell("reading coordinates", 0.0)
-    structure = read_structure(Path(coordinates), model=settings.coordinate_model)
-    tell("finding contacts over the crystal", 0.3)
-    assemblies = choose_assemblies(structure, settings.assembly)
-    found = find_contacts(
-        structure, reach_angstrom=cutoff_of(structure, settings), assemblies=assemblies
-    )
-    counts = ", ".join(
-        f"{(found.kind == k).sum()} {kind}" for k, kind in enumerate(KINDS)
-    )
-    notes = [f"{len(found.kind)} residue contacts: {counts}"]
-    if structure.crystal is None:
-        notes.append(f"no lattice contacts, because {structure.no_crystal_reason}")
-    if found.weak.any():
-        notes.append(
-            f"{found.weak.sum()} contacts are weak: a residue was predicted with a "
-            f"confidence below {LOW_CONFIDENCE:g}"
-        )
-    names = ", ".join(
-        f"{a.name} ({a.oligomer})" if a.oligomer else a.name for a in assemblies
-    )
-    notes.append(f"assemblies that make contacts complex: {names or 'none stated'}")
-    chemistry = find_chemistry(structure, found, assemblies=assemblies).text
-    table = contacts_table(structure, found, chemistry=chemistry)
-    odd = [overlap_warning(structure, found)]
-    if assemblies:
-        odd.append(extent_sentence(assembly_extent(structure, found)))
-    return table, (*notes, *structure.warnings, *filter(None, odd))
 
 
 def judge_table(

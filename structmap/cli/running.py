@@ -75,9 +75,9 @@ def run_contacts(call: argparse.Namespace) -> None:
         The words of the call.
     """
     settings = settings_of(call)
-    from structmap.analysis import list_contacts
+    from structmap.contact_list import list_contacts
     from structmap.files import write_file
-    from structmap.tables import table_text
+    from structmap.plain_table import table_text
 
     with Progress(quiet=call.quiet) as progress:
         table, notes = list_contacts(call.coordinates, settings, progress=progress)

@@ -8,7 +8,13 @@ from structmap.quotient.elements import (
     elements_of_contacts,
     make_elements,
 )
-from structmap.quotient.extent import AssemblyExtent, ExtentPart, assembly_extent
+from structmap.quotient.extent import (
+    AssemblyExtent,
+    ExtentPart,
+    assembly_extent,
+    directions,
+    extent_sentence,
+)
 from structmap.quotient.placement import Edges, Placement, cycle_elements, place_nodes
 from structmap.quotient.unit import UnitLayout, UnitLevel, lay_out_unit
 
@@ -27,7 +33,9 @@ __all__ = [
     "close_group",
     "close_transforms",
     "cycle_elements",
+    "directions",
     "elements_of_contacts",
+    "extent_sentence",
     "lay_out_unit",
     "make_elements",
     "place_nodes",

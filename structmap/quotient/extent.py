@@ -1,5 +1,6 @@
 """How far an assembly goes: a finite complex, or a slice of an endless rod or layer."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -128,3 +129,52 @@ def _chain_edges(structure: Structure, contacts: Contacts, highest_kind: int) ->
         ),
         kind=contacts.kind[chosen],
     )
+
+
+def extent_sentence(extent: AssemblyExtent) -> str:
+    """Return that an assembly is a slice of something endless.
+
+    Parameters
+    ----------
+    extent : AssemblyExtent
+        How far its contacts go.
+
+    Returns
+    -------
+    str
+        Blank when it is finite.
+    """
+    if not extent.is_endless:
+        return ""
+    rank = max(part.rank for part in extent.parts)
+    part = next(part for part in extent.parts if part.rank == rank)
+    where = directions(part.periods.tolist())
+    return (
+        f"The assembly is a finite slice of an endless {extent.closes}: its contacts "
+        f"go on through the crystal {where}.".replace(" .", ".")
+    )
+
+
+def directions(periods: Sequence[Sequence[float]]) -> str:
+    """Return the directions of periods in words.
+
+    Parameters
+    ----------
+    periods : sequence of sequence of float
+        Translations in cell edges.
+
+    Returns
+    -------
+    str
+        ``along b``, ``along a and [1 0 2]``; blank without any.
+    """
+    axes = {"1 0 0": "a", "0 1 0": "b", "0 0 1": "c"}
+    names = []
+    for period in periods:
+        steps = " ".join(f"{x:g}" for x in period).replace("-0 ", "0 ")
+        unsigned = steps.replace("-", "")
+        names.append(axes.get(unsigned, f"[{steps.replace('-', '−')}]"))
+    names.sort(key=lambda name: (name.startswith("["), name))
+    if len(names) > 1:
+        names = [", ".join(names[:-1]), names[-1]]
+    return f"along {' and '.join(names)}" if names else ""

@@ -1,10 +1,10 @@
 """The files of one analysis, as text: tables, mapped coordinates, run record."""
 
-from structmap.tables.contacts import contacts_table
+from structmap.contact_list import contacts_table
+from structmap.plain_table import Cell, Table, cell_text, plain, table_text
 from structmap.tables.mapped import mapped_coordinates
 from structmap.tables.run import library_versions, run_text
 from structmap.tables.sites import sites_table
-from structmap.tables.text import Cell, Table, cell_text, plain, table_text
 from structmap.tables.units import processes_table, units_table
 
 __all__ = [

@@ -4,9 +4,9 @@ from typing import Any
 
 import numpy as np
 
+from structmap.plain_table import Cell
 from structmap.result import AnalysisRecord
 from structmap.structure import Structure, residue_label
-from structmap.tables.text import Cell
 
 
 def site_identity(record: AnalysisRecord, site: int) -> tuple[Cell, ...]:

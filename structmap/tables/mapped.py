@@ -8,10 +8,10 @@ import gemmi
 import numpy as np
 
 from structmap.errors import FileProblemError
+from structmap.plain_table import cell_text
 from structmap.result import AnalysisRecord
 from structmap.structure import part_atom
 from structmap.tables.columns import site_identity, spread_over_sites
-from structmap.tables.text import cell_text
 
 
 def mapped_coordinates(record: AnalysisRecord, coordinates: Path) -> str:

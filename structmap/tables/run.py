@@ -8,9 +8,9 @@ from importlib.metadata import PackageNotFoundError, version
 import numpy as np
 
 from structmap.contacts import KINDS
+from structmap.plain_table import plain
 from structmap.result import AnalysisRecord
 from structmap.tables.packing import packing_content
-from structmap.tables.text import plain
 from structmap.version import __version__
 from structmap.words import care_sentences, low_quantities
 

@@ -5,9 +5,9 @@ from collections.abc import Mapping, Sequence
 import numpy as np
 
 from structmap.contacts import LATTICE
+from structmap.plain_table import Cell, Table, plain
 from structmap.result import AnalysisRecord
 from structmap.tables.columns import residue_text, site_identity, spread_over_sites
-from structmap.tables.text import Cell, Table, plain
 from structmap.words import confidence_note, find_gaps, gap_note
 
 

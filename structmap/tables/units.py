@@ -1,8 +1,8 @@
 """``motional_units.csv``: a row for each motional unit."""
 
 from structmap.one_process import ONE_PROCESS_COLUMNS, table_rows
+from structmap.plain_table import Cell, Table, plain
 from structmap.result import AnalysisRecord, MotionalUnit
-from structmap.tables.text import Cell, Table, plain
 from structmap.words import unit_sentence
 
 

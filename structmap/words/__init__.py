@@ -24,7 +24,7 @@ from structmap.words.names import (
     site_name,
 )
 from structmap.words.notes import colophon, rests_on, summary_lines
-from structmap.words.packing import confidence_note, extent_sentence
+from structmap.words.packing import confidence_note
 from structmap.words.phrases import joining_numerals, lattice_phrase, members_phrase
 from structmap.words.units import (
     p_text,
@@ -42,7 +42,6 @@ __all__ = [
     "direction_phrase",
     "direction_sentence",
     "errors_off_baseline",
-    "extent_sentence",
     "facts",
     "find_gaps",
     "fitted_site_names",

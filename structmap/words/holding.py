@@ -5,6 +5,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from structmap.holding import Hold
+from structmap.quotient import directions
 from structmap.result import AnalysisRecord, MotionalUnit
 from structmap.structure import LOW_CONFIDENCE, one_letter
 from structmap.words.names import listing, number_in_words
@@ -165,29 +166,6 @@ def _closing(hold: Hold) -> str:
     if hold.closes == "ring":
         return f"closes to a ring of {number_in_words(hold.order)}"
     return f"goes on without end: a {hold.closes} {directions(hold.periods.tolist())}"
-
-
-def directions(periods: Sequence[Sequence[float]]) -> str:
-    """Return the directions of periods in words.
-
-    Parameters
-    ----------
-    periods : sequence of sequence of float
-        Translations in cell edges.
-
-    Returns
-    -------
-    str
-        ``along b``, ``along a and [1 0 2]``; blank without any.
-    """
-    axes = {"1 0 0": "a", "0 1 0": "b", "0 0 1": "c"}
-    names = []
-    for period in periods:
-        steps = " ".join(f"{x:g}" for x in period).replace("-0 ", "0 ")
-        unsigned = steps.replace("-", "")
-        names.append(axes.get(unsigned, f"[{steps.replace('-', '−')}]"))
-    names.sort(key=lambda name: (name.startswith("["), name))
-    return f"along {listing(names)}" if names else ""
 
 
 def _marginal(unit: MotionalUnit) -> str:

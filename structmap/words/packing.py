@@ -6,7 +6,7 @@ from numpy.typing import NDArray
 from structmap.cell import DIFFERENT_CRYSTAL
 from structmap.contacts import overlap_warning
 from structmap.holding import NetworkEvidence
-from structmap.quotient import AssemblyExtent
+from structmap.quotient import extent_sentence
 from structmap.result import AnalysisRecord
 from structmap.structure import (
     LOW_CONFIDENCE,
@@ -15,7 +15,7 @@ from structmap.structure import (
     is_low_confidence,
     residue_confidence,
 )
-from structmap.words.holding import directions, loose_sentences
+from structmap.words.holding import loose_sentences
 from structmap.words.names import listing, number_in_words
 
 UNSTATED = "of unstated origin"
@@ -252,30 +252,6 @@ def endless_sentence(record: AnalysisRecord) -> str:
     if not record.packing.assemblies:
         return ""
     return extent_sentence(record.packing.extent)
-
-
-def extent_sentence(extent: AssemblyExtent) -> str:
-    """Return that an assembly is a slice of something endless.
-
-    Parameters
-    ----------
-    extent : AssemblyExtent
-        How far its contacts go.
-
-    Returns
-    -------
-    str
-        Blank when it is finite.
-    """
-    if not extent.is_endless:
-        return ""
-    rank = max(part.rank for part in extent.parts)
-    part = next(part for part in extent.parts if part.rank == rank)
-    where = directions(part.periods.tolist())
-    return (
-        f"The assembly is a finite slice of an endless {extent.closes}: its contacts "
-        f"go on through the crystal {where}.".replace(" .", ".")
-    )
 
 
 def network_paragraph(record: AnalysisRecord) -> str:
