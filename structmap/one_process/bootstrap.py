@@ -4,8 +4,7 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import f as f_law
-from scipy.stats import ncf, ncx2
+from scipy.special import chndtr, fdtrc, ncfdtr
 
 from structmap.one_process.engine import Solver, fitted_values
 from structmap.one_process.model import FloatArray
@@ -67,7 +66,7 @@ class Freedom:
             Upper tail.
         """
         within = self.within if self.within > 0 else 1_000_000
-        return float(f_law.sf(statistic, max(self.between, 1), within))
+        return float(fdtrc(max(self.between, 1), within, statistic))
 
     def power(self, noncentrality: FloatArray, critical: float) -> FloatArray:
         """Return how often a true difference exceeds a critical value.
@@ -86,8 +85,8 @@ class Freedom:
         """
         between = max(self.between, 1)
         if self.within < 1:
-            return np.asarray(ncx2.sf(critical * between, between, noncentrality))
-        return np.asarray(ncf.sf(critical, between, self.within, noncentrality))
+            return np.asarray(1 - chndtr(critical * between, between, noncentrality))
+        return np.asarray(1 - ncfdtr(between, self.within, noncentrality, critical))
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

@@ -4,8 +4,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.stats import chi2 as chi2_law
-from scipy.stats import f as f_law
+from scipy.special import fdtri, gammaincinv
 
 from structmap.one_process.model import FloatArray, Model
 from structmap.records import store_read_only
@@ -193,7 +192,7 @@ def find_flat_sites(profiles: Profiles) -> NDArray[np.bool_]:
         misfit += (part * (profiles.filled - mean[:, None]) ** 2).sum(axis=1)
         freedom = freedom - (total > 0)
     freedom = np.maximum(freedom, 1)
-    return np.asarray(misfit < chi2_law.ppf(FLAT_QUANTILE, freedom))
+    return np.asarray(misfit < 2 * gammaincinv(freedom / 2, FLAT_QUANTILE))
 
 
 def interval_rise(chi2: float, freedom: int) -> float:
@@ -214,7 +213,7 @@ def interval_rise(chi2: float, freedom: int) -> float:
     """
     if freedom < 1:
         return STATED_LIMIT
-    return max(float(f_law.ppf(_CONFIDENCE, 1, freedom)) * (chi2 / freedom), 1e-9)
+    return max(float(fdtri(1, freedom, _CONFIDENCE)) * (chi2 / freedom), 1e-9)
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -361,7 +360,7 @@ class GroupFit:
             error times the root of the quantile that makes the interval.
         """
         freedom = self.freedom_shared
-        width = STATED_LIMIT if freedom < 1 else f_law.ppf(_CONFIDENCE, 1, freedom)
+        width = STATED_LIMIT if freedom < 1 else float(fdtri(1, freedom, _CONFIDENCE))
         return np.asarray(np.sqrt(width) * self.curve_error)
 
     @property

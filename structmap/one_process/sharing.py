@@ -6,7 +6,7 @@ from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.stats import chi2 as chi2_law
+from scipy.special import gammaincinv
 
 from structmap.one_process.bootstrap import (
     BORDER,
@@ -441,7 +441,8 @@ def _error_note(fit: GroupFit) -> str:
     within, scale = fit.freedom_free, fit.error_scale
     if within < 1:
         return "no scatter is left to check the stated errors with"
-    low, high = chi2_law.ppf([_SCALE_TAIL, 1 - _SCALE_TAIL], within) / within
+    # Quantiles of chi-square over its degrees of freedom.
+    low, high = 2 * gammaincinv(within / 2, [_SCALE_TAIL, 1 - _SCALE_TAIL]) / within
     if scale < low:
         return "stated errors do not match the scatter: they are too large"
     if scale > high:

@@ -5,8 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.optimize import minimize_scalar
-from scipy.stats import chi2 as chi2_law
-from scipy.stats import norm
+from scipy.special import chdtrc, ndtr
 
 from structmap.records import store_read_only
 from structmap.shifts.changes import combine_changes
@@ -72,10 +71,9 @@ def find_populations(log_ratios: ArrayLike, errors: ArrayLike) -> Populations:
         raise ValueError("log_ratios must hold a site and errors be above 0")
 
     def cost(ratio: float) -> float:
-        both = np.logaddexp(
-            norm.logpdf(size, ratio, error), norm.logpdf(-size, ratio, error)
-        )
-        return float(-both.sum())
+        # Normal densities, but for a constant.
+        near, far = ((size - ratio) / error) ** 2, ((size + ratio) / error) ** 2
+        return float(-np.logaddexp(-near / 2, -far / 2).sum())
 
     nodes = np.linspace(0.0, float(size.max() + 3 * error.max()), 60)
     best = int(np.argmin([cost(node) for node in nodes]))
@@ -89,8 +87,8 @@ def find_populations(log_ratios: ArrayLike, errors: ArrayLike) -> Populations:
     return Populations(
         log_ratio=ratio,
         larger=float(1 / (1 + np.exp(-ratio))),
-        wrong_orientation=norm.cdf(-ratio / error),
-        p_shared=float(chi2_law.sf(misfit, freedom)) if freedom else float("nan"),
+        wrong_orientation=ndtr(-ratio / error),
+        p_shared=float(chdtrc(freedom, misfit)) if freedom else float("nan"),
     )
 
 
