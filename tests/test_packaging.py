@@ -41,6 +41,19 @@ def distributions(repository, tmp_path_factory) -> SimpleNamespace:
     )
 
 
+# --- what the package stands on -------------------------------------------------------
+
+
+def test_slow_packages_are_imported_only_when_they_are_asked_for():
+    asked = "import sys, structmap.cli, structmap.analysis; print(*sys.modules)"
+    done = subprocess.run(
+        [sys.executable, "-c", asked], capture_output=True, text=True, check=True
+    )
+    imported = set(done.stdout.split())
+    assert "structmap.page" in imported
+    assert not imported & {"scipy.stats", "sklearn", "openpyxl", "pyarrow", "requests"}
+
+
 # --- the wheel ------------------------------------------------------------------------
 
 
