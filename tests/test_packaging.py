@@ -51,7 +51,7 @@ def test_slow_packages_are_imported_only_when_they_are_asked_for():
     )
     imported = set(done.stdout.split())
     assert "structmap.page" in imported
-    assert not imported & {"scipy.stats", "sklearn", "openpyxl", "py3Dmol"}
+    assert not imported & {"scipy.stats", "sklearn", "openpyxl"}
 
 
 # --- the wheel ------------------------------------------------------------------------
