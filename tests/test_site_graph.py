@@ -102,6 +102,16 @@ def test_sites_on_one_residue_are_joined_and_share_its_contacts():
     assert graph.n_sites == 3  # the fourth has no residue
 
 
+def test_a_site_without_a_residue_leaves_the_numbers_of_the_others():
+    # Another form of the protein may lack the residue of an earlier site.
+    contacts = made_contacts([(5, 6, CHAIN, 1.3)])
+    graph = make_site_graph(
+        contacts, made_sites([(1, 5), (2, 6)], 3), cutoff_angstrom=4.5
+    )
+    assert edges(graph) == {(1, 2): (CHAIN, 1.3)}
+    assert graph.n_sites == 3
+
+
 def test_no_sites_and_no_contacts_make_an_empty_graph():
     nothing = made_contacts([])
     graph = make_site_graph(nothing, made_sites([], 2), cutoff_angstrom=4.5)

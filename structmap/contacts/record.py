@@ -117,7 +117,7 @@ class SiteGraph:
     Attributes
     ----------
     n_sites : int
-        Sites with a residue; indices run over all sites of the match.
+        One more than the last site with a residue.
     site_1, site_2 : ndarray of int, shape (n_edges,)
         Sorted pairs with ``site_1 < site_2``, each once.
     kind : ndarray of int, shape (n_edges,)

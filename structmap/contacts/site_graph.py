@@ -50,7 +50,7 @@ def make_site_graph(
     weak = np.concatenate([weak, np.zeros(len(one), dtype=np.bool_)])
     edge = first != second
     return _collapsed(
-        int(np.count_nonzero(sites.residue >= 0)),
+        int(sites.copy_site.max(initial=-1)) + 1,
         np.minimum(first, second)[edge],
         np.maximum(first, second)[edge],
         kind=kind[edge],

@@ -98,7 +98,7 @@ def pinned(rate):
 
 
 def test_one_companion_for_all_costs_more_than_one_each():
-    """Sites of different populations: the shared misfit lies above the sum of theirs."""
+    """The shared misfit of different populations lies above the sum of theirs."""
     model = Model(
         name="two",
         describes="decay to a common share",
