@@ -32,14 +32,15 @@ from structmap.significance.stability import REPEATS, Recurrence, find_recurrenc
 from structmap.significance.surrogates import smooth_orders
 from structmap.significance.verdict import Verdict, choose_verdict
 
-FRINGE_SHARE = 0.3
+# A site outside a unit is its fringe when so many of the repeats put it inside.
+FRINGE_SHARE = 0.5
 # Noise added, in scaled errors. The data carry their noise already: with as much again
 # weak units that are there get lost in most runs.
 ADDED_NOISE = 0.5
-# Still the runs on their own make members look less certain than they are; the data
-# as measured count as this share of all runs. Settled on planted problems apart from
-# those that the method is judged by.
-OWN_SHARE = 0.4
+# Still the runs on their own make members look less certain than they are, and sites
+# outside more; the data as measured count as this share of all runs. Settled on planted
+# problems apart from those that the method is judged by.
+OWN_SHARE = 0.7
 # Above this many sites all units share one null with all sites in the pool.
 LARGE = 2000
 Progress = Callable[[str, float], None]
@@ -81,7 +82,7 @@ class UnitEvidence:
         Probability that each row belongs to the unit: the share of the runs with
         redrawn errors that found it again, blended with the data as measured.
     fringe : ndarray of int
-        Sites outside the unit that belong to it with probability 0.3 or more.
+        Sites outside the unit that half of the repeats or more put inside.
     """
 
     p_any: float
@@ -362,10 +363,10 @@ def _weigh_unit(
         "contrast": float(search.contrast[unit]),
     }
     inside = search.label == unit
-    membership = OWN_SHARE * inside + (1 - OWN_SHARE) * again.share[unit]
+    share = again.share[unit]
     return UnitEvidence(
         **numbers,
         verdict=choose_verdict(**numbers),
-        membership=membership,
-        fringe=search.site[~inside & (membership >= FRINGE_SHARE)],
+        membership=OWN_SHARE * inside + (1 - OWN_SHARE) * share,
+        fringe=search.site[~inside & (share >= FRINGE_SHARE)],
     )
