@@ -136,7 +136,7 @@ function membershipText(e) {
   const { unit, membership } = data.entries;
   const name = data.units[unit[e]].name;
   if (membership[e] === null) return `in ${name}`;
-  return `in ${name} in ${Math.round(100 * Number(membership[e]))} of 100 repeats`;
+  return `in ${name} with a probability of ${fixed(membership[e], 2)}`;
 }
 
 /** @param {number} e @returns {(Node|string)[]} */

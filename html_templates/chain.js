@@ -179,10 +179,10 @@ function columnNumber(e, middle, column, y) {
 
 /** @param {number} e @param {number} x @param {number} column @param {number} bottom */
 function columnUnit(e, x, column, bottom) {
-  const { unit, membership } = data.entries;
-  const p = membership[e];
+  const { unit } = data.entries;
+  const p = certainty(e);
   if (unit[e] >= 0) {
-    const height = Math.max(2, 11 * (p ?? 1));
+    const height = Math.max(2, 11 * p);
     const colour = unitColour(unit[e]);
     const hollow = unit[e] >= SHAPES.length;
     const nodes = [svg("rect", { x: short(x), y: short(bottom - height), width: short(column + 0.2), height: short(height), fill: hollow ? tokens.paper : colour, stroke: hollow ? colour : "none", "stroke-width": hollow ? 1.2 : 0 })];
@@ -192,7 +192,7 @@ function columnUnit(e, x, column, bottom) {
     }
     return nodes;
   }
-  if (p === null || p < 0.1) return [];
+  if (p < 0.1) return [];
   const near = nearUnit(e);
   return near < 0 ? [] : [hatch(x, bottom - Math.max(3, 11 * p), column, Math.max(3, 11 * p), unitColour(near), 3.4, 1.3)];
 }

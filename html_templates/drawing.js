@@ -267,17 +267,28 @@ function unitColour(unit) {
 }
 
 /**
+ * Membership spread over 0 to 1 for the eye: the data as measured alone put members at 0.7
+ * or more, others at 0.3 or less.
+ * @param {number} e
+ */
+function certainty(e) {
+  const { unit, membership } = data.entries;
+  const p = membership[e] ?? (unit[e] >= 0 ? 1 : 0);
+  return p < 0.7 ? 2 * p : 0.4 + 2 * (p - 0.7);
+}
+
+/**
  * Colour of a residue's bead, bar, point and dot.
  * @param {number} e
  * @param {string} [by]
  */
 function entryColour(e, by = state.colour) {
-  const { unit, moves, value, membership } = data.entries;
+  const { unit, moves, value } = data.entries;
   if (by === "value") return valueColour(value[e] || 0);
   if (unit[e] >= 0) {
     const colour = unitColour(unit[e]);
     if (by !== "membership") return colour;
-    return mix(colour, 0.75 * (1 - (membership[e] ?? 1)));
+    return mix(colour, 0.75 * (1 - certainty(e)));
   }
   return moves[e] ? tokens.ink2 : tokens.quiet;
 }

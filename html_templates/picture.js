@@ -269,8 +269,8 @@ function styleBeads() {
 
 /** @param {number} e */
 function beadRadius(e) {
-  const { value, membership } = data.entries;
-  if (state.colour === "membership") return 0.45 + 1.25 * Math.sqrt(membership[e] ?? 0);
+  const { value } = data.entries;
+  if (state.colour === "membership") return 0.45 + 1.25 * Math.sqrt(certainty(e));
   return 0.62 + 1.05 * Math.sqrt(Math.max(0, sizeOf(value[e] || 0)));
 }
 
