@@ -208,7 +208,7 @@ function markControls() {
 
 function listenToControls() {
   const radios = /** @type {HTMLElement[]} */ ([...document.querySelectorAll("[data-colour]")]);
-  const absent = radios.filter((r) => (r.dataset.colour === "membership" && !data.quantity.membershipKnown) || (r.dataset.colour === "unit" && false));
+  const absent = radios.filter((r) => r.dataset.colour === "membership" && !data.quantity.membershipKnown);
   for (const radio of absent) radio.remove();
   const kept = radios.filter((r) => !absent.includes(r));
   kept.forEach((radio, i) => {
