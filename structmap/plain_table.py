@@ -1,8 +1,12 @@
 """Tables as text."""
 
+import math
+import re
 from dataclasses import dataclass
 
 import numpy as np
+
+_TO_QUOTE = re.compile('[,"\n\r]')
 
 Cell = str | int | float | bool | None
 
@@ -53,14 +57,19 @@ def cell_text(cell: Cell) -> str:
     str
         Quoted where CSV needs it.
     """
+    if isinstance(cell, str):
+        return _quoted(cell)
     if cell is None:
         return ""
     if isinstance(cell, bool | np.bool_):
         return "yes" if cell else "no"
     if isinstance(cell, float | np.floating):
-        return "" if np.isnan(cell) else f"{cell:.6g}"
-    text = str(cell)
-    if any(mark in text for mark in ',"\n\r'):
+        return "" if math.isnan(cell) else f"{cell:.6g}"
+    return _quoted(str(cell))
+
+
+def _quoted(text: str) -> str:
+    if _TO_QUOTE.search(text):
         return '"' + text.replace('"', '""') + '"'
     return text
 
