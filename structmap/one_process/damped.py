@@ -1,6 +1,7 @@
 """Damped least squares of many small problems at once, baselines projected out."""
 
 from dataclasses import dataclass, replace
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -58,18 +59,110 @@ def iterate(
     .. [1] Marquardt, J. Soc. Ind. Appl. Math. 11, 431 (1963).
     .. [2] Golub and Pereyra, SIAM J. Numer. Anal. 10, 413 (1973).
     """
-    bounds = find_bounds(model, x)
-    done = start_store(problems)
-    current, active = problems, np.arange(len(problems.chi2))
-    kernel = evaluate(model, x, problems.shared, problems.local)
+    return descend(
+        model, x, problems, _Fresh(model, x, fixed=fixed), (tolerance, rounds)
+    )
+
+
+class Slopes(Protocol):
+    """Where the slopes of a descent come from."""
+
+    def start(self, problems: Problems) -> FloatArray:
+        """Return the model's function at the starting points.
+
+        Parameters
+        ----------
+        problems : Problems
+            Starting points.
+
+        Returns
+        -------
+        ndarray, shape (n_problems, n_sites, n_points)
+            The function.
+        """
+
+    def project(
+        self, current: Problems, kernel: FloatArray, projected: Projected
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return the slopes of the fit where the problems stand.
+
+        Parameters
+        ----------
+        current : Problems
+            Where the problems stand.
+        kernel : ndarray, shape (n_problems, n_sites, n_points)
+            The model's function there.
+        projected : Projected
+            Their linear parts there.
+
+        Returns
+        -------
+        tuple of ndarray
+            In shared parameters, shape (n_problems, n_sites, n_points, 2), and in the
+            local one.
+        """
+
+    def learn(self, change: FloatArray, current: Problems, tried: Problems) -> None:
+        """Take notice of a step.
+
+        Parameters
+        ----------
+        change : ndarray, shape (n_problems, n_sites, n_points)
+            Of the model's function over the step.
+        current, tried : Problems
+            Where the step began and where it led.
+        """
+
+    def keep(self, moving: NDArray[np.bool_]) -> None:
+        """Go on with some of the problems.
+
+        Parameters
+        ----------
+        moving : ndarray of bool, shape (n_problems,)
+            Which they are.
+        """
+
+
+def descend(
+    model: Model,
+    x: FloatArray,
+    problems: Problems,
+    slopes: Slopes,
+    until: tuple[float, int],
+) -> Problems:
+    """Improve many fits by damped least squares with slopes of some source.
+
+    Parameters
+    ----------
+    model : Model
+        What is fitted.
+    x : ndarray, shape (n_points,)
+        In the base unit.
+    problems : Problems
+        Starting points.
+    slopes : Slopes
+        Gives the slopes.
+    until : tuple of float and int
+        Tolerance and most iterations, as in `iterate`.
+
+    Returns
+    -------
+    Problems
+        Where they ended, never with a larger misfit.
+    """
+    bounds, done = find_bounds(model, x), start_store(problems)
+    tolerance, rounds = until
+    kernel = slopes.start(problems)
     projected = project(model, problems, kernel)
     current = replace(problems, chi2=(projected.residual**2).sum(axis=(1, 2)))
+    active = np.arange(len(problems.chi2))
     damping = np.full(len(active), 1e-3)
     for _ in range(rounds):
-        slopes = _slopes(model, x, current, kernel, projected=projected, fixed=fixed)
-        step = solve_steps(projected.residual, *slopes, damping=damping)
+        own = slopes.project(current, kernel, projected)
+        step = solve_steps(projected.residual, *own, damping=damping)
         tried = move_problems(current, step, bounds)
         tried_kernel = evaluate(model, x, tried.shared, tried.local)
+        slopes.learn(tried_kernel - kernel, current, tried)
         tried_projected = project(model, tried, tried_kernel)
         chi2 = (tried_projected.residual**2).sum(axis=(1, 2))
         better = chi2 < current.chi2
@@ -81,11 +174,11 @@ def iterate(
         if moving.all():
             continue
         done.store(active, current)
-        active, damping = active[moving], damping[moving]
+        active, damping, kernel = active[moving], damping[moving], kernel[moving]
         if not len(active):
             break
-        current, kernel = take(current, moving), kernel[moving]
-        projected = projected.keep(moving)
+        current, projected = take(current, moving), projected.keep(moving)
+        slopes.keep(moving)
     else:
         done.store(active, current)
     return replace(problems, shared=done.shared, local=done.local, chi2=done.chi2)
@@ -159,34 +252,40 @@ class Step:
     gain: FloatArray
 
 
-def _slopes(
-    model: Model,
-    x: FloatArray,
-    current: Problems,
-    kernel: FloatArray,
-    *,
-    projected: Projected,
-    fixed: bool,
-) -> tuple[FloatArray, FloatArray]:
-    """Return projected slopes of the fit in shared (2) and local parameters.
+class _Fresh:
+    """Slopes by differences, made anew in each iteration."""
 
-    Shapes (n_problems, n_sites, n_points, 2) and (n_problems, n_sites, n_points).
-    """
-    columns = []
-    for column in range(2):
-        absent = (column == 0 and fixed) or (column == 1 and model.companion is None)
-        if absent:
-            columns.append(np.zeros_like(kernel))
-            continue
-        shared = current.shared.copy()
-        shared[:, column] += SMALL
-        moved = evaluate(model, x, shared, current.local)
-        columns.append(project_slope((moved - kernel) / SMALL, current, projected))
-    local = np.zeros_like(kernel)
-    if model.local is not None:
-        moved = evaluate(model, x, current.shared, current.local + SMALL)
-        local = project_slope((moved - kernel) / SMALL, current, projected)
-    return np.stack(columns, axis=-1), local
+    def __init__(self, model: Model, x: FloatArray, *, fixed: bool) -> None:
+        self.model, self.x, self.fixed = model, x, fixed
+
+    def start(self, problems: Problems) -> FloatArray:
+        return evaluate(self.model, self.x, problems.shared, problems.local)
+
+    def project(
+        self, current: Problems, kernel: FloatArray, projected: Projected
+    ) -> tuple[FloatArray, FloatArray]:
+        model, x = self.model, self.x
+        columns = []
+        for column in range(2):
+            absent = self.fixed if column == 0 else model.companion is None
+            if absent:
+                columns.append(np.zeros_like(kernel))
+                continue
+            shared = current.shared.copy()
+            shared[:, column] += SMALL
+            moved = evaluate(model, x, shared, current.local)
+            columns.append(project_slope((moved - kernel) / SMALL, current, projected))
+        local = np.zeros_like(kernel)
+        if model.local is not None:
+            moved = evaluate(model, x, current.shared, current.local + SMALL)
+            local = project_slope((moved - kernel) / SMALL, current, projected)
+        return np.stack(columns, axis=-1), local
+
+    def learn(self, change: FloatArray, current: Problems, tried: Problems) -> None:
+        pass
+
+    def keep(self, moving: NDArray[np.bool_]) -> None:
+        pass
 
 
 def project_slope(
