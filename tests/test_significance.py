@@ -22,7 +22,7 @@ from structmap.significance.autocorrelation import (
     normal_scores,
 )
 from structmap.significance.chance import find_chance
-from structmap.significance.placement import random_orders, score_orders
+from structmap.significance.placement import order_scorer, random_orders
 from structmap.significance.stability import _match, _Sums
 from structmap.significance.surrogates import smooth_orders
 from tests.test_motional_units import measurements, quiet_with_unit, ring_of_sites
@@ -196,11 +196,25 @@ def test_laying_permutations_side_by_side_changes_nothing():
     value = quiet_with_unit(90) + 3 * np.random.default_rng(5).normal(size=(90, 1))
     found = find_motional_units(measurements(value), graph, centres)
     orders = random_orders(90, np.random.default_rng(6))(40)
-    together = score_orders(found.field, found.links, orders)
-    apart = [score_orders(found.field, found.links, one[None]) for one in orders]
+    score = order_scorer(found.field, found.links)
+    together = score(orders)
+    apart = [score(one[None]) for one in orders]
     np.testing.assert_allclose(together.total, [one.total[0] for one in apart])
     np.testing.assert_allclose(together.largest, [one.largest[0] for one in apart])
     assert together.largest.max() > 0
+
+
+def test_screening_all_pairs_once_changes_nothing(monkeypatch):
+    graph, centres = ring_of_sites(90)
+    value = quiet_with_unit(90) + 3 * np.random.default_rng(5).normal(size=(90, 1))
+    found = find_motional_units(measurements(value), graph, centres)
+    orders = random_orders(90, np.random.default_rng(6))(40)
+    once = order_scorer(found.field, found.links)(orders)
+    monkeypatch.setattr("structmap.significance.placement.MOST_TABLED", 0)
+    each = order_scorer(found.field, found.links)(orders)
+    np.testing.assert_array_equal(once.total, each.total)
+    np.testing.assert_array_equal(once.largest, each.largest)
+    assert once.largest.max() > 0
 
 
 # --- stability ------------------------------------------------------------------------

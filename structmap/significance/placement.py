@@ -51,7 +51,8 @@ def order_scorer(field: Field, links: Links) -> Callable[[Integers], Scores]:
     Returns
     -------
     callable
-        From placements, shape (n_orders, n_rows), to their scores; see `score_orders`.
+        From placements, the row that comes to each place, shape (n_orders, n_rows), to
+        the scores of the units found in each.
     """
     table = screen_all_pairs(field) if links.n_rows <= MOST_TABLED else None
     tiled = links
@@ -68,26 +69,6 @@ def order_scorer(field: Field, links: Links) -> Callable[[Integers], Scores]:
         return _score(extend_pairs(placed, tiled, pairs), *orders.shape)
 
     return score
-
-
-def score_orders(field: Field, links: Links, orders: Integers) -> Scores:
-    """Search fields in which other rows sit at the places of the graph.
-
-    Parameters
-    ----------
-    field : Field
-        Deviations.
-    links : Links
-        Who touches whom.
-    orders : ndarray of int, shape (n_orders, n_rows)
-        Row that comes to each place.
-
-    Returns
-    -------
-    Scores
-        Of each placement.
-    """
-    return order_scorer(field, links)(orders)
 
 
 def _score(group: Grouping, n_orders: int, n_rows: int) -> Scores:
